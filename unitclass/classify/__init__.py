@@ -1,0 +1,1 @@
+"""Template families, likelihoods, probabilities, shape groups, learning."""

@@ -1,0 +1,1 @@
+"""Cycle phase: warping, histograms, circular statistics, modulation, features."""

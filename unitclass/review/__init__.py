@@ -1,0 +1,1 @@
+"""The review without its screens: queue, decisions, undo, agreement."""

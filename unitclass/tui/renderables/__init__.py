@@ -1,0 +1,1 @@
+"""Pure drawing: plain arrays to text."""

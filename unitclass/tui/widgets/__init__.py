@@ -1,0 +1,1 @@
+"""Widgets: state and style around the renderables."""
