@@ -358,6 +358,27 @@ class Cycles:
 
 
 @dataclass(frozen=True)
+class Envelope:
+    """A nerve's integrated activity on an even grid; `values` shape (n_samples,), NaN in gaps.
+
+    `smoother` says in words how it was made; sample i is at start_s + i / rate_hz.
+    """
+
+    name: str
+    role: str
+    unit: str
+    start_s: float
+    rate_hz: float
+    values: NDArray[np.float32]
+    smoother: str = ""
+
+    @property
+    def times_s(self) -> FloatArray:
+        """Return the session time of every sample."""
+        return self.start_s + np.arange(self.values.size) / self.rate_hz
+
+
+@dataclass(frozen=True)
 class NerveProfile:
     """Mean envelope of a nerve over canonical phase, for pictures; shape (n_bins,)."""
 
@@ -378,14 +399,36 @@ class RhythmEvidence:
 
 @dataclass(frozen=True)
 class NerveCycles:
-    """Cycles of one condition with all that was decided on the way."""
+    """Cycles of one condition with all that was decided on the way.
+
+    `envelopes` holds the reference first; `detection` says in words what was assumed and why;
+    `threshold` is the level on the reference envelope at which a burst counts (its unit).
+    """
 
     cycles: Cycles
+    envelopes: tuple[Envelope, ...]
     detection: tuple[str, ...]
-    profiles: tuple[NerveProfile, ...]
     rhythm: RhythmEvidence
     threshold: float = np.nan
     notes: tuple[str, ...] = ()
+    summary: Mapping[str, float] = field(default_factory=dict)
+
+
+@dataclass(frozen=True)
+class CycleEdit:
+    """A person's change to the cycles of one condition.
+
+    `action` is "drop" or "restore" (the cycle whose span holds `at_s`), or "threshold" (multiply the
+    detector's own level by `value`). Later edits win.
+    """
+
+    condition: str
+    action: str
+    at_s: float = np.nan
+    value: float = np.nan
+    reviewer: str = ""
+    made_at: str = ""
+    note: str = ""
 
 
 # -------------------------------------------------------------------------------- phase
@@ -635,6 +678,7 @@ class ConditionResult:
     condition: Condition
     nerve: str
     nerve_cycles: NerveCycles
+    nerve_profiles: tuple[NerveProfile, ...]
     regime_probabilities: Mapping[str, float]
     regime_reasons: tuple[str, ...]
     units: tuple[UnitResult, ...]
@@ -669,3 +713,49 @@ class SessionResult:
         for condition in self.conditions:
             for unit in condition.units:
                 yield condition, unit
+
+
+# ----------------------------------------------------------------------------- decisions
+
+@dataclass(frozen=True)
+class Decision:
+    """One thing a reviewer decided. Appended to the store, never changed.
+
+    `how` is "viewed", "blind", "batch" or "settled"; `type` is empty when a decision is taken back.
+    `decided_at` is UTC in ISO 8601. `suggested_type` and `suggested_probability` are what the
+    reviewer could see.
+    """
+
+    identifier: str
+    object_id: str
+    unit: str
+    digest: str
+    condition: str
+    type: str
+    reviewer: str
+    decided_at: str
+    how: str = "viewed"
+    note: str = ""
+    suggested_type: str = ""
+    suggested_probability: float = np.nan
+    settings_digest: str = ""
+    template_digest: str = ""
+
+
+@dataclass(frozen=True)
+class Label:
+    """What stands for one unit in one condition after all decisions are weighed.
+
+    `type` is empty with the flag "disagreement" while reviewers differ and nobody settled it.
+    """
+
+    type: str
+    reviewer: str
+    decided_at: str
+    how: str
+    note: str = ""
+    flags: tuple[str, ...] = ()
+
+
+Labels = Mapping[tuple[str, str], Label]
+"""(unit, condition) to the standing label, for one session."""
