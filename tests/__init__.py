@@ -1,0 +1,1 @@
+"""Tests; a package, so that another installed `tests` cannot stand in its place."""
