@@ -112,7 +112,8 @@ def unit_result(unit: str = "3", kind: str = "early-I", condition: str = "baseli
     histogram = _histogram(kind, n_bins, n_cycles)
     result = UnitResult(
         unit=unit, condition=condition, digest=f"digest-{unit}", n_cycles=n_cycles,
-        n_spikes=histogram.n_spikes, histogram=histogram, locked=_locked(), modulation=modulation(kind), features=features(kind),
+        n_spikes=histogram.n_spikes, histogram=histogram, locked=_locked(),
+        modulation=modulation(kind), features=features(kind),
         suggestion=suggestion(kind, histogram), raster=_raster(histogram, n_cycles),
         flags=("few cycles",) if kind == UNDETERMINED else (),
         q_value=np.nan if kind in (SILENT, UNDETERMINED) else 0.004,
