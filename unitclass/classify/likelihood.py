@@ -1,0 +1,86 @@
+"""How probable a unit's counts are under every drawn profile, given the seconds observed.
+
+Counts given their total are multinomial with cell probabilities proportional to profile times
+exposure [1]_. In matrix form that is two products, so thousands of units take a second.
+
+References
+----------
+.. [1] R. E. Kass, U. T. Eden, E. N. Brown, *Analysis of Neural Data*, Springer, 2014, ch. 19.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+
+from unitclass.classify.draws import DrawnFamilies
+from unitclass.records import FloatArray
+
+
+def log_likelihood(counts: FloatArray, exposure_s: FloatArray, rate: FloatArray) -> FloatArray:
+    """Return the multinomial log-likelihood of each unit's counts under each profile.
+
+    Parameters
+    ----------
+    counts : ndarray, shape (n_units, n_bins)
+    exposure_s : ndarray, shape (n_units, n_bins)
+        Seconds observed; bins never observed say nothing.
+    rate : ndarray, shape (n_draws, n_bins)
+        Positive relative rates.
+
+    Returns
+    -------
+    ndarray, shape (n_units, n_draws)
+        Without the terms that do not depend on the profile (the multinomial coefficient and
+        the sum of counts times log exposure).
+    """
+    total = counts.sum(axis=1, keepdims=True)
+    return np.asarray(counts @ np.log(rate).T - total * np.log(exposure_s @ rate.T + 1e-300))
+
+
+def evidence_weight(n_spikes: FloatArray, overdispersion: FloatArray, concentration: float) -> FloatArray:
+    """Return the power to which a likelihood is raised so that evidence is honest.
+
+    Two reasons to count less than every spike: trains are burstier than Poisson, so one spike is
+    worth 1/overdispersion; and a drawn profile is never exactly the cell's own, so evidence
+    saturates at about `concentration` spikes (the first-order effect of a Dirichlet-multinomial
+    of that concentration).
+
+    Parameters
+    ----------
+    n_spikes, overdispersion : ndarray, shape (n_units,)
+    concentration : float
+        Spikes.
+
+    Returns
+    -------
+    ndarray, shape (n_units,), in (0, 1].
+    """
+    return np.asarray(1.0 / (np.maximum(overdispersion, 1.0) + n_spikes / concentration))
+
+
+def family_evidence(log_lik: FloatArray, weight: FloatArray, drawn: DrawnFamilies) -> FloatArray:
+    """Average the tempered likelihood over each family's draws.
+
+    Parameters
+    ----------
+    log_lik : ndarray, shape (n_units, n_draws_total)
+    weight : ndarray, shape (n_units,)
+
+    Returns
+    -------
+    ndarray, shape (n_units, n_types)
+        Log evidence per family.
+    """
+    tempered = weight[:, None] * log_lik + drawn.log_weight
+    starts = np.searchsorted(drawn.owner, np.arange(len(drawn.types)))
+    top = np.maximum.reduceat(tempered, starts, axis=1)
+    spread = np.exp(tempered - np.repeat(top, np.diff([*starts, drawn.owner.size]), axis=1))
+    return np.asarray(top + np.log(np.add.reduceat(spread, starts, axis=1)))
+
+
+def draw_posterior(log_lik: FloatArray, weight: float, drawn: DrawnFamilies, type_id: str) -> FloatArray:
+    """Return the posterior share of each draw of one family for one unit, shape (n_draws,)."""
+    rows = drawn.rows(type_id)
+    tempered = weight * log_lik[rows] + drawn.log_weight[rows]
+    share = np.exp(tempered - tempered.max())
+    return np.asarray(share / share.sum())

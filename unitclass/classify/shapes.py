@@ -1,0 +1,92 @@
+"""Rate profiles of the forms, evaluated for many parameter draws at once.
+
+Every function takes a dict of parameters, each of shape (n_draws, 1), and the phase grid of
+shape (n_fine,), and returns levels relative to the peak, shape (n_draws, n_fine).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+
+import numpy as np
+
+from unitclass.records import FloatArray
+
+Parameters = Mapping[str, FloatArray]
+
+
+def window(p: Parameters, phase: FloatArray) -> FloatArray:
+    """Return one active window: rise to the peak, fall from it, an optional foot and tail.
+
+    The foot is weak firing before the window (how a pre-I cell starts), the tail weak firing
+    after it. Works on the unwrapped phase, three turns laid over each other.
+    """
+    one = _hump(p, phase)
+    return np.maximum.reduce([one, _hump(p, phase - 2.0), _hump(p, phase + 2.0)])
+
+
+def _hump(p: Parameters, phase: FloatArray) -> FloatArray:
+    onset = np.minimum(p["onset"], p["offset"] - 0.04)
+    peak = np.clip(p["peak"], onset, p["offset"])
+    body = _rise_and_fall(phase, onset, peak, p["offset"], p["start_level"], p["end_level"],
+                          p["curve_up"], p["curve_down"])
+    body = body * _gate(phase, onset, p["offset"], p["edge"])
+    foot_onset = np.minimum(p["foot_onset"], onset - 0.01)
+    foot = p["foot"] * _ramp(phase, foot_onset, onset) * _gate(phase, foot_onset, onset, p["edge"])
+    tail_offset = np.maximum(p["tail_offset"], p["offset"] + 0.01)
+    tail = p["tail"] * _ramp(-phase, -tail_offset, -p["offset"])
+    tail = tail * _gate(phase, p["offset"], tail_offset, p["edge"])
+    return body + foot * (1 - _gate(phase, onset, onset + 9.0, p["edge"])) + tail
+
+
+def _rise_and_fall(phase: FloatArray, onset: FloatArray, peak: FloatArray, offset: FloatArray,
+                   start: FloatArray, end: FloatArray, up: FloatArray, down: FloatArray) -> FloatArray:
+    rising = np.clip((phase - onset) / np.maximum(peak - onset, 1e-3), 0.0, 1.0)
+    falling = np.clip((offset - phase) / np.maximum(offset - peak, 1e-3), 0.0, 1.0)
+    return np.where(phase < peak, start + (1 - start) * rising**up, end + (1 - end) * falling**down)
+
+
+def _ramp(phase: FloatArray, low: FloatArray, high: FloatArray) -> FloatArray:
+    return np.clip((phase - low) / np.maximum(high - low, 1e-3), 0.0, 1.0)
+
+
+def _gate(phase: FloatArray, onset: FloatArray, offset: FloatArray, edge: FloatArray) -> FloatArray:
+    """Return a window with soft edges: cycle-to-cycle jitter blurs every transition a little."""
+    opening = np.clip((phase - onset) / edge + 0.5, 0.0, 1.0)
+    closing = np.clip((offset - phase) / edge + 0.5, 0.0, 1.0)
+    return opening * closing
+
+
+def two_humps(p: Parameters, phase: FloatArray) -> FloatArray:
+    """Return two windows with a dip between: firing before and after inspiration, silent in it."""
+    first = window(p, phase)
+    second = dict(p)
+    second.update(onset=p["second_onset"], offset=p["second_offset"], peak=p["second_offset"],
+                  start_level=p["second_start"], end_level=np.ones_like(p["edge"]), foot=0 * p["foot"],
+                  tail=0 * p["tail"])
+    between = p["dip"] * _gate(phase, p["onset"], p["second_offset"], p["edge"])
+    return np.maximum.reduce([first, p["second_level"] * window(second, phase), between])
+
+
+def cosine(p: Parameters, phase: FloatArray) -> FloatArray:
+    """Return steady firing that waxes and wanes; `step` turns the wave into a step between phases.
+
+    `depth` is (max - min)/(max + min).
+    """
+    angle = np.pi * (phase - p["at"])
+    wave = np.cos(angle) + p["harmonic"] * np.cos(2 * angle + np.pi * p["at"])
+    step = np.tanh(4.0 * np.cos(angle))
+    mixed = (1 - p["step"]) * wave + p["step"] * step
+    mixed = mixed / np.max(np.abs(mixed), axis=1, keepdims=True)
+    return (1 + p["depth"] * mixed) / (1 + p["depth"])
+
+
+def flat(p: Parameters, phase: FloatArray) -> FloatArray:
+    """Return steady firing with no more modulation than `depth`."""
+    return (1 + p["depth"] * np.cos(np.pi * (phase - p["at"]))) / (1 + p["depth"])
+
+
+FORM_SHAPES: Mapping[str, Callable[[Parameters, FloatArray], FloatArray]] = {
+    "augmenting": window, "decrementing": window, "plateau": window, "spanning": window,
+    "two humps": two_humps, "cosine": cosine, "flat": flat,
+}
