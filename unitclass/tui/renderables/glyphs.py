@@ -34,6 +34,7 @@ class Glyphs:
     fit: str
     shade: str
     heat: str
+    band: str
     rule: str
     upright: str
     tick: str
@@ -57,12 +58,12 @@ class Glyphs:
 
 BLOCKS = Glyphs(
     name="blocks", levels=" ▁▂▃▄▅▆▇█", sure="█", doubtful="▓", whisker="│", beyond="↑", fit="_━▔",
-    shade="·", heat=" ░▒▓█", rule="─", upright="│", tick="┬", junction="┤", turn="┊", threshold="┄",
+    shade="·", heat=" ░▒▓█", band="░", rule="─", upright="│", tick="┬", junction="┤", turn="┊", threshold="┄",
     burst="▀", left_out="×", here="▶", done="✓", dash="–", ellipsis="…", less="≤", has_braille=True)
 
 ASCII = Glyphs(
     name="ascii", levels="  ::##", sure="#", doubtful="%", whisker="|", beyond="^", fit="_=~",
-    shade=".", heat=" .:*#", rule="-", upright="|", tick="+", junction="+", turn=":", threshold="-",
+    shade=".", heat=" .:*#", band=":", rule="-", upright="|", tick="+", junction="+", turn=":", threshold="-",
     burst="=", left_out="x", here=">", done="v", dash="-", ellipsis="~", less="<=", has_braille=False)
 
 

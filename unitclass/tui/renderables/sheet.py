@@ -11,6 +11,7 @@ from itertools import groupby
 
 from rich.cells import get_character_cell_size
 
+from unitclass.io.safe_text import safe_text
 from unitclass.tui.renderables.glyphs import COLOUR, Look
 
 SHADED = "+"
@@ -22,13 +23,14 @@ _ODD_WIDTH = ("\U0001f1e6", "\U0001f1ff")  # flags: two letters make one picture
 def printable(text: str, *, ascii_only: bool = False) -> str:
     """Return `text` with all that could steer a terminal, or upset its columns, taken out.
 
-    Control, format and bidirectional characters become "?", line breaks and tabs a space;
+    Escape sequences, control, format and bidirectional characters go, line breaks become spaces;
     combining marks are joined to their letter or dropped. With `ascii_only`, letters lose their
     accents and the rest becomes "?".
     """
     if text.isascii() and text.isprintable():
         return text
-    text = "".join(" " if c in "\n\r\t" else c for c in text)
+    if not text.isprintable():
+        text = safe_text(text)
     if ascii_only:
         text = unicodedata.normalize("NFKD", text.replace("µ", "u"))
         return "".join(_ascii(c) for c in text)

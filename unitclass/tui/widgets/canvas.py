@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 
 from rich.segment import Segment
 from textual import events
@@ -24,17 +24,23 @@ class Canvas(Widget):
         super().__init__(id=id)
         self.inks = theme
         self.sheet = Sheet(0, 0, theme.look)
+        self._cover: Callable[[int, int], Sheet] | None = None
 
     def draw(self, width: int, height: int) -> Sheet:
         """Return what to show at this size; subclasses say what."""
         return Sheet(width, height, self.inks.look)
+
+    def cover(self, draw: Callable[[int, int], Sheet] | None) -> None:
+        """Show something else in this place until it is uncovered with None."""
+        self._cover = draw
+        self.redraw()
 
     def redraw(self) -> None:
         """Draw again and repaint the parts that differ from what is on the screen."""
         width, height = self.size
         if not width or not height:
             return
-        old, self.sheet = self.sheet, self.draw(width, height)
+        old, self.sheet = self.sheet, (self._cover or self.draw)(width, height)
         if (old.width, old.height) != (width, height):
             self.refresh()
             return

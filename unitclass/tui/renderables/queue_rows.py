@@ -1,0 +1,94 @@
+"""The queue: a narrow column of units, or one line of neighbours when there is no room."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+from unitclass.tui.renderables.glyphs import COLOUR, Look
+from unitclass.tui.renderables.sheet import Sheet, width_of
+from unitclass.tui.renderables.words import shortened
+
+
+@dataclass(frozen=True)
+class QueueEntry:
+    """One unit of the queue as far as its line shows it.
+
+    `type` is the label, else the suggestion ("" when hidden); `state` is "done", "later",
+    "differ", "again" or "open"; `is_changed` marks a suggestion that changed since it was seen.
+    """
+
+    unit: str
+    type: str
+    state: str = "open"
+    is_changed: bool = False
+    heading: str = ""
+
+
+def mark_of(entry: QueueEntry, look: Look) -> str:
+    """Return the one character that tells an entry's state."""
+    if entry.state == "open" and entry.is_changed:
+        return "*"
+    return {"done": look.glyphs.done, "later": "z", "differ": "?", "again": "!"}.get(entry.state, " ")
+
+
+def queue_column(entries: Sequence[QueueEntry], here: int, width: int, height: int, *,
+                 look: Look = COLOUR) -> Sheet:
+    """Draw the page of the queue that holds entry `here`.
+
+    Pages stay where they are while one steps through them, so that a step changes two lines only.
+    A heading (the file and condition) stands where it changes.
+    """
+    sheet = Sheet(width, height, look)
+    first = page_start(here, height - 1)
+    shown = entries[first : first + height - 1]
+    for y, entry in enumerate(shown):
+        is_here = first + y == here
+        sheet.put(0, y, look.glyphs.here if is_here else " ", "strong")
+        sheet.put(1, y, mark_of(entry, look), "good" if entry.state == "done" else "warn")
+        name_room = max(4, width - 12)
+        sheet.put(3, y, shortened(entry.unit, name_room, look), "strong" if is_here else "")
+        sheet.put(3 + name_room + 1, y, shortened(entry.type, width - name_room - 5, look),
+                  "" if entry.state == "done" else "quiet")
+    n_pages = -(-len(entries) // max(1, height - 1))
+    if n_pages > 1:
+        page = f"page {here // max(1, height - 1) + 1} of {n_pages}"
+        sheet.put(1, height - 1, shortened(page, width - 1, look), "quiet")
+    return sheet
+
+
+def page_start(here: int, per_page: int) -> int:
+    """Return the first entry of the page that holds entry `here`."""
+    per_page = max(1, per_page)
+    return here // per_page * per_page
+
+
+def queue_line(entries: Sequence[QueueEntry], here: int, width: int, *, look: Look = COLOUR) -> Sheet:
+    """Draw the entries around `here` in one line, the current one between brackets."""
+    sheet = Sheet(width, 1, look)
+    if not entries:
+        return sheet
+    words = _word(entries[here], look)
+    start = min(width // 3, max(0, (width - width_of(words)) // 2))
+    sheet.put(start, 0, f"[{words}]", "strong")
+    x = start + width_of(words) + 3
+    for entry in entries[here + 1 :]:
+        text = _word(entry, look)
+        if x + width_of(text) > width:
+            break
+        sheet.put(x, 0, text, "" if entry.state == "open" else "quiet")
+        x += width_of(text) + 2
+    x = start - 2
+    for entry in reversed(entries[:here]):
+        text = _word(entry, look)
+        x -= width_of(text)
+        if x < 0:
+            break
+        sheet.put(x, 0, text, "" if entry.state == "open" else "quiet")
+        x -= 2
+    return sheet
+
+
+def _word(entry: QueueEntry, look: Look) -> str:
+    mark = mark_of(entry, look).strip()
+    return shortened(f"{entry.unit} {entry.type}".strip() + mark, 24, look)
