@@ -40,11 +40,12 @@ class Chunk:
     """Consecutive samples; `start_s` is the session time of the first one.
 
     A chunk that starts where the one before ended (to half a sample) goes on with the same
-    stretch; any other start means a gap.
+    stretch; any other start means a gap. `values` are float64, or float32 where the file holds
+    at most 16-bit integers or single precision, so that a raw nerve costs half the memory.
     """
 
     start_s: float
-    values: FloatArray
+    values: FloatArray | NDArray[np.float32]
 
 
 class ChunkReader(Protocol):
@@ -195,13 +196,20 @@ class Condition:
     """A labelled stretch of the session. `name` is unique within the recording.
 
     `label` is the interval's own label; a second visit to the same label gets its own name
-    ("baseline (2)") because conditions are never pooled unless the user maps them together.
+    ("baseline (2)") because conditions are never pooled unless the user maps them together. Then
+    `visits` holds every visit, shape (n_visits, 2) as tuples, and start_s to stop_s spans them all.
     """
 
     name: str
     start_s: float
     stop_s: float
     label: str = ""
+    visits: tuple[tuple[float, float], ...] = ()
+
+    @property
+    def spans(self) -> tuple[tuple[float, float], ...]:
+        """Return the stretches of the session that belong to the condition, in order."""
+        return self.visits or ((self.start_s, self.stop_s),)
 
 
 @dataclass(frozen=True)
