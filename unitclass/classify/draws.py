@@ -114,11 +114,16 @@ def _scaled(family: Family, name: str, share: FloatArray, timing: Timing, *, by_
 
 
 def _phase_of_ms(ms: FloatArray, name: str, family: Family, timing: Timing) -> FloatArray:
-    """Return canonical phase of a time from the start of inspiration, on the family's own turn."""
-    turn = 2.0 if name in family.ranges and min(family.ranges[name]) > 1.0 else 0.0
-    before = np.clip(ms / 1e3 / timing.te_s, -0.9, 0.0)
-    after = np.clip(ms / 1e3 / timing.ti_s, 0.0, 1.0)
-    return turn + np.where(ms < 0, before, after)
+    """Return canonical phase of a time from a transition.
+
+    Below zero it is time before the onset of inspiration; above zero, time after its onset, or
+    after its end for a parameter whose phase range lies in expiration.
+    """
+    in_expiration = name in family.ranges and min(family.ranges[name]) > 1.0
+    before = (2.0 if in_expiration else 0.0) + np.clip(ms / 1e3 / timing.te_s, -0.9, 0.0)
+    after = (1.0 + np.clip(ms / 1e3 / timing.te_s, 0.0, 0.9) if in_expiration
+             else np.clip(ms / 1e3 / timing.ti_s, 0.0, 1.0))
+    return np.where(ms < 0, before, after)
 
 
 def _drawn(family: Family, p: Parameters, phase: FloatArray) -> FloatArray:

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
 
 import numpy as np
 
@@ -11,76 +10,40 @@ from unitclass.classify.draws import DrawnFamilies
 from unitclass.classify.likelihood import evidence_weight, family_evidence, log_likelihood
 from unitclass.classify.open_set import other_evidence
 from unitclass.classify.templates import TypeLibrary
-from unitclass.records import NOT_MODULATED, OTHER, FloatArray
+from unitclass.classify.unit_counts import UnitCounts
+from unitclass.records import NOT_MODULATED, FloatArray
 from unitclass.settings import ClassifySettings
 
 STEADY = "tonic"
 BLOCK = 500  # units scored at once: keeps the (units x draws) matrix small
 
 
-@dataclass(frozen=True)
-class Scores:
-    """Evidence and probabilities of many units.
-
-    Attributes
-    ----------
-    types : tuple of str
-        All families' ids, then "other".
-    log_evidence, log_prior : ndarray, shapes (n_units, n_types) and (n_types,)
-    probability : ndarray, shape (n_units, n_types)
-        Rows sum to one.
-    weight : ndarray, shape (n_units,)
-        What one spike counted.
-    """
-
-    types: tuple[str, ...]
-    log_evidence: FloatArray
-    log_prior: FloatArray
-    probability: FloatArray
-    weight: FloatArray
+def score_units(units: UnitCounts, drawn: DrawnFamilies, settings: ClassifySettings) -> FloatArray:
+    """Return the log evidence of every family and of `other`, shape (n_units, n_types + 1)."""
+    blocks = [_block_evidence(units.rows(slice(i, i + BLOCK)), drawn, settings)
+              for i in range(0, units.n_units, BLOCK)]
+    return np.concatenate(blocks) if blocks else np.zeros((0, len(drawn.types) + 1))
 
 
-def score_units(counts: FloatArray, exposure_s: FloatArray, overdispersion: FloatArray, *,
-                drawn: DrawnFamilies, log_prior: FloatArray, settings: ClassifySettings) -> Scores:
-    """Score every unit against every family and `other`.
-
-    Parameters
-    ----------
-    counts, exposure_s : ndarray, shape (n_units, n_bins)
-    overdispersion : ndarray, shape (n_units,)
-        Variance of the counts over a Poisson process's, whole-cycle gain taken out.
-    log_prior : ndarray, shape (n_types + 1,)
-        Of the families in order, then of "other".
-    """
-    weight = evidence_weight(counts.sum(axis=1), overdispersion, settings.concentration)
-    blocks = [_block_evidence(counts[i : i + BLOCK], exposure_s[i : i + BLOCK], weight[i : i + BLOCK],
-                              overdispersion[i : i + BLOCK], drawn, settings)
-              for i in range(0, len(counts), BLOCK)]
-    types = (*drawn.types, OTHER)
-    evidence = np.concatenate(blocks) if blocks else np.zeros((0, len(types)))
-    return Scores(types, evidence, log_prior, probabilities(evidence, log_prior, settings.temperature), weight)
-
-
-def _block_evidence(counts: FloatArray, exposure_s: FloatArray, weight: FloatArray,
-                    overdispersion: FloatArray, drawn: DrawnFamilies, settings: ClassifySettings) -> FloatArray:
-    log_lik = log_likelihood(counts, exposure_s, drawn.rate)
+def _block_evidence(units: UnitCounts, drawn: DrawnFamilies, settings: ClassifySettings) -> FloatArray:
+    weight = evidence_weight(units.n_spikes, units.dispersion, settings.concentration)
+    log_lik = log_likelihood(units.counts, units.exposure_s, drawn.rate)
     evidence = family_evidence(log_lik, weight, drawn)
     if NOT_MODULATED in drawn.types and STEADY in drawn.types:
         nrm, steady = drawn.types.index(NOT_MODULATED), drawn.types.index(STEADY)
         evidence[:, nrm] = evidence[:, steady] + _modulation_odds(
-            log_lik, counts.sum(axis=1), overdispersion, drawn, settings)
-    odd = other_evidence(counts, exposure_s, weight)
-    return np.column_stack([evidence, odd])
+            log_lik, units, drawn, settings)
+    return np.column_stack([evidence, other_evidence(units, weight)])
 
 
-def _modulation_odds(log_lik: FloatArray, n_spikes: FloatArray, overdispersion: FloatArray,
-                     drawn: DrawnFamilies, settings: ClassifySettings) -> FloatArray:
+def _modulation_odds(log_lik: FloatArray, units: UnitCounts, drawn: DrawnFamilies,
+                     settings: ClassifySettings) -> FloatArray:
     """Return the log odds of no modulation against steady firing with modulation.
 
     Doubt about a profile's shape is no doubt about whether there is one: here evidence
     saturates ten times later, so that a shallow but certain modulation is not called NRM.
     """
-    weight = evidence_weight(n_spikes, overdispersion, 10 * settings.concentration)
+    weight = evidence_weight(units.n_spikes, units.dispersion, 10 * settings.concentration)
     evidence = family_evidence(log_lik, weight, drawn)
     return np.asarray(evidence[:, drawn.types.index(NOT_MODULATED)] - evidence[:, drawn.types.index(STEADY)])
 
