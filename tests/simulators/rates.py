@@ -179,7 +179,8 @@ def _pre_i(at: Clock, regime: str, rng: Rng) -> Shape:
 
     def rate(c: Clock) -> FloatArray:
         before = np.where(np.isnan(c.e), 0.0, level * np.clip(1 - c.to_onset_s / lead_s, 0, 1) ** power)
-        through = _within(c.i, 0, stop) * _rise(c.i, -0.05, 0.15) * (1 - (1 - end) * np.nan_to_num(c.i / stop))
+        slope = 1 - (1 - end) * np.nan_to_num(c.i / stop)
+        through = _within(c.i, 0, stop) * _rise(c.i, -0.05, 0.15) * slope
         return np.maximum(before, np.maximum(through, level * _within(c.i, 0, 0.3 * stop)))
     return rate
 
