@@ -12,12 +12,12 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, replace
 from math import inf
-from typing import Protocol
+from typing import Any, Protocol
 
 import numpy as np
 from numpy.typing import NDArray
 
-FloatArray = NDArray[np.float64]
+FloatArray = NDArray[np.floating[Any]]
 IntArray = NDArray[np.int64]
 BoolArray = NDArray[np.bool_]
 
@@ -344,9 +344,9 @@ class Cycles:
     def select(self, keep: BoolArray) -> Cycles:
         """Return the cycles where `keep`, shape (n_cycles,), is true."""
         rows = np.flatnonzero(keep)
-        arrays = {name: getattr(self, name)[rows] for name in
+        arrays: dict[str, Any] = {name: getattr(self, name)[rows] for name in
                   ("onset_s", "offset_s", "end_s", "accepted", "post_i_end_s", "late_e", "peak", "area")}
-        maps = {name: {k: v[rows] for k, v in getattr(self, name).items()}
+        maps: dict[str, Any] = {name: {k: v[rows] for k, v in getattr(self, name).items()}
                 for name in ("other_peak", "other_area", "lead_ms")}
         return replace(self, kind=tuple(self.kind[i] for i in rows),
                        reason=tuple(self.reason[i] for i in rows), **arrays, **maps)

@@ -39,8 +39,8 @@ def tunable(default: Any, unit: str, low: float, high: float, meaning: str, sour
 
 def worded(default: Any, meaning: str, *, choices: tuple[str, ...] = ()) -> Any:
     """Declare a setting that is a word, a list of words, a table or a yes/no."""
-    if isinstance(default, dict | list):
-        return field(default_factory=lambda: type(default)(default),
+    if isinstance(default, dict):
+        return field(default_factory=lambda: dict(default),
                      metadata={"meaning": meaning, "choices": choices})
     return field(default=default, metadata={"meaning": meaning, "choices": choices})
 
@@ -105,6 +105,7 @@ class ClassifySettings:
                                    "spikes after which a histogram stops adding evidence: doubt about the shape")
     temperature: float = tunable(1.0, "x", 0.2, 10.0, "flattens (over 1) or sharpens the probabilities")
     sure_probability: float = tunable(0.95, "probability", 0.5, 1.0, "suggestions at or over this are sure")
+    other_prior: float = tunable(0.05, "probability", 0.0001, 0.9, "prior share of cells like none of the families")
     nrm_depth: float = tunable(0.35, "depth", 0.05, 0.9, "upper limit of depth below which a cell is NRM")
     conduction_delay_ms: float = tunable(0.0, "ms", -50, 200, "subtracted from nerve times: brainstem to electrode")
     regime: str = worded("auto", "rhythm regime", choices=("auto", "three-phase", "two-phase", "one-phase"))
@@ -140,7 +141,7 @@ class RigSettings:
     condition_column: str = worded("", "column of the intervals table that names the condition")
     condition_table: str = worded("", "intervals table that holds the conditions")
     same_condition: bool = worded(False, "pool repeated visits to one condition")
-    exclude: list[str] = worded([], "interval tables or labels to leave out, e.g. \"stimulation\"")
+    exclude: tuple[str, ...] = worded((), "interval tables or labels to leave out, e.g. \"stimulation\"")
     crosswalk: str = worded("", "file that maps type ids to the laboratory's own words")
     electrode_fill: str = worded("", "fill of the intracellular electrode when the files do not tell")
 
@@ -222,6 +223,8 @@ def _checked_name(name: str, known: Mapping[str, Any], where: str, noun: str) ->
 
 def _checked_value(f: Any, default: Any, value: Any, where: str) -> Any:
     meta = f.metadata
+    if isinstance(default, tuple) and isinstance(value, list):
+        value = tuple(str(item) for item in value)
     if "low" in meta:
         return _checked_number(f.name, default, value, meta, where)
     if isinstance(default, bool) != isinstance(value, bool) or (
@@ -236,7 +239,7 @@ def _checked_value(f: Any, default: Any, value: Any, where: str) -> Any:
 
 
 def _kind(default: Any) -> str:
-    return {bool: "yes/no (true or false)", str: "text", list: "list", dict: "table"}[type(default)]
+    return {bool: "yes/no (true or false)", str: "text", tuple: "list", dict: "table"}[type(default)]
 
 
 def _checked_number(name: str, default: Any, value: Any, meta: Mapping[str, Any], where: str) -> Any:

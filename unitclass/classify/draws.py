@@ -10,7 +10,7 @@ import numpy as np
 
 from unitclass.classify.shapes import FORM_SHAPES, Parameters
 from unitclass.classify.templates import COMMON, FORMS, NEEDED, Family, TypeLibrary
-from unitclass.records import FloatArray, IntArray
+from unitclass.records import BoolArray, FloatArray, IntArray
 
 FINE = 8  # points per bin on which a profile is evaluated before it is averaged into bins
 FLOOR = 0.002  # a family never says "impossible": share of the peak that stray spikes may reach
@@ -101,7 +101,7 @@ def _latin_hypercube(n_draws: int, n_dims: int, rng: np.random.Generator) -> Flo
     return (rng.permuted(strata, axis=0) + rng.random((n_draws, n_dims))) / n_draws
 
 
-def _scaled(family: Family, name: str, share: FloatArray, timing: Timing, *, by_time: FloatArray) -> FloatArray:
+def _scaled(family: Family, name: str, share: FloatArray, timing: Timing, *, by_time: BoolArray) -> FloatArray:
     in_ms = family.ranges.get(f"{name}_ms")
     if in_ms is None:
         low, high = family.range(name)

@@ -31,7 +31,8 @@ def other_evidence(units: UnitCounts, weight: FloatArray) -> FloatArray:
     """
     each = {"any": arbitrary_evidence(units.counts, units.exposure_s, weight),
             "drifting": _drifting_evidence(units, weight), "humps": _humped_evidence(units, weight)}
-    return _log_mean(np.stack([each[name] + np.log(share) for name, share in SHARES.items()])) + np.log(len(SHARES))
+    mixed = np.stack([each[name] + np.log(share * len(SHARES)) for name, share in SHARES.items()])
+    return _log_mean(mixed)
 
 
 def arbitrary_evidence(counts: FloatArray, exposure_s: FloatArray, weight: FloatArray) -> FloatArray:

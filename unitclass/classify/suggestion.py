@@ -1,0 +1,161 @@
+"""Suggestions for all units of one condition: states, probabilities, fit and reasons."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from unitclass.classify.draws import DrawnFamilies
+from unitclass.classify.likelihood import draw_posterior, evidence_weight, log_likelihood
+from unitclass.classify.membrane import MembraneLevels, level_words, membrane_evidence, quiet_phases
+from unitclass.classify.posterior import probabilities, score_units, type_log_prior
+from unitclass.classify.reasons import firing_reasons, odds_words, type_reasons
+from unitclass.classify.regime import Regime, judge_regime
+from unitclass.classify.templates import TypeLibrary
+from unitclass.classify.unit_counts import UnitCounts
+from unitclass.records import (
+    OTHER,
+    SILENT,
+    UNDETERMINED,
+    Features,
+    FloatArray,
+    Modulation,
+    PhaseHistogram,
+    RhythmEvidence,
+    Suggestion,
+)
+from unitclass.settings import Settings
+
+NOTHING = np.zeros(0)
+BAND = (0.05, 0.95)
+
+
+@dataclass(frozen=True)
+class UnitFacts:
+    """What is known of one unit in one condition before it gets a suggestion."""
+
+    histogram: PhaseHistogram
+    modulation: Modulation
+    features: Features
+    n_cycles: int
+    rule_type: str = ""
+    membrane: MembraneLevels | None = None
+    is_held: bool = False
+
+
+@dataclass(frozen=True)
+class Suggested:
+    """One suggestion per unit, and the regime they were made under."""
+
+    suggestions: tuple[Suggestion, ...]
+    regime: Regime
+
+
+def suggest(facts: Sequence[UnitFacts], units: UnitCounts, rhythm: RhythmEvidence, *, library: TypeLibrary,
+            drawn: DrawnFamilies, settings: Settings) -> Suggested:
+    """Return a suggestion for every unit of one condition.
+
+    Parameters
+    ----------
+    facts : sequence of UnitFacts, length n_units
+    units : UnitCounts
+        Of the same units in the same order.
+    rhythm : RhythmEvidence
+        What the nerves say of the regime.
+    """
+    states = [unit_state(fact, settings) for fact in facts]
+    histogram = score_units(units, drawn, settings.classify)
+    membrane = np.stack([_membrane(fact, library, drawn) for fact in facts]) if facts else histogram
+    judged = np.array([state == "" for state in states], dtype=bool)
+    regime = judge_regime(rhythm, histogram[judged], library, given=settings.classify.regime,
+                          other_prior=settings.classify.other_prior)
+    prior = type_log_prior(library, regime.probabilities, settings.classify.other_prior)
+    table = probabilities(histogram + membrane, prior, settings.classify.temperature)
+    made = []
+    for i, fact in enumerate(facts):
+        if states[i] and not _speaks_alone(fact, states[i]):
+            made.append(_state_suggestion(states[i], fact))
+            continue
+        witnesses = {"histogram": histogram[i], "membrane potential": membrane[i], "regime": prior}
+        made.append(_typed_suggestion(fact, units.rows(slice(i, i + 1)), table[i], witnesses, drawn, settings))
+    return Suggested(tuple(made), regime)
+
+
+def unit_state(fact: UnitFacts, settings: Settings) -> str:
+    """Return "silent", "undetermined", or empty when there is enough to classify."""
+    floor, n_spikes = settings.modulation, fact.histogram.n_spikes
+    if fact.n_cycles < floor.min_cycles:
+        return UNDETERMINED
+    if n_spikes < floor.silent_share * fact.n_cycles:
+        # A cell held down by bias current is kept from firing: that is no silence of its own.
+        return UNDETERMINED if fact.is_held else SILENT
+    return UNDETERMINED if n_spikes < floor.min_spikes else ""
+
+
+def _speaks_alone(fact: UnitFacts, state: str) -> bool:
+    """Return whether a cell with too few spikes can be judged by its membrane potential."""
+    return fact.membrane is not None and fact.membrane.may_vote and fact.n_cycles >= 10 and bool(
+        level_words(fact.membrane))
+
+
+def _membrane(fact: UnitFacts, library: TypeLibrary, drawn: DrawnFamilies) -> FloatArray:
+    levels = fact.membrane
+    if levels is None or not levels.may_vote:
+        return np.zeros(len(library.families) + 1)
+    is_alone = fact.histogram.n_spikes == 0
+    return membrane_evidence(levels, quiet_phases(fact.histogram.rate_hz), library, drawn, is_alone=is_alone)
+
+
+def _state_suggestion(state: str, fact: UnitFacts) -> Suggestion:
+    n_spikes = fact.histogram.n_spikes
+    reason = (f"{n_spikes} spikes in {fact.n_cycles} cycles" if state == SILENT
+              else f"too little data: {n_spikes} spikes in {fact.n_cycles} cycles")
+    held = ("held down by bias current",) if fact.is_held else ()
+    return Suggestion(state, {}, (reason, *held), {}, NOTHING, NOTHING, NOTHING, "")
+
+
+def _typed_suggestion(fact: UnitFacts, unit: UnitCounts, row: FloatArray, witnesses: dict[str, FloatArray],
+                      drawn: DrawnFamilies, settings: Settings) -> Suggestion:
+    types = (*drawn.types, OTHER)
+    order = np.argsort(-row, kind="stable")
+    first, second = int(order[0]), int(order[1])
+    ranked = {types[i]: float(row[i]) for i in order}
+    fit = _fit(unit, types[first], drawn, settings)
+    return Suggestion(
+        type=types[first], probabilities=ranked, reasons=_reasons(fact, types, row, first, second, settings),
+        evidence={name: float(values[first] - values[second]) for name, values in witnesses.items()},
+        fitted_rate_hz=fit[0], fitted_low_hz=fit[1], fitted_high_hz=fit[2], rule_type=fact.rule_type)
+
+
+def _reasons(fact: UnitFacts, types: tuple[str, ...], row: FloatArray, first: int, second: int,
+             settings: Settings) -> tuple[str, ...]:
+    alone = ("no spikes to speak of: suggested from the membrane potential alone",) if (
+        fact.histogram.n_spikes < settings.modulation.min_spikes) else ()
+    membrane = () if fact.membrane is None else (
+        level_words(fact.membrane) if fact.membrane.may_vote else (fact.membrane.reason,))
+    return (*alone, *type_reasons(types[first], fact.modulation, settings.classify.nrm_depth),
+            *firing_reasons(fact.histogram, fact.modulation, fact.features), *membrane,
+            odds_words(types[first], types[second], float(row[first]), float(row[second])))
+
+
+def _fit(unit: UnitCounts, type_id: str, drawn: DrawnFamilies,
+         settings: Settings) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Return the posterior mean profile at the fitted gain with its 90 % band, spikes/s."""
+    if type_id == OTHER or not unit.n_spikes[0]:
+        return NOTHING, NOTHING, NOTHING
+    rate = drawn.rate[drawn.rows(type_id)]
+    log_lik = log_likelihood(unit.counts, unit.exposure_s, drawn.rate)[0]
+    weight = float(evidence_weight(unit.n_spikes, unit.dispersion, settings.classify.concentration)[0])
+    share = draw_posterior(log_lik, weight, drawn, type_id)
+    scaled = rate * (unit.n_spikes[0] / (rate @ unit.exposure_s[0]))[:, None]
+    return share @ scaled, *_weighted_quantiles(scaled, share)
+
+
+def _weighted_quantiles(values: FloatArray, share: FloatArray) -> tuple[FloatArray, FloatArray]:
+    order = np.argsort(values, axis=0)
+    reached = np.cumsum(share[order], axis=0)
+    columns = np.arange(values.shape[1])
+    low, high = (np.argmax(reached >= q, axis=0) for q in BAND)
+    return values[order[low, columns], columns], values[order[high, columns], columns]
