@@ -40,8 +40,8 @@ def _rank(option: Option, wanted: str) -> int | None:
     if any(_letters(word).startswith(wanted) for word in f"{option.also} {option.detail}".split()):
         return 3
     if _in_order(wanted, label):
-        return 4
-    return 5 if wanted in words else None
+        return 4 if label.endswith(wanted[-1]) else 5
+    return 6 if wanted in words else None
 
 
 def _letters(text: str) -> str:

@@ -5,8 +5,8 @@ class Desk:
         self.entries=[QueueEntry(u.unit,u.suggestion.type) for c,u in self.units]
         self.here=0
     def view(self):
-        from unitclass.tui.widgets.panels import UnitView
         from unitclass.tui.renderables.verdict import Verdict
+        from unitclass.tui.widgets.panels import UnitView
         c,u=self.units[self.here]; s=u.suggestion
         return UnitView(u,c.nerve_profiles,1,2,s.type,Verdict(s.type,s.probability,s.ranked,reasons=s.reasons,flags=u.flags,rule="rule of thumb: "+s.rule_type, fit="differs most from x at phase 0.3: 30 spikes/s, fitted 40"))
     def head(self):

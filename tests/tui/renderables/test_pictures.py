@@ -143,9 +143,9 @@ def test_a_cell_without_membrane_potential_draws_nothing():
 
 
 def test_a_heat_row_is_darkest_at_the_peak_and_empty_without_spikes():
-    exposure = np.ones(8)
-    assert heat_row(AXIS, [0, 1, 2, 3, 4, 3, 2, 1], exposure, look=MONO).lines() == [" ░▒▓█▓▒░"]
-    assert heat_row(AXIS, np.zeros(8), exposure, look=MONO).lines() == [""]
+    assert heat_row(AXIS, [0, 1, 2, 3, 4, 3, 2, 1], look=MONO).lines() == [" ░▒▓█▓▒░"]
+    assert heat_row(AXIS, np.zeros(8), look=MONO).lines() == [""]
+    assert heat_row(AXIS, np.full(8, np.nan), look=MONO).lines() == [""]
 
 
 def test_the_trace_keeps_every_peak():

@@ -10,13 +10,13 @@ from unitclass.tui.renderables.glyphs import COLOUR, Look
 from unitclass.tui.renderables.sheet import Sheet
 
 
-def heat_row(axis: CycleAxis, counts: ArrayLike, exposure_s: ArrayLike, *, look: Look = COLOUR) -> Sheet:
+def heat_row(axis: CycleAxis, rate_hz: ArrayLike, *, look: Look = COLOUR) -> Sheet:
     """Draw one row: each column's rate as a share of the unit's greatest, in five shades.
 
-    Arrays have shape (n_bins,). A silent unit is an empty row.
+    `rate_hz` has shape (n_bins,), NaN where nothing was observed. A silent unit is an empty row.
     """
     sheet = Sheet(axis.n_columns, 1, look)
-    rate = np.nan_to_num(axis.rate(counts, exposure_s))
+    rate = np.nan_to_num(axis.mean(rate_hz))
     top = float(rate.max())
     if top > 0:
         shades = look.glyphs.heat

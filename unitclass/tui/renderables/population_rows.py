@@ -5,30 +5,25 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from unitclass.records import FloatArray
+import numpy as np
+from numpy.typing import NDArray
+
+from unitclass.review.entry import QueueEntry
 from unitclass.tui.renderables.axis import CycleAxis, axis_rows
 from unitclass.tui.renderables.bars import in_words
 from unitclass.tui.renderables.glyphs import COLOUR, Look
 from unitclass.tui.renderables.heat import heat_row
-from unitclass.tui.renderables.queue_rows import QueueEntry, mark_of, page_start
+from unitclass.tui.renderables.queue_rows import mark_of, page_start
 from unitclass.tui.renderables.sheet import Sheet
 from unitclass.tui.renderables.words import shortened
 
 
 @dataclass(frozen=True)
 class HeatEntry:
-    """One unit of the population; `counts` and `exposure_s` have shape (n_bins,).
-
-    `shape_group` is the cluster the profile belongs to, "" for none; `index` is where the unit
-    stands in the queue.
-    """
+    """One unit of the population and its rate by phase, shape (n_bins,)."""
 
     entry: QueueEntry
-    counts: FloatArray
-    exposure_s: FloatArray
-    probability: float
-    shape_group: str = ""
-    index: int = 0
+    rate_hz: NDArray[np.float32]
 
 
 Line = tuple[str, int] | int
@@ -76,9 +71,9 @@ def population_lines(groups: Sequence[tuple[str, int]]) -> list[Line]:
 def _put_unit(sheet: Sheet, y: int, unit: HeatEntry, is_here: bool, axis: CycleAxis, name_room: int) -> None:
     look = sheet.look
     sheet.put(0, y, look.glyphs.here if is_here else " ", "strong")
-    sheet.put(1, y, mark_of(unit.entry, look), "warn" if unit.entry.state in ("differ", "again") else "good")
+    sheet.put(1, y, mark_of(unit.entry, look), "good" if unit.entry.state == "reviewed" else "warn")
     sheet.put(2, y, shortened(unit.entry.unit, name_room, look), "strong" if is_here else "")
-    sheet.paste(heat_row(axis, unit.counts, unit.exposure_s, look=look), name_room + 3, y)
+    sheet.paste(heat_row(axis, unit.rate_hz, look=look), name_room + 3, y)
     x = name_room + 4 + axis.n_columns
-    sheet.put(x, y, shortened(unit.shape_group, 3, look), "strong")
-    sheet.put(x + 4, y, in_words(unit.probability), "")
+    sheet.put(x, y, shortened(unit.entry.shape_group, 3, look), "strong")
+    sheet.put(x + 4, y, in_words(unit.entry.probability), "")

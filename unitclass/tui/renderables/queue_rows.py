@@ -3,33 +3,27 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 
+from unitclass.review.entry import QueueEntry
 from unitclass.tui.renderables.glyphs import COLOUR, Look
 from unitclass.tui.renderables.sheet import Sheet, width_of
 from unitclass.tui.renderables.words import shortened
 
 
-@dataclass(frozen=True)
-class QueueEntry:
-    """One unit of the queue as far as its line shows it.
-
-    `type` is the label, else the suggestion ("" when hidden); `state` is "done", "later",
-    "differ", "again" or "open"; `is_changed` marks a suggestion that changed since it was seen.
-    """
-
-    unit: str
-    type: str
-    state: str = "open"
-    is_changed: bool = False
-    heading: str = ""
+MARKS = {"later": "z", "disagreement": "?", "asks again": "!", "stale": "~", "labelled": "+"}
+"""State of a unit to the character before its name; "reviewed" has the glyph of its own."""
 
 
 def mark_of(entry: QueueEntry, look: Look) -> str:
-    """Return the one character that tells an entry's state."""
-    if entry.state == "open" and entry.is_changed:
+    """Return the one character that tells an entry's state, a changed suggestion before all."""
+    if entry.is_changed:
         return "*"
-    return {"done": look.glyphs.done, "later": "z", "differ": "?", "again": "!"}.get(entry.state, " ")
+    return look.glyphs.done if entry.state == "reviewed" else MARKS.get(entry.state, " ")
+
+
+def type_of(entry: QueueEntry) -> str:
+    """Return the reviewer's own label, else the one that stands, else the suggestion (none when hidden)."""
+    return entry.own_type or (entry.label.type if entry.label is not None else "") or entry.suggested_type
 
 
 def queue_column(entries: Sequence[QueueEntry], here: int, width: int, height: int, *,
@@ -37,7 +31,6 @@ def queue_column(entries: Sequence[QueueEntry], here: int, width: int, height: i
     """Draw the page of the queue that holds entry `here`.
 
     Pages stay where they are while one steps through them, so that a step changes two lines only.
-    A heading (the file and condition) stands where it changes.
     """
     sheet = Sheet(width, height, look)
     first = page_start(here, height - 1)
@@ -45,11 +38,11 @@ def queue_column(entries: Sequence[QueueEntry], here: int, width: int, height: i
     for y, entry in enumerate(shown):
         is_here = first + y == here
         sheet.put(0, y, look.glyphs.here if is_here else " ", "strong")
-        sheet.put(1, y, mark_of(entry, look), "good" if entry.state == "done" else "warn")
+        sheet.put(1, y, mark_of(entry, look), "good" if entry.state == "reviewed" else "warn")
         name_room = max(4, width - 12)
         sheet.put(3, y, shortened(entry.unit, name_room, look), "strong" if is_here else "")
-        sheet.put(3 + name_room + 1, y, shortened(entry.type, width - name_room - 5, look),
-                  "" if entry.state == "done" else "quiet")
+        sheet.put(3 + name_room + 1, y, shortened(type_of(entry), width - name_room - 5, look),
+                  "" if entry.state == "reviewed" else "quiet")
     n_pages = -(-len(entries) // max(1, height - 1))
     if n_pages > 1:
         page = f"page {here // max(1, height - 1) + 1} of {n_pages}"
@@ -78,7 +71,7 @@ def queue_line(entries: Sequence[QueueEntry], here: int, width: int, *, look: Lo
             break
         sheet.put(x, 0, text, "" if entry.state == "open" else "quiet")
         x += width_of(text) + 2
-    x = start - 2
+    x = start - 1
     for entry in reversed(entries[:here]):
         text = _word(entry, look)
         x -= width_of(text)
@@ -91,4 +84,4 @@ def queue_line(entries: Sequence[QueueEntry], here: int, width: int, *, look: Lo
 
 def _word(entry: QueueEntry, look: Look) -> str:
     mark = mark_of(entry, look).strip()
-    return shortened(f"{entry.unit} {entry.type}".strip() + mark, 24, look)
+    return shortened(f"{entry.unit} {type_of(entry)}".strip() + mark, 24, look)

@@ -4,7 +4,8 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from unitclass.tui.renderables.queue_rows import QueueEntry, queue_line
+from unitclass.review.entry import QueueEntry
+from unitclass.tui.renderables.queue_rows import queue_line
 from unitclass.tui.renderables.sheet import Sheet, width_of
 from unitclass.tui.renderables.words import shortened, shortened_middle
 from unitclass.tui.widgets.canvas import Canvas
@@ -21,7 +22,8 @@ class Head(Canvas):
         self._entries: Sequence[QueueEntry] = ()
         self._here = 0
 
-    def show(self, title: str, where: str, right: str, entries: Sequence[QueueEntry] = (), here: int = 0) -> None:
+    def show(self, title: str, where: str, right: str, entries: Sequence[QueueEntry] = (),
+             here: int = 0) -> None:
         """Show a title, the file it is about, a few words at the right, and the queue's neighbours."""
         self._title, self._where, self._right = title, where, right
         self._entries, self._here = entries, here

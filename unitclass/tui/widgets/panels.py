@@ -8,8 +8,9 @@ from dataclasses import dataclass
 from textual import events
 
 from unitclass.records import NerveProfile, UnitResult
+from unitclass.review.entry import QueueEntry
 from unitclass.tui.messages import Picked
-from unitclass.tui.renderables.queue_rows import QueueEntry, page_start, queue_column
+from unitclass.tui.renderables.queue_rows import page_start, queue_column
 from unitclass.tui.renderables.sheet import Sheet
 from unitclass.tui.renderables.unit_picture import unit_picture
 from unitclass.tui.renderables.verdict import Verdict, verdict_in_brief, verdict_rows
@@ -76,7 +77,8 @@ class UnitPage(Canvas):
                 sheet.put(1, 1 + y, line)
             return sheet
         v = self.view
-        picture = unit_picture(v.unit, v.nerves, v.ti_s, v.te_s, width - 1, height, family=v.family, look=look)
+        picture = unit_picture(v.unit, v.nerves, v.ti_s, v.te_s, width - 1, height, family=v.family,
+                               look=look)
         sheet.paste(picture, 0, 0)
         return sheet
 
