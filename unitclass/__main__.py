@@ -1,0 +1,44 @@
+"""The program's entry: parse, run one subcommand, turn errors into one line and an exit code."""
+
+from __future__ import annotations
+
+import os
+import sys
+from collections.abc import Sequence
+
+from unitclass.errors import UnitclassError
+
+INTERRUPTED = 130
+
+
+def main(argv: Sequence[str] | None = None) -> int:
+    """Run the program and return its exit code.
+
+    Parameters
+    ----------
+    argv : sequence of str, optional
+        Arguments without the program's name; the process's own by default.
+    """
+    from unitclass.commands.parser import build_parser
+
+    args = build_parser().parse_args(argv)
+    try:
+        code: int = args.run(args)
+        sys.stdout.flush()
+        return code
+    except UnitclassError as error:
+        if args.debug:
+            raise
+        print(f"unitclass: {error}", file=sys.stderr)
+        return error.exit_code
+    except KeyboardInterrupt:
+        print("unitclass: interrupted; results that were finished are whole", file=sys.stderr)
+        return INTERRUPTED
+    except BrokenPipeError:
+        # The reader of a pipe went away (`| head`): not an error. Python would complain at exit.
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        return 0
+
+
+if __name__ == "__main__":
+    sys.exit(main())

@@ -1,0 +1,75 @@
+"""What commands over many files share: the run itself, its exit code, its tables."""
+
+from __future__ import annotations
+
+import argparse
+from collections.abc import Iterator, Mapping, Sequence
+from typing import TYPE_CHECKING
+
+from unitclass.commands.options import plan_from
+from unitclass.commands.progress import progress, say
+from unitclass.errors import NoUsableFileError
+
+if TYPE_CHECKING:
+    from unitclass.batch import Outcome
+    from unitclass.io.table_files import Cell
+
+
+def run_files(args: argparse.Namespace) -> Iterator[Outcome]:
+    """Yield the outcome of every file named; failures are said on stderr as they come."""
+    from unitclass.batch import analyse_files
+    from unitclass.io.paths import find_files
+
+    check_target(args)
+    paths, plan = find_files(args.paths), plan_from(args)
+    with progress(len(paths), quiet=args.quiet) as step:
+        for outcome in analyse_files(paths, plan, workers=args.workers):
+            step(outcome.path)
+            if outcome.problem:
+                say(f"unitclass: {outcome.problem}")
+            elif outcome.result is not None:
+                for note in outcome.result.notes:
+                    say(f"{outcome.path}: {note}", quiet=args.quiet)
+            yield outcome
+
+
+def check_target(args: argparse.Namespace) -> None:
+    """Refuse a table that exists, or is of no known kind, before any long work."""
+    from pathlib import Path
+
+    from unitclass.errors import TargetError
+    from unitclass.io.table_files import table_form
+
+    table = getattr(args, "table", "")
+    if table in ("", "-"):
+        return
+    table_form(table)
+    if Path(table).exists() and not args.force:
+        raise TargetError("exists already", where=table, remedy="name another file or add --force")
+
+
+def exit_code(n_failed: int, n_done: int) -> int:
+    """Return 0 when all files were done and 1 when some failed.
+
+    Raises
+    ------
+    NoUsableFileError
+        When none was done.
+    """
+    if not n_done:
+        raise NoUsableFileError("no file was usable", remedy="the lines above say why; try `unitclass inventory`")
+    return 1 if n_failed else 0
+
+
+def write_rows(rows: Sequence[Mapping[str, Cell]], args: argparse.Namespace, *, columns: Sequence[str]) -> None:
+    """Write the table named on the command line; with --json, print JSON when none is named."""
+    from unitclass.io.table_files import write_table
+
+    if args.table:
+        form = "json" if args.json and args.table == "-" else ""
+        write_table(args.table, rows, force=args.force, columns=columns, form=form)
+        say(f"wrote {args.table}", quiet=args.quiet or args.table == "-")
+    if args.json and args.table != "-":
+        write_table("-", rows, columns=columns, form="json")
+
+

@@ -1,0 +1,100 @@
+"""`unitclass types`: the firing types and the template families behind them."""
+
+from __future__ import annotations
+
+import argparse
+
+BARS = " .:-=+*#%@"  # one character a phase bin: readable in any terminal
+
+
+def add_arguments(parser: argparse.ArgumentParser) -> None:
+    """Declare the options."""
+    sub = parser.add_subparsers(dest="what", metavar="list|show|check", required=True)
+    for name, words in (("list", "all types, a line each"), ("show", "one type in full"),
+                        ("check", "whether template files are right")):
+        command = sub.add_parser(name, help=words, description=words[0].upper() + words[1:] + ".")
+        command.add_argument("--templates", default="", metavar="FILE|NAME", help="template families to use")
+        if name == "show":
+            command.add_argument("type", metavar="TYPE", help="id of the type, e.g. early-I")
+        if name == "check":
+            command.add_argument("files", nargs="*", metavar="FILE", help="family files; none checks the set in force")
+        if name == "list":
+            command.add_argument("--json", action="store_true", help="JSON on stdout")
+
+
+def run(args: argparse.Namespace) -> int:
+    """List, show or check."""
+    return {"list": _list, "show": _show, "check": _check}[args.what](args)
+
+
+def _list(args: argparse.Namespace) -> int:
+    import json
+    import sys
+
+    from unitclass.commands.views import print_table
+    from unitclass.io.template_files import read_library
+
+    families = read_library(args.templates).families
+    if args.json:
+        print(json.dumps([{"type": f.id, "form": f.form, "words": f.words, "also": list(f.also),
+                           "prior": dict(f.prior), "sources": list(f.sources)} for f in families], indent=1))
+        return 0
+    print_table(("type", "fires", "also called"), [(f.id, f.words, ", ".join(f.also)) for f in families], sys.stdout)
+    return 0
+
+
+def _show(args: argparse.Namespace) -> int:
+    from unitclass.errors import UsageError
+    from unitclass.io.template_files import read_library
+
+    library = read_library(args.templates)
+    try:
+        family = library.family(args.type)
+    except KeyError:
+        raise UsageError(f"no type called {args.type!r}",
+                         remedy="the types are: " + ", ".join(f.id for f in library.families)) from None
+    print(f"{family.id}: {family.words}")
+    if family.also:
+        print(f"also called {', '.join(family.also)}")
+    print(f"form: {family.form}")
+    for regime, weight in family.prior.items():
+        print(f"prior weight in {regime} rhythm: {weight:g}")
+    for phase, sign in family.membrane.items():
+        side = {1: "depolarised", -1: "hyperpolarised", 0: "near its mean"}[sign]
+        print(f"membrane potential in {phase}: {side}")
+    for name, (low, high) in family.ranges.items():
+        print(f"{name}: {low:g} to {high:g}{' ms' if name.endswith('_ms') else ''}")
+    print(f"sources: {'; '.join(family.sources)}")
+    _print_picture(args.type, args.templates)
+    return 0
+
+
+def _print_picture(type_id: str, templates: str) -> None:
+    """Print a few profiles of the family, drawn evenly from its draws, a line each."""
+    import numpy as np
+
+    from unitclass.classify.draws import Timing, draw_profiles
+    from unitclass.io.template_files import read_library
+
+    family = read_library(templates).family(type_id)
+    profiles = draw_profiles(family, Timing(ti_s=1.0, te_s=2.0), n_bins=40, n_draws=8)
+    print("eight cells that it would hold (TI 1 s, TE 2 s):")
+    print("  " + "inspiration".center(20, "_") + "|" + "expiration".center(20, "_"))
+    for profile in profiles:
+        level = np.minimum((profile / profile.max() * len(BARS)).astype(int), len(BARS) - 1)
+        drawn = "".join(BARS[i] for i in level)
+        print(f"  {drawn[:20]}|{drawn[20:]}")
+
+
+def _check(args: argparse.Namespace) -> int:
+    from pathlib import Path
+
+    from unitclass.io.template_files import read_family, read_library
+
+    if args.files:
+        for file in args.files:
+            print(f"{file}: {read_family(Path(file)).id} is right")
+        return 0
+    library = read_library(args.templates)
+    print(f"{library.name}: {len(library.families)} families are right, digest {library.digest()}")
+    return 0
