@@ -107,7 +107,8 @@ def _cycle_rows(result: SessionResult, condition: ConditionResult, others: Seque
             result.path, condition.condition.name, cycles.nerve, cycles.kind[i],
             seconds(cycles.onset_s[i]), seconds(cycles.offset_s[i]), seconds(cycles.end_s[i]),
             seconds(cycles.ti_s[i]), seconds(cycles.te_s[i]), seconds(cycles.ttot_s[i]),
-            number(_duty(cycles, i)), number(cycles.peak[i]), number(cycles.area[i]), seconds(cycles.post_i_end_s[i]),
+            number(_duty(cycles, i)), number(cycles.peak[i]), number(cycles.area[i]),
+            seconds(cycles.post_i_end_s[i]),
             int(cycles.late_e[i]) if cycles.late_e[i] >= 0 else None,
             bool(cycles.accepted[i]), cycles.reason[i]))
         for name in others:

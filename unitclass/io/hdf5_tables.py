@@ -1,0 +1,144 @@
+"""NWB tables and columns in an open HDF5 file: add the program's own, take them out again.
+
+Written with h5py, not pynwb, because files of other laboratories hold much that pynwb cannot
+read back (extensions, old namespaces, broken links) and that must stay as it is.
+"""
+
+from __future__ import annotations
+
+import uuid
+from typing import Any
+
+import h5py
+import numpy as np
+
+from unitclass.io.hdf5 import attribute, child_of
+from unitclass.io.hdf5 import text as text_of
+from unitclass.io.provenance import is_own
+from unitclass.io.table_columns import Column, Table
+
+_TEXT = h5py.string_dtype()
+_COMPRESSED_FROM = 100_000
+
+
+def add_table(parent: h5py.Group, table: Table) -> str:
+    """Write `table` into `parent` and return its path.
+
+    A table of that name that is not the program's own is kept; the new one then gets the
+    program's name in front.
+    """
+    group = parent.create_group(_free_name(parent, table.name))
+    kind_space = "core" if table.kind != "DynamicTable" else _table_namespace(parent.file)
+    _mark(group, table.kind, kind_space)
+    group.attrs["description"] = table.description
+    group.attrs["colnames"] = np.array([], dtype=_TEXT)
+    _mark(group.create_dataset("id", data=np.arange(table.n_rows)), "ElementIdentifiers",
+          _table_namespace(parent.file))
+    add_columns(group, table.filled)
+    return str(group.name)
+
+
+def add_columns(group: h5py.Group, columns: tuple[Column, ...]) -> None:
+    """Add columns to a table, each under its name, or with the program's name in front if that is taken."""
+    names = column_names(group)
+    for column in columns:
+        if column.points_to == "objects" and not all(path in group.file for path in column.values):
+            continue
+        name = _free_name(group, column.name)
+        _write_column(group, name, column)
+        names.append(name)
+    group.attrs["colnames"] = np.array(names, dtype=_TEXT)
+
+
+def column_names(group: h5py.Group) -> list[str]:
+    """Return the names of a table's columns, in order."""
+    given = group.attrs.get("colnames")
+    return [] if given is None or isinstance(given, h5py.Empty) else [text_of(n) for n in np.atleast_1d(given)]
+
+
+def row_ids(group: h5py.Group) -> list[str]:
+    """Return the ids of a table's rows as text; row numbers where the table has none."""
+    ids = child_of(group, "id")
+    if isinstance(ids, h5py.Dataset) and ids.ndim == 1:
+        return [text_of(value) for value in ids[:]]
+    lengths = [len(child) for name in column_names(group)
+               if (child := child_of(group, f"{name}_index") or child_of(group, name)) is not None]
+    return [str(i) for i in range(lengths[0] if lengths else 0)]
+
+
+def remove_own_tables(parent: h5py.Group | None) -> None:
+    """Remove every table in `parent` that the program wrote."""
+    if parent is None:
+        return
+    for name in list(parent):
+        child = own_child(parent, name)
+        if isinstance(child, h5py.Group) and is_own(attribute(child, "description")):
+            del parent[name]
+
+
+def remove_own_columns(group: h5py.Group) -> None:
+    """Remove every column of a table that the program wrote."""
+    own = {name for name in column_names(group)
+           if (child := child_of(group, name)) is not None and is_own(attribute(child, "description"))}
+    for name in own:
+        del group[name]
+        if f"{name}_index" in group:
+            del group[f"{name}_index"]
+    if own:
+        group.attrs["colnames"] = np.array([n for n in column_names(group) if n not in own], dtype=_TEXT)
+
+
+def own_child(group: h5py.Group, name: str) -> Any:
+    """Return the object called `name` if it lives in this very file, else None.
+
+    Following a link to another file that is open for writing would open that file for writing.
+    """
+    return child_of(group, name) if isinstance(group.get(name, getlink=True), h5py.HardLink) else None
+
+
+def _write_column(group: h5py.Group, name: str, column: Column) -> None:
+    space = _table_namespace(group.file)
+    data = _stored(group.file, column)
+    dataset = group.create_dataset(name, data=data, dtype=data.dtype,
+                                   compression="gzip" if data.nbytes > _COMPRESSED_FROM else None)
+    is_region = column.points_to not in ("", "objects")
+    _mark(dataset, "DynamicTableRegion" if is_region else "VectorData", space)
+    dataset.attrs["description"] = column.description
+    if is_region:
+        dataset.attrs["table"] = group.file[column.points_to].ref
+    if np.isfinite(column.resolution_s):
+        dataset.attrs["resolution"] = column.resolution_s
+    if column.lengths is not None:
+        index = group.create_dataset(f"{name}_index", data=np.cumsum(column.lengths).astype(np.uint64))
+        _mark(index, "VectorIndex", space)
+        index.attrs["description"] = f"where each row's cell of {name} ends"
+        index.attrs["target"] = dataset.ref
+
+
+def _stored(file: h5py.File, column: Column) -> np.ndarray[Any, Any]:
+    values = column.values
+    if column.points_to == "objects":
+        return np.array([file[path].ref for path in values], dtype=h5py.ref_dtype)
+    if values.dtype == object:
+        return values.astype(_TEXT)
+    if values.dtype.kind in "if" and values.size and set(np.unique(values)) == {0, 1}:
+        return values.astype(np.int8)  # wider, readers take such a column for a mistaken yes/no
+    return values
+
+
+def _mark(thing: Any, kind: str, namespace: str) -> None:
+    thing.attrs["neurodata_type"] = kind
+    thing.attrs["namespace"] = namespace
+    thing.attrs["object_id"] = str(uuid.uuid4())
+
+
+def _free_name(group: h5py.Group, name: str) -> str:
+    candidates = [name, f"unitclass_{name}", *(f"unitclass_{name}_{i}" for i in range(2, 1000))]
+    return next(c for c in candidates if c not in group)
+
+
+def _table_namespace(file: h5py.File) -> str:
+    """Return the namespace that holds tables: hdmf-common since NWB 2.2, core before."""
+    version = attribute(file, "nwb_version").split(".")
+    is_old = version[:1] == ["2"] and version[1:2] in (["0"], ["1"])
+    return "core" if is_old and "hdmf-common" not in (child_of(file, "specifications") or ()) else "hdmf-common"
