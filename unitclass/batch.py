@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, replace
+from pathlib import Path
 
 from unitclass import __version__
 from unitclass.classify.templates import TypeLibrary
@@ -12,6 +13,8 @@ from unitclass.io.condition_table import ConditionTable
 from unitclass.io.nwb_read import read_recording
 from unitclass.records import CycleEdit, Recording, SessionResult
 from unitclass.settings import Settings
+
+STORE_NAME = "unitclass.sqlite"
 
 
 @dataclass(frozen=True)
@@ -25,7 +28,7 @@ class Plan:
     condition_table: ConditionTable | None = None
     only: str = ""
     store: str = ""
-    edits: dict[str, tuple[CycleEdit, ...]] = field(default_factory=dict)
+    cycles_only: bool = False
 
 
 @dataclass(frozen=True)
@@ -57,14 +60,31 @@ def read_planned(path: str, plan: Plan) -> Recording:
     return replace(recording, conditions=kept)
 
 
+def edits_of(recording: Recording, plan: Plan) -> tuple[CycleEdit, ...]:
+    """Return what people changed about the cycles, if their decisions are on disk."""
+    file = store_file(recording.path, plan.store)
+    if not file.is_file():
+        return ()
+    from unitclass.io.decisions import DecisionStore
+
+    with DecisionStore(file, is_read_only=True) as store:
+        return store.edits_for(recording.identifier, recording.object_id)
+
+
+def store_file(path: str, store: str) -> Path:
+    """Return the file of decisions for a session: the one named, else the one beside the data."""
+    return Path(store) if store else Path(path).parent / STORE_NAME
+
+
 def analyse_file(path: str, plan: Plan) -> Outcome:
     """Read and judge one file; every expected failure becomes the outcome's problem."""
-    from unitclass.analysis import analyse
+    from unitclass.analysis import analyse, cycles_only
 
+    method = cycles_only if plan.cycles_only else analyse
     try:
         recording = read_planned(path, plan)
-        result = analyse(recording, plan.library, plan.settings, edits=plan.edits.get(path, ()),
-                         program_version=__version__)
+        result = method(recording, plan.library, plan.settings, edits=edits_of(recording, plan),
+                        program_version=__version__)
     except UnitclassError as error:
         return Outcome(path, problem=str(error))
     return Outcome(path, result, recording)

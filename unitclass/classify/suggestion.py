@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -15,6 +15,7 @@ from unitclass.classify.reasons import firing_reasons, odds_words, type_reasons
 from unitclass.classify.regime import Regime, judge_regime
 from unitclass.classify.templates import TypeLibrary
 from unitclass.classify.unit_counts import UnitCounts
+from unitclass.phase.rules import rule_of_thumb
 from unitclass.records import (
     OTHER,
     SILENT,
@@ -40,7 +41,6 @@ class UnitFacts:
     modulation: Modulation
     features: Features
     n_cycles: int
-    rule_type: str = ""
     membrane: MembraneLevels | None = None
     is_held: bool = False
 
@@ -73,13 +73,15 @@ def suggest(facts: Sequence[UnitFacts], units: UnitCounts, rhythm: RhythmEvidenc
                           other_prior=settings.classify.other_prior)
     prior = type_log_prior(library, regime.probabilities, settings.classify.other_prior)
     table = probabilities(histogram + membrane, prior, settings.classify.temperature)
+    rhythm_name = max(regime.probabilities, key=lambda name: regime.probabilities[name])
     made = []
     for i, fact in enumerate(facts):
         if states[i] and not _speaks_alone(fact, states[i]):
             made.append(_state_suggestion(states[i], fact))
             continue
         witnesses = {"histogram": histogram[i], "membrane potential": membrane[i], "regime": prior}
-        made.append(_typed_suggestion(fact, units.rows(slice(i, i + 1)), table[i], witnesses, drawn, settings))
+        typed = _typed_suggestion(fact, units.rows(slice(i, i + 1)), table[i], witnesses, drawn, settings)
+        made.append(replace(typed, rule_type=rule_of_thumb(fact.features, rhythm_name)))
     return Suggested(tuple(made), regime)
 
 
@@ -126,7 +128,7 @@ def _typed_suggestion(fact: UnitFacts, unit: UnitCounts, row: FloatArray, witnes
     return Suggestion(
         type=types[first], probabilities=ranked, reasons=_reasons(fact, types, row, first, second, settings),
         evidence={name: float(values[first] - values[second]) for name, values in witnesses.items()},
-        fitted_rate_hz=fit[0], fitted_low_hz=fit[1], fitted_high_hz=fit[2], rule_type=fact.rule_type)
+        fitted_rate_hz=fit[0], fitted_low_hz=fit[1], fitted_high_hz=fit[2])
 
 
 def _reasons(fact: UnitFacts, types: tuple[str, ...], row: FloatArray, first: int, second: int,

@@ -3,20 +3,16 @@
 from __future__ import annotations
 
 import argparse
-from pathlib import Path
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
     from unitclass.records import Labels, SessionResult
 
 
-def store_file(path: str, store: str) -> Path:
-    """Return the file of decisions for a session: --store, else the one beside the data."""
-    return Path(store) if store else Path(path).parent / "unitclass.sqlite"
-
-
 def labels_of(result: SessionResult, args: argparse.Namespace) -> Labels:
     """Return what people decided of this session's units; empty when there is no store."""
+    from unitclass.batch import store_file
+
     file = store_file(result.path, args.store)
     if not file.is_file():
         return {}

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import argparse
 from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
 from unitclass.commands.options import plan_from
@@ -15,13 +16,13 @@ if TYPE_CHECKING:
     from unitclass.io.table_files import Cell
 
 
-def run_files(args: argparse.Namespace) -> Iterator[Outcome]:
+def run_files(args: argparse.Namespace, *, cycles_only: bool = False) -> Iterator[Outcome]:
     """Yield the outcome of every file named; failures are said on stderr as they come."""
     from unitclass.batch import analyse_files
     from unitclass.io.paths import find_files
 
     check_target(args)
-    paths, plan = find_files(args.paths), plan_from(args)
+    paths, plan = find_files(args.paths), replace(plan_from(args), cycles_only=cycles_only)
     with progress(len(paths), quiet=args.quiet) as step:
         for outcome in analyse_files(paths, plan, workers=args.workers):
             step(outcome.path)

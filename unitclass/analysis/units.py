@@ -1,0 +1,102 @@
+"""Every cell in one condition: profile, suggestion, flags."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from unitclass.analysis.cells import Cell, train_digest
+from unitclass.analysis.flags import unit_flags
+from unitclass.analysis.potential import mean_potential, membrane_levels
+from unitclass.analysis.rhythm import ConditionCycles
+from unitclass.classify.draws import Timing, draw_families
+from unitclass.classify.regime import Regime
+from unitclass.classify.suggestion import UnitFacts, suggest
+from unitclass.classify.templates import TypeLibrary
+from unitclass.classify.unit_counts import CountRow, count_row, stacked
+from unitclass.phase.multiple_testing import benjamini_hochberg
+from unitclass.phase.profiles import Train, UnitProfile, unit_profiles
+from unitclass.records import Cycles, FloatArray, Suggestion, UnitResult, VmProfile
+from unitclass.settings import Settings
+
+SEED = 1
+USUAL = Timing(ti_s=1.0, te_s=2.0)  # before any cycle is known
+
+
+@dataclass(frozen=True)
+class JudgedUnits:
+    """Results of one condition; `regime` is None when there was no cell to judge it with."""
+
+    results: tuple[UnitResult, ...]
+    regime: Regime | None
+    no_evidence: FloatArray
+
+
+@dataclass(frozen=True)
+class _Seen:
+    """One cell's profile in the condition, with what the classifier counts on."""
+
+    cell: Cell
+    digest: str
+    profile: UnitProfile
+    row: CountRow
+    vm: VmProfile | None
+
+
+def judge_units(found: ConditionCycles, cells: Sequence[Cell], library: TypeLibrary,
+                settings: Settings) -> JudgedUnits:
+    """Return the result of every cell in one condition, in the order given."""
+    none = np.zeros((0, len(library.families) + 1))
+    if not cells:
+        return JudgedUnits((), None, none)
+    cycles = found.brainstem_cycles(settings)
+    seen = _seen(cells, cycles, settings)
+    drawn = draw_families(library, _timing(cycles), n_bins=settings.phase.n_bins,
+                          n_draws=settings.classify.n_draws)
+    table = stacked([one.row for one in seen], settings.phase.n_bins)
+    suggested = suggest([_facts(one, settings) for one in seen], table, found.nerve_cycles.rhythm,
+                        library=library, drawn=drawn, settings=settings)
+    q_values = benjamini_hochberg([one.profile.modulation.eta_squared_p for one in seen])
+    results = tuple(_result(one, found, suggestion, float(q), settings)
+                    for one, suggestion, q in zip(seen, suggested.suggestions, q_values, strict=True))
+    return JudgedUnits(results, suggested.regime, none)
+
+
+def _seen(cells: Sequence[Cell], cycles: Cycles, settings: Settings) -> list[_Seen]:
+    digests: list[str] = []
+
+    def trains() -> Iterator[Train]:
+        for cell in cells:
+            times_s = cell.train.read()
+            digests.append(train_digest(times_s))
+            yield times_s, cell.observed_s
+
+    profiles = unit_profiles(trains(), cycles, settings=settings, seed=SEED)
+    return [_Seen(cell, digests[i], profile, count_row(profile.by_phase, profile.exposure.seconds),
+                  mean_potential(cell, cycles, settings))
+            for i, (cell, profile) in enumerate(zip(cells, profiles, strict=True))]
+
+
+def _timing(cycles: Cycles) -> Timing:
+    if not cycles.n_cycles:
+        return USUAL
+    return Timing(float(np.median(cycles.ti_s)), float(np.median(cycles.te_s)))
+
+
+def _facts(one: _Seen, settings: Settings) -> UnitFacts:
+    profile = one.profile
+    return UnitFacts(profile.histogram, profile.modulation, profile.features, profile.histogram.n_cycles,
+                     membrane=membrane_levels(one.cell, one.vm), is_held=one.cell.is_held)
+
+
+def _result(one: _Seen, found: ConditionCycles, suggestion: Suggestion, q_value: float,
+            settings: Settings) -> UnitResult:
+    profile = one.profile
+    return UnitResult(
+        unit=one.cell.id, condition=found.condition.name, digest=one.digest,
+        n_cycles=profile.histogram.n_cycles, n_spikes=profile.histogram.n_spikes, histogram=profile.histogram,
+        locked=profile.locked, modulation=profile.modulation, features=profile.features, suggestion=suggestion,
+        raster=profile.raster, flags=unit_flags(profile, suggestion, one.cell, settings), q_value=q_value,
+        columns=one.cell.columns, vm=one.vm, vm_spikes=one.cell.vm_spikes)

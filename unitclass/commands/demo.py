@@ -1,0 +1,62 @@
+"""`unitclass demo`: the main job on a sample session, start to end."""
+
+from __future__ import annotations
+
+import argparse
+import shutil
+from pathlib import Path
+
+FOLDER = "unitclass-demo"
+
+
+def add_arguments(parser: argparse.ArgumentParser) -> None:
+    """Declare the options."""
+    parser.add_argument("--out", default=FOLDER, metavar="DIR", help=f"working folder (default: {FOLDER})")
+    parser.add_argument("--quiet", action="store_true", help="no progress, no notes")
+
+
+def run(args: argparse.Namespace) -> int:
+    """Copy the sample, classify it, write the labelled NWB, and say what to type next."""
+    from unitclass.commands.export import made_folder, write_copy
+    from unitclass.commands.labels import labels_of
+    from unitclass.commands.parser import parse
+    from unitclass.commands.runs import run_files, write_rows
+    from unitclass.commands.views import print_units
+    from unitclass.io.tables import CLASSIFY_COLUMNS, classify_rows
+
+    folder = Path(made_folder(args.out))
+    session, table = _copied_sample(folder), folder / "units.csv"
+    quiet = ["--quiet"] if args.quiet else []
+    job = parse(["export", str(session), "--out", str(folder), "--force", *quiet])
+    for outcome in run_files(job):
+        if outcome.result is None:
+            return 1
+        labels = labels_of(outcome.result, job)
+        print_units(outcome.result, labels)
+        job.table = str(table)
+        write_rows(classify_rows(outcome.result, labels), job, columns=CLASSIFY_COLUMNS)
+        target = write_copy(outcome, job)
+    _say_what_next(session, table, target)
+    return 0
+
+
+def _copied_sample(folder: Path) -> Path:
+    """Return the working copy; an earlier one is kept, since decisions may hang on it."""
+    from unitclass.io.resolver import samples_folder
+
+    source = next(path for path in sorted(samples_folder().glob("*.nwb")) if "three-phase" in path.name)
+    copy = folder / source.name
+    if not copy.exists():
+        shutil.copyfile(source, copy)
+    return copy
+
+
+def _say_what_next(session: Path, table: Path, target: str) -> None:
+    print("written:")
+    print(f"  {session}  the session, a copy of the sample")
+    print(f"  {table}  the suggestions as a table")
+    print(f"  {target}  the labelled NWB")
+    print("next:")
+    print(f"  unitclass inventory {session}")
+    print(f"  unitclass cycles {session}")
+    print("  unitclass classify YOUR_FILE.nwb --table units.csv")
