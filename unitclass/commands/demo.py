@@ -7,6 +7,7 @@ import shutil
 from pathlib import Path
 
 FOLDER = "unitclass-demo"
+SAMPLE = "quill-baseline.nwb"
 
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
@@ -44,7 +45,7 @@ def _copied_sample(folder: Path) -> Path:
     """Return the working copy; an earlier one is kept, since decisions may hang on it."""
     from unitclass.io.resolver import samples_folder
 
-    source = next(path for path in sorted(samples_folder().glob("*.nwb")) if "three-phase" in path.name)
+    source = samples_folder() / SAMPLE
     copy = folder / source.name
     if not copy.exists():
         shutil.copyfile(source, copy)

@@ -11,7 +11,15 @@ import numpy as np
 
 from unitclass.io.provenance import described
 from unitclass.io.safe_text import safe_text
-from unitclass.io.table_columns import Column, Table, column_name, count_column, number_column, text_column
+from unitclass.io.table_columns import (
+    Column,
+    Table,
+    column_name,
+    count_column,
+    number_column,
+    text_column,
+    word_column,
+)
 from unitclass.io.table_files import Cell
 from unitclass.io.tables import UNDECIDED, carried_names, classify_rows, cycle_rows, joined
 from unitclass.io.unit_rows import UnitRows, spikes_within
@@ -84,7 +92,6 @@ def firing_types_table(result: SessionResult, labels: Labels, rows: UnitRows, ru
     units = [unit for _, unit in result.units()]
     cells = classify_rows(result, labels)
     standing = [labels.get(unit.key, UNDECIDED) for unit in units]
-    carried = carried_names(result).values()
     columns = (
         *rows.columns_for(units),
         *(text_column(n, d, [str(row[n]) for row in cells]) for n, d in _TYPE_TEXTS.items()),
@@ -93,11 +100,9 @@ def firing_types_table(result: SessionResult, labels: Labels, rows: UnitRows, ru
         text_column("rule_type", "what the rule of thumb says", [u.suggestion.rule_type for u in units]),
         *(count_column(n, d, [int(_number(row[n])) for row in cells]) for n, d in _TYPE_COUNTS.items()),
         *(number_column(n, d, _floats(cells, n)) for n, d in _TYPE_NUMBERS.items()),
-        *_probability_columns(units),
-        *(text_column(column_name("source", n), f"{n}, as the source gives it", [str(row[n]) for row in cells])
-          for n in carried))
+        *_probability_columns(units))
     words = described(result, f"firing type of every unit in every condition. {run}")
-    return Table(FIRING_TYPES, words, len(units), columns)
+    return Table(FIRING_TYPES, words, len(units), (*columns, *_carried_columns(result, cells, columns)))
 
 
 def histograms_table(result: SessionResult, rows: UnitRows) -> Table:
@@ -165,6 +170,15 @@ def _probability_columns(units: Sequence[UnitResult]) -> list[Column]:
     return [number_column(column_name("probability", name), f"probability of {name}",
                           [unit.suggestion.probabilities.get(name, math.nan) for unit in units])
             for name in types]
+
+
+def _carried_columns(result: SessionResult, cells: Sequence[dict[str, Cell]],
+                     own: Sequence[Column]) -> list[Column]:
+    taken = {column.name for column in own}
+    names = [(column_name(name), name) for name in carried_names(result).values()]
+    return [word_column(column_name("source", short) if short in taken else short,
+                        f"{name}, as the source gives it", [str(row[name]) for row in cells])
+            for short, name in names]
 
 
 def _late_e_column(rows: Sequence[dict[str, Cell]]) -> list[Column]:

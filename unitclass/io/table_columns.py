@@ -13,6 +13,7 @@ from unitclass.io.safe_text import safe_text
 from unitclass.records import FloatArray, IntArray
 
 _AS_PARENTHESES = str.maketrans("{}", "()")
+_YES_AND_NO = (("yes", "no"), ("y", "n"), ("true", "false"), ("t", "f"), ("hit", "miss"))
 _AS_UNDERSCORE = str.maketrans("/\\:.", "____")
 
 
@@ -82,6 +83,14 @@ def text_column(name: str, description: str, values: Sequence[str]) -> Column:
     """
     cells = [safe_text(value).translate(_AS_PARENTHESES) for value in values]
     return Column(name, description, np.array([*cells, None], dtype=object)[:-1])
+
+
+def word_column(name: str, description: str, values: Sequence[str]) -> Column:
+    """Return a column of text, or of truth values if all its words are a yes and a no."""
+    for yes, no in _YES_AND_NO:
+        if {value.lower() for value in values} == {yes, no}:
+            return Column(name, f"{description} (true: {yes})", np.array([v.lower() == yes for v in values]))
+    return text_column(name, description, values)
 
 
 def number_column(name: str, description: str, values: Sequence[float] | FloatArray) -> Column:

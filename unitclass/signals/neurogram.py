@@ -1,0 +1,238 @@
+"""From a nerve, raw or integrated, to its activity: streamed, decimated early, never delayed.
+
+Two traces come of it. The *activity* is fine (about 500 Hz) and without lag: cycles are found on
+it. The *envelope* is what the trade looks at, through the leaky integrator asked for; it lags by
+its time constant and is for pictures, peaks and areas only.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from unitclass.errors import SignalError
+from unitclass.records import Envelope, FloatArray, Signal
+from unitclass.settings import NerveSettings
+from unitclass.signals.frames import frames
+from unitclass.signals.mains import HumFit, find_hum
+from unitclass.signals.smoothing import boxcar, filled
+
+GRID_HZ = 500.0
+ENVELOPE_HZ = 250.0
+WARM_UP_S = 0.25
+
+
+@dataclass(frozen=True)
+class Activity:
+    """Fine activity of one nerve without lag.
+
+    Attributes
+    ----------
+    values : ndarray, shape (n_samples,)
+        Amplitude in the nerve's unit; NaN in gaps. Sample i is centred on start_s + i / rate_hz.
+    is_power : bool
+        True when floor and burst add as powers (a rectified trace with a true zero), False when they
+        add as they are.
+    sign : int
+        -1 when the trace was turned over.
+    words : tuple of str
+        How it was made.
+    """
+
+    name: str
+    role: str
+    unit: str
+    start_s: float
+    rate_hz: float
+    values: FloatArray
+    is_power: bool
+    sign: int = 1
+    words: tuple[str, ...] = ()
+
+    @property
+    def times_s(self) -> FloatArray:
+        """Return the session time of every sample."""
+        return self.start_s + np.arange(self.values.size) / self.rate_hz
+
+
+def envelope(signal: Signal, settings: NerveSettings, *, start_s: float, stop_s: float) -> Envelope:
+    """Return the integrated activity of a stretch, as the trade displays it.
+
+    Parameters
+    ----------
+    signal : Signal
+        Raw (band-passed, rectified, integrated) or integrated already (used as it is, turned
+        over when its bursts point down).
+    settings : NerveSettings
+        Band, integrator and time constant.
+    start_s, stop_s : float
+        The stretch, session time.
+
+    Returns
+    -------
+    Envelope
+        At most about 250 samples a second; NaN in gaps.
+
+    Raises
+    ------
+    SignalError
+        When the stretch holds no sample, or none but NaN, or a constant.
+    """
+    return displayed(activity(signal, settings, start_s=start_s, stop_s=stop_s), settings, signal.is_integrated)
+
+
+def activity(signal: Signal, settings: NerveSettings, *, start_s: float, stop_s: float) -> Activity:
+    """Return the fine activity of a stretch; parameters and errors as for `envelope`."""
+    start_s, stop_s = max(start_s, signal.start_s), min(stop_s, signal.stop_s)
+    if not stop_s > start_s:
+        raise SignalError(f"nerve {signal.name} covers {signal.start_s:.1f} to {signal.stop_s:.1f} s, nothing of "
+                          "this stretch", remedy="name another nerve with --nerve")
+    made = (_stored if signal.is_integrated else _rectified)(signal, settings, start_s, stop_s)
+    return _checked(made)
+
+
+def displayed(fine: Activity, settings: NerveSettings, is_integrated: bool) -> Envelope:
+    """Return the envelope of an activity: integrated when raw, as it is when integrated."""
+    values, words = fine.values, "as recorded, no further smoothing"
+    if not is_integrated:
+        values, words = integrated(fine.values, fine.rate_hz, settings)
+    step = max(1, int(fine.rate_hz // ENVELOPE_HZ))
+    coarse, shift_s = _averaged(values, step), (step - 1) / 2 / fine.rate_hz
+    return Envelope(fine.name, fine.role, fine.unit, fine.start_s + shift_s, fine.rate_hz / step,
+                    coarse.astype(np.float32), words)
+
+
+def integrated(values: FloatArray, rate_hz: float, settings: NerveSettings) -> tuple[FloatArray, str]:
+    """Return rectified activity through the integrator of the settings, and its name in words."""
+    tau_s = settings.tau_ms / 1000
+    if settings.smoother == "moving average":
+        width = max(1, round(tau_s * rate_hz)) | 1
+        return boxcar(values, width), f"centred moving average of {settings.tau_ms:.0f} ms"
+    return leaky(values, rate_hz, tau_s), f"leaky integrator, time constant {settings.tau_ms:.0f} ms (lags)"
+
+
+def leaky(values: FloatArray, rate_hz: float, tau_s: float) -> FloatArray:
+    """Return `values` through a leaky integrator: a step reaches 63.2 % after one time constant.
+
+    First order, exact for an input that is constant within a sample. NaN is bridged for the
+    integrator and put back afterwards.
+    """
+    from scipy.signal import lfilter
+
+    bridged = filled(values)
+    keep = float(np.exp(-1.0 / (rate_hz * tau_s)))
+    out, _ = lfilter([1 - keep], [1.0, -keep], bridged, zi=np.array([keep * bridged[0]]))
+    return np.where(np.isfinite(values), out, np.nan)
+
+
+# ------------------------------------------------------------------------------------- raw
+
+def _rectified(signal: Signal, settings: NerveSettings, start_s: float, stop_s: float) -> Activity:
+    low_hz, high_hz = _band(signal.rate_hz, settings)
+    block = max(1, round(signal.rate_hz / GRID_HZ))
+    warm_up = int(min(WARM_UP_S, start_s - signal.start_s) * signal.rate_hz / block)
+    from_s = start_s - warm_up * block / signal.rate_hz
+    hum = find_hum(signal, start_s=start_s, stop_s=stop_s, low_hz=low_hz, high_hz=high_hz)
+    origin_s, parts = start_s, []
+    for origin_s, values in _filtered(signal, from_s, stop_s, block, (low_hz, high_hz), HumFit(hum, signal.rate_hz)):
+        parts.append(_averaged(values, block).astype(np.float32))
+    values = np.concatenate(parts).astype(float)[warm_up:] if parts else np.empty(0)
+    words = (f"raw at {signal.rate_hz:g} Hz ({signal.form_reason or 'as given'}): band-passed {low_hz:g} to "
+             f"{high_hz:g} Hz, rectified", hum.words)
+    first_s = origin_s + (warm_up * block + (block - 1) / 2) / signal.rate_hz
+    return Activity(signal.name, signal.role, signal.unit, first_s, signal.rate_hz / block, values,
+                    is_power=True, words=tuple(w for w in words if w))
+
+
+def _band(rate_hz: float, settings: NerveSettings) -> tuple[float, float]:
+    high_hz = min(settings.high_cut_hz, 0.45 * rate_hz)
+    return min(settings.low_cut_hz, 0.3 * high_hz), high_hz
+
+
+def _filtered(signal: Signal, start_s: float, stop_s: float, block: int, band_hz: tuple[float, float],
+              hum: HumFit) -> Iterator[tuple[float, FloatArray]]:
+    """Yield the rectified band-passed trace frame by frame, NaN where the recording has none."""
+    from scipy.signal import sosfilt
+
+    sos = _sections(signal.rate_hz, band_hz)
+    state, last = np.zeros((sos.shape[0], 2)), np.nan
+    for frame in frames(signal, start_s=start_s, stop_s=stop_s, multiple=block):
+        values, missing = frame.values, np.isnan(frame.values)
+        if missing.any():
+            values = _held(values, missing, last)
+        if np.isnan(last):
+            base = values[0]
+        last = values[-1]
+        values = values - base
+        hum.subtract(values)
+        if values.any() or state.any():
+            values, state = sosfilt(sos, values, zi=state)
+            state[np.abs(state) < 1e-200] = 0.0
+        values = np.abs(values)
+        if missing.any():
+            values[missing] = np.nan
+        yield frame.origin_s, values
+
+
+def _sections(rate_hz: float, band_hz: tuple[float, float]) -> FloatArray:
+    """Return Butterworth sections: fourth order below (mains, heart, sway), second order above."""
+    from scipy.signal import butter
+
+    low = butter(4, band_hz[0], "high", fs=rate_hz, output="sos")
+    high = butter(2, band_hz[1], "low", fs=rate_hz, output="sos")
+    return np.vstack([low, high])
+
+
+def _held(values: FloatArray, missing: np.ndarray, last: float) -> FloatArray:
+    """Return values with NaN replaced by the last sample before (no step for the filter to ring on)."""
+    at = np.where(missing, -1, np.arange(values.size))
+    at = np.maximum.accumulate(at)
+    start = values[~missing][0] if np.isnan(last) and (~missing).any() else (0.0 if np.isnan(last) else last)
+    return np.where(at < 0, start, values[np.maximum(at, 0)])
+
+
+# ------------------------------------------------------------------------------ integrated
+
+def _stored(signal: Signal, settings: NerveSettings, start_s: float, stop_s: float) -> Activity:
+    block = max(1, round(signal.rate_hz / GRID_HZ))
+    origin_s, parts = start_s, []
+    for frame in frames(signal, start_s=start_s, stop_s=stop_s, multiple=block):
+        origin_s = frame.origin_s
+        parts.append(_averaged(frame.values, block))
+    values = np.concatenate(parts) if parts else np.empty(0)
+    words = f"integrated already ({signal.form_reason or 'as given'}): used as it is"
+    return Activity(signal.name, signal.role, signal.unit, origin_s + (block - 1) / 2 / signal.rate_hz,
+                    signal.rate_hz / block, values, is_power=False, words=(words,))
+
+
+# ---------------------------------------------------------------------------------- shared
+
+def _averaged(values: FloatArray, block: int) -> FloatArray:
+    """Return means over consecutive blocks; NaN where more than half of a block is missing."""
+    if block == 1:
+        return np.asarray(values, dtype=float)
+    n = values.size // block
+    cut = values[: n * block].reshape(n, block)
+    means = cut.mean(axis=1)
+    bad = np.flatnonzero(np.isnan(means))
+    if bad.size:
+        present = np.isfinite(cut[bad])
+        count = present.sum(axis=1)
+        total = np.where(present, cut[bad], 0.0).sum(axis=1)
+        means[bad] = np.where(count * 2 > block, total / np.maximum(count, 1), np.nan)
+    return np.asarray(means)
+
+
+def _checked(made: Activity) -> Activity:
+    finite = made.values[np.isfinite(made.values)]
+    if not made.values.size:
+        raise SignalError(f"nerve {made.name} holds no sample in this stretch",
+                          remedy="name another nerve with --nerve")
+    if not finite.size:
+        raise SignalError(f"nerve {made.name} is all NaN in this stretch", remedy="name another nerve with --nerve")
+    if not np.ptp(finite) > 1e-9 * float(np.abs(finite).max()):
+        raise SignalError(f"nerve {made.name} is constant in this stretch: nothing was recorded",
+                          remedy="name another nerve with --nerve")
+    return replace(made, values=made.values)

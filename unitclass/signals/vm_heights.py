@@ -1,0 +1,237 @@
+"""Which events are a cell's spikes, which are spikelets, which neither.
+
+A cell's spikes are its dominant height: the tallest group with enough members. Smaller
+all-or-none events are spikelets, counted apart. Heights drift with the electrode's seal, and
+shrink along a burst, so the height that counts is a running one, and an event only somewhat
+smaller than the spike just before it belongs to the same burst.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from math import erfc, sqrt
+
+import numpy as np
+
+from unitclass.records import BoolArray, FloatArray
+from unitclass.settings import MembraneSettings
+from unitclass.signals.vm_bumps import without_lesser_neighbours
+from unitclass.signals.vm_detector import Detector, Events
+
+LEAST_HEIGHT_MV = 7.0
+"""A cell whose largest events are smaller has no spikes here: remote sharp electrodes see over 10 mV."""
+
+BURST_S = 0.1
+BURST_SHRINK = 0.6
+
+
+@dataclass(frozen=True)
+class Sorted:
+    """Masks over the events, shape (n_events,), and what was decided on the way."""
+
+    is_spike: BoolArray
+    is_spikelet: BoolArray
+    n_artefacts: int
+    dominant_mv: float
+    least_z: float
+    new_heights_s: tuple[float, ...] = ()
+
+
+def sort_events(events: Events, detector: Detector, settings: MembraneSettings, observed_s: float) -> Sorted:
+    """Tell spikes from spikelets, artefacts and noise.
+
+    Parameters
+    ----------
+    events : Events
+        In time order.
+    detector : Detector
+        That found them.
+    settings : MembraneSettings
+        Limits the user set; 0 derives them.
+    observed_s : float
+        Seconds searched; sets how many chance crossings are to be expected.
+    """
+    shaped = spike_shaped(events, detector, settings)
+    clear = shaped & (events.z > 4.5)
+    dominant, split = dominant_size(events.size_mv[clear])
+    if not _is_tall_enough(events, clear, split, settings):
+        return _no_spikes(events, clear, dominant)
+    least_z = threshold_z(float(np.median(events.z[clear & (events.size_mv >= split)])),
+                          float(np.sum(clear) / max(observed_s, 1e-9)))
+    typical = clear & (events.size_mv >= split)
+    width = float(np.median(events.half_width_ms[typical]))
+    usual = _usual_width(events, width)
+    passing = shaped & usual & (events.z >= least_z) & (events.height_mv >= settings.min_height_mv)
+    is_spike, jumps = _follow(events, passing, dominant, split / dominant)
+    is_spike = _refractory(events, is_spike, settings.refractory_ms)
+    spikelet = shaped & usual & ~is_spike & (events.z > 5.5) & (events.height_mv > 2.0)
+    spikelet &= ~_near(events.time_s, events.time_s[is_spike], 0.004)
+    n_artefacts = int(np.sum((events.z > 6.0) & ~is_spike & (events.height_mv > 0.4 * dominant)
+                             & (events.half_width_ms < max(settings.min_width_ms, 0.45 * width))))
+    return Sorted(is_spike, spikelet, n_artefacts, dominant, least_z, jumps)
+
+
+def spike_shaped(events: Events, detector: Detector, settings: MembraneSettings) -> BoolArray:
+    """Return which events rise steeply, last long enough, and fall again on both sides."""
+    slope = settings.min_dvdt_mv_ms or 2.5 * detector.slope_noise_mv_ms
+    with np.errstate(invalid="ignore", divide="ignore"):
+        ratio = events.bump_mv / events.size_mv
+    usual = float(np.median(ratio[events.z > 4.5])) if np.any(events.z > 4.5) else 1.0
+    noise = events.size_mv / np.maximum(events.z, 1e-9)
+    stands_out = events.bump_mv >= 0.35 * min(usual, 1.0) * events.size_mv - 2.0 * noise
+    return ((events.max_dvdt_mv_ms >= slope) & (events.half_width_ms >= settings.min_width_ms)
+            & (events.half_width_ms <= max(6.0, 4.0 * detector.lens.width_ms)) & stands_out
+            & (events.height_mv > 0.0))
+
+
+def dominant_size(sizes: FloatArray) -> tuple[float, float]:
+    """Return the median of the tallest group of sizes that has enough members, and its lower limit.
+
+    Groups are parted where the density of the logarithm falls below half of both its neighbouring
+    modes and the modes differ by half as much again. The limit is 0 where nothing lies below. Enough is
+    three in a hundred, at least five, and never more than twenty: some artefacts are taller than spikes.
+    """
+    if sizes.size == 0:
+        return 0.0, 0.0
+    limits = [0.0, *group_limits(sizes), np.inf]
+    enough = min(20.0, max(5.0, 0.03 * sizes.size))
+    for low, high in reversed(list(zip(limits[:-1], limits[1:], strict=True))):
+        inside = sizes[(sizes >= low) & (sizes < high)]
+        if inside.size >= enough or low == 0.0:
+            return float(np.median(inside if inside.size else sizes)), float(low)
+    return float(np.median(sizes)), 0.0
+
+
+def group_limits(sizes: FloatArray, *, bin_log2: float = 0.1) -> list[float]:
+    """Return the sizes at which groups part, ascending."""
+    logs = np.log2(np.maximum(sizes, 1e-6))
+    n_bins = max(3, int(np.ceil((logs.max() - logs.min()) / bin_log2)) + 6)
+    low = logs.min() - 3 * bin_log2
+    counts, edges = np.histogram(logs, bins=n_bins, range=(low, low + n_bins * bin_log2))
+    density = np.convolve(counts.astype(float), [0.05, 0.25, 0.4, 0.25, 0.05], mode="same")
+    modes = [i for i in range(1, n_bins - 1) if density[i] > density[i - 1] and density[i] >= density[i + 1]]
+    limits: list[float] = []
+    last = modes[0] if modes else 0
+    for mode in modes[1:]:
+        valley = last + int(np.argmin(density[last : mode + 1]))
+        is_deep = density[valley] < 0.5 * min(density[last], density[mode])
+        if is_deep and (mode - last) * bin_log2 >= np.log2(1.5):
+            limits.append(float(2.0 ** (edges[valley] + 0.5 * bin_log2)))
+            last = mode
+        elif density[mode] > density[last]:
+            last = mode
+    return limits
+
+
+def threshold_z(dominant_z: float, rate_hz: float, *, tests_hz: float = 1500.0) -> float:
+    """Return the score, in deviations, from which an event counts.
+
+    Where spikes stand far out of the noise: chance crossings of one in a thousand seconds. Where they do
+    not: the level at which chance crossings and missed spikes are as many.
+    """
+    levels = np.arange(LOWEST_Z, 6.0, 0.05)
+    chance = tests_hz * np.array([_tail(z) for z in levels])
+    missed = rate_hz * np.array([_tail(dominant_z - z) for z in levels])
+    strict = levels[np.flatnonzero(chance <= 1e-3)[0]]
+    even = levels[int(np.argmin(chance + missed))]
+    return float(min(strict, max(even, LOWEST_Z)))
+
+
+LOWEST_Z = 3.4
+
+
+def _tail(z: float) -> float:
+    return 0.5 * erfc(z / sqrt(2.0))
+
+
+def _is_tall_enough(events: Events, clear: BoolArray, split: float, settings: MembraneSettings) -> bool:
+    tall = events.height_mv[clear & (events.size_mv >= split)]
+    return bool(tall.size and np.median(tall) >= (settings.min_height_mv or LEAST_HEIGHT_MV))
+
+
+def _no_spikes(events: Events, clear: BoolArray, dominant: float) -> Sorted:
+    none = np.zeros(events.time_s.size, bool)
+    return Sorted(none, clear & (events.z > 5.5) & (events.height_mv > 2.0), 0, dominant, 5.5)
+
+
+def _usual_width(events: Events, width_ms: float) -> BoolArray:
+    """Return which events are neither much narrower (pops) nor much wider (synaptic) than the spikes."""
+    return np.asarray((events.half_width_ms >= 0.45 * width_ms) & (events.half_width_ms <= 3.5 * width_ms + 0.5))
+
+
+def _follow(events: Events, passing: BoolArray, dominant: float, least: float) -> tuple[BoolArray, tuple[float, ...]]:
+    """Go through the events in time with a running height; return the spikes and where it jumped.
+
+    Where the cell's height falls for good within a moment (the electrode's seal) nothing would ever
+    pass again: thirty events in a row that failed, over ten seconds, and whose like was rare before, are
+    taken for the spikes.
+    """
+    tracker = _Tracker(dominant, least)
+    is_spike = np.zeros(events.time_s.size, bool)
+    for i in np.flatnonzero(passing):
+        rows = tracker.take(int(i), float(events.time_s[i]), float(events.size_mv[i]))
+        is_spike[rows] = True
+    return is_spike, tuple(tracker.jumps_s)
+
+
+class _Tracker:
+    def __init__(self, dominant: float, least: float) -> None:
+        self.reference = dominant
+        self.least = least
+        self.last_s, self.last_size = -np.inf, 0.0
+        self.failed: list[tuple[int, float, float]] = []
+        self.n_before = 0
+        self.begun_s: float | None = None
+        self.jumps_s: list[float] = []
+
+    def take(self, row: int, time_s: float, size: float) -> list[int]:
+        """Return the rows that this event shows to be spikes: itself, none, or a failed run."""
+        if self.begun_s is None:
+            self.begun_s = time_s
+        in_burst = time_s - self.last_s < BURST_S
+        chained = in_burst and size >= BURST_SHRINK * self.last_size
+        if size >= self.least * self.reference or chained:
+            self._accept(time_s, size, in_burst)
+            return [row]
+        self.failed.append((row, time_s, size))
+        return self._jump()
+
+    def _accept(self, time_s: float, size: float, in_burst: bool) -> None:
+        if not in_burst:
+            self.reference += 0.05 * (size - self.reference)
+        self.n_before += len(self.failed)
+        self.failed.clear()
+        self.last_s, self.last_size = time_s, size
+
+    def _jump(self) -> list[int]:
+        run = self.failed
+        if len(run) < 30 or run[-1][1] - run[0][1] < 10.0:
+            return []
+        rate = len(run) / (run[-1][1] - run[0][1])
+        before_s = max(run[0][1] - (self.begun_s or 0.0), 1e-9)
+        if self.n_before / before_s > 0.2 * rate or run[0][1] == self.begun_s:
+            return []
+        rows = [r for r, _, _ in run]
+        self.jumps_s.append(run[0][1])
+        self.reference = float(np.median([s for _, _, s in run]))
+        self.last_s, self.last_size = run[-1][1], run[-1][2]
+        self.failed = []
+        return rows
+
+
+def _refractory(events: Events, is_spike: BoolArray, refractory_ms: float) -> BoolArray:
+    rows = np.flatnonzero(is_spike)
+    times = events.time_s[rows]
+    kept = without_lesser_neighbours(times, events.size_mv[rows], 1e-3 * refractory_ms)
+    out = np.zeros(is_spike.size, bool)
+    out[rows[np.isin(times, kept)]] = True
+    return out
+
+
+def _near(times: FloatArray, spikes: FloatArray, within_s: float) -> BoolArray:
+    """Return which times lie within `within_s` of a spike."""
+    if spikes.size == 0:
+        return np.zeros(times.size, bool)
+    right = np.clip(np.searchsorted(spikes, times), 0, spikes.size - 1)
+    left = np.maximum(right - 1, 0)
+    return np.asarray(np.minimum(np.abs(times - spikes[right]), np.abs(times - spikes[left])) < within_s)
