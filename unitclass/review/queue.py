@@ -138,7 +138,7 @@ class ReviewQueue:
         """Put the cursor on a row, bringing it into view if the filter hid it; raises KeyError."""
         if key not in self._rows:
             raise KeyError(key)
-        if self.view and key not in self._places or not self._view:
+        if (self.view and key not in self._places) or not self._view:
             self._view = self._ordered([*self._view, key])
             self._seen = None
         self._current = key

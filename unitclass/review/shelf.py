@@ -67,7 +67,7 @@ class ResultShelf:
     def _forget(self, keys: Mapping[EntryKey, LightUnit]) -> None:
         for key in keys:
             for shelf in (self._light, self._replaced, self._units):
-                shelf.pop(key, None)  # type: ignore[attr-defined]
+                shelf.pop(key, None)
 
     @property
     def files(self) -> tuple[FileState, ...]:
