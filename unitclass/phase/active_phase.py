@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
-from unitclass.phase.histogram import chosen_bandwidth, smoothed_rate
+from unitclass.phase.edges import Rise, rise_place
+from unitclass.phase.histogram import chosen_bandwidth, smoothed_rate, smoothing_matrix
 from unitclass.records import BoolArray, FloatArray, PhaseHistogram
 
 LOW_SHARE = 0.1
@@ -48,39 +49,88 @@ def active_phase(histogram: PhaseHistogram) -> ActivePhase:
     The unit is active where its smoothed rate is above its background by a tenth of the peak's
     height over background (by more, up to a half, the more of the peak is background) and
     above the noise of the background. One quiet bin does not end it. At a transition of phase
-    the edge is the transition itself; elsewhere it is interpolated between bins.
+    the edge is the transition itself; elsewhere it is found between bins (`edges.rise_place`).
+    Nothing stands out unless the peak is above the background by five times the noise that a
+    flat cell with as many spikes, as bursty, has.
     """
-    rate = np.nan_to_num(smoothed_rate(histogram, bandwidth=chosen_bandwidth(histogram, low=0.02)))
-    peak_bin = int(np.argmax(smoothed_or_zero(histogram)))
+    width = chosen_bandwidth(histogram, low=0.02)
+    rate = np.nan_to_num(smoothed_rate(histogram, bandwidth=width))
+    calm = np.nan_to_num(smoothed_rate(histogram, bandwidth=max(width, 0.05)))
+    peak_bin = int(np.argmax(calm))
     background = float(np.sort(rate)[: max(1, rate.size // 4)].mean())
-    peak_hz = float(rate[max(0, peak_bin - 1) : peak_bin + 2].max())
-    noise = _background_noise(histogram, background)
-    level = _level(background, peak_hz, noise)
-    peak = float(histogram.centres[peak_bin])
-    if peak_hz - background <= SEEN_LEVELS * noise or peak_hz <= 0:
-        return ActivePhase(np.nan, peak, np.nan, peak_hz, background, level, np.zeros(rate.size, bool))
+    peak_hz = float(calm[peak_bin])
+    noise = _flat_noise(histogram, max(width, 0.05))[peak_bin]
+    level = _level(background, peak_hz, _background_noise(histogram, background, width))
     first, n_active = _run_around(rate > level, peak_bin)
+    is_seen = peak_hz > 0 and peak_hz - background > SEEN_LEVELS * noise and n_active < rate.size
     is_active = np.zeros(rate.size, bool)
+    if not is_seen:
+        return ActivePhase(np.nan, float(histogram.centres[peak_bin]), np.nan, peak_hz, background, level, is_active)
     is_active[(first + np.arange(n_active)) % rate.size] = True
-    if n_active >= rate.size:
-        return ActivePhase(np.nan, peak, np.nan, peak_hz, background, level, is_active)
-    onset = _edge(rate, first, level)
-    offset = 2.0 - _edge(rate[::-1], (rate.size - first - n_active) % rate.size, level)
-    return ActivePhase(onset, peak, offset % 2.0, peak_hz, background, level, is_active)
+    edge = _Edge(histogram, rate, level, background, peak_hz, width)
+    onset = edge.phase(first, (peak_bin - first) % rate.size, rate.size - n_active)
+    offset = edge.mirrored().phase((-first - n_active) % rate.size, (first + n_active - 1 - peak_bin) % rate.size,
+                                   rate.size - n_active)
+    return ActivePhase(onset % 2.0, float(histogram.centres[peak_bin]), -offset % 2.0, peak_hz, background, level,
+                       is_active)
 
 
-def smoothed_or_zero(histogram: PhaseHistogram) -> FloatArray:
-    """Return a rate smooth enough that its maximum is not a bin's noise, (n_bins,); 0 where unknown."""
-    return np.nan_to_num(smoothed_rate(histogram, bandwidth=chosen_bandwidth(histogram, low=0.05)))
+@dataclass(frozen=True)
+class _Edge:
+    """What is needed to place an edge; mirrored in time, an offset is an onset."""
+
+    histogram: PhaseHistogram
+    rate_hz: FloatArray
+    level_hz: float
+    background_hz: float
+    peak_hz: float
+    width: float
+    is_mirrored: bool = False
+
+    def mirrored(self) -> _Edge:
+        return replace(self, rate_hz=self.rate_hz[::-1], is_mirrored=True)
+
+    def phase(self, first: int, n_to_peak: int, n_quiet: int) -> float:
+        """Return the phase at which activity begins, `first` being its first bin."""
+        n = self.rate_hz.size
+        if first % (n // 2) == 0:
+            return first * 2.0 / n
+        reach = self.width * n / 2
+        before = min(int(np.ceil(2 * reach)) + 2, n_quiet)
+        after = max(2, min(int(np.ceil(4 * reach)) + 3, n_to_peak + 1))
+        window = (first + np.arange(-before, after)) % n
+        turn = -1 if self.is_mirrored else 1
+        rise = Rise(self.histogram.counts[::turn][window], self.histogram.exposure_s[::turn][window],
+                    self.rate_hz[window], before)
+        return (first - before + rise_place(rise, self.level_hz, self.background_hz, self.peak_hz)) * 2.0 / n
 
 
-def _background_noise(histogram: PhaseHistogram, background_hz: float) -> float:
+def _flat_noise(histogram: PhaseHistogram, width: float) -> FloatArray:
+    """Return the standard error, (n_bins,), of the smoothed rate of a flat cell with as many spikes.
+
+    Scaled by how much wider than Poisson limits the bootstrap limits are, where they are known.
+    """
+    kernel = smoothing_matrix(histogram.n_bins, width * histogram.n_bins / 2)
+    seconds = histogram.exposure_s @ kernel
+    mean_hz = histogram.counts.sum() / max(float(histogram.exposure_s.sum()), 1e-12)
+    variance = mean_hz * (histogram.exposure_s @ kernel**2) / np.maximum(seconds, 1e-12) ** 2
+    return np.sqrt(variance * _dispersion(histogram))
+
+
+def _dispersion(histogram: PhaseHistogram) -> float:
+    """Return the bins' variance by the bootstrap over that of Poisson counts, at least 1."""
+    known = np.isfinite(histogram.low_hz) & np.isfinite(histogram.high_hz) & (histogram.counts > 0)
+    if not known.any():
+        return 1.0
+    spread = ((histogram.high_hz - histogram.low_hz)[known] / 3.92 * histogram.exposure_s[known]) ** 2
+    return max(1.0, float(spread.sum() / histogram.counts[known].sum()))
+
+
+def _background_noise(histogram: PhaseHistogram, background_hz: float, width: float) -> float:
     """Return the standard error of the smoothed rate at the background, Poisson counts assumed."""
-    width = chosen_bandwidth(histogram, low=0.02) * histogram.n_bins / 2
-    seconds = histogram.exposure_s.sum() / histogram.n_bins * max(1.0, 2 * np.sqrt(np.pi) * width)
-    if seconds <= 0:
-        return np.inf
-    return float(np.sqrt(max(background_hz, 1 / seconds) / seconds))
+    n_bins = max(1.0, 2 * np.sqrt(np.pi) * width * histogram.n_bins / 2)
+    seconds = histogram.exposure_s.sum() / histogram.n_bins * n_bins
+    return float(np.sqrt(max(background_hz, 1 / seconds) / seconds)) if seconds > 0 else np.inf
 
 
 def _level(background_hz: float, peak_hz: float, noise_hz: float) -> float:
@@ -104,13 +154,3 @@ def _reach(is_above: BoolArray) -> int:
     below = ~is_above
     ends = np.flatnonzero(below & np.append(below[1:], True))
     return int(ends[0]) - 1 if ends.size else is_above.size - 1
-
-
-def _edge(rate: FloatArray, first: int, level_hz: float) -> float:
-    """Return the phase at which the rate first passes `level_hz`, before the centre of bin `first`."""
-    n = rate.size
-    if first % (n // 2) == 0:
-        return first * 2.0 / n
-    below, above = rate[first - 1], rate[first]
-    share = (level_hz - below) / (above - below) if above > below else 0.5
-    return float((first - 0.5 + np.clip(share, 0.0, 1.0)) * 2.0 / n)
