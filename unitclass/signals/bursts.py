@@ -128,7 +128,7 @@ def _tuned(fine: Activity, found: Bursts, settings: CycleSettings, scale: float)
     gap_s = float(np.median(found.first[1:] - found.last[:-1])) / fine.rate_hz
     width_s = float(np.clip(0.15 * min(length_s, gap_s), 0.02, 0.2))
     if width_s <= found.width_s:
-        return found if found.width_s < 0.35 * length_s else found
+        return found
     again = _at_width(fine, width_s, settings, scale)
     return again if _is_rhythm(again, fine) and again.contrast >= found.contrast * 0.9 else found
 

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+
 import numpy as np
 
 from unitclass.records import BoolArray, FloatArray
@@ -58,7 +60,8 @@ def running_median(values: FloatArray, n: int) -> FloatArray:
     return np.concatenate([np.full(half, inner[0]), inner, np.full(half, inner[-1])])
 
 
-def _windowed(trace: FloatArray, rate_hz: float, window_s: float, statistic, neighbours: int = 3) -> FloatArray:
+def _windowed(trace: FloatArray, rate_hz: float, window_s: float, statistic: Callable[[FloatArray], float],
+              neighbours: int = 3) -> FloatArray:
     step = max(1, int(rate_hz // COARSE_HZ))
     coarse = trace[::step]
     width = max(4, round(window_s * rate_hz / step))
