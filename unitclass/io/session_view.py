@@ -11,10 +11,16 @@ from numpy.typing import NDArray
 
 from unitclass.records import ConditionResult, SessionResult, UnitResult
 
+N_RANKED = 9
+"""Alternatives that the queue keeps: as many as there are digits to take one with."""
+
 
 @dataclass(frozen=True)
 class LightUnit:
-    """What the queue shows of one unit in one condition. `ranked` is (type, probability)."""
+    """What the queue shows of one unit in one condition.
+
+    `ranked` is (type, probability) of the N_RANKED most probable types; `UnitResult` has them all.
+    """
 
     unit: str
     condition: str
@@ -113,8 +119,8 @@ def head_of(result: SessionResult) -> SessionHead:
 
 def light_units(result: SessionResult) -> tuple[LightUnit, ...]:
     """Return the light list of a session's results."""
-    return tuple(LightUnit(u.unit, u.condition, u.digest, u.suggestion.type, u.suggestion.ranked, u.n_cycles,
-                           u.n_spikes, c.regime, u.shape_group, u.flags, dict(u.columns))
+    return tuple(LightUnit(u.unit, u.condition, u.digest, u.suggestion.type, u.suggestion.ranked[:N_RANKED],
+                           u.n_cycles, u.n_spikes, c.regime, u.shape_group, u.flags, dict(u.columns))
                  for c, u in result.units())
 
 

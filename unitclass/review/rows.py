@@ -7,7 +7,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from unitclass.io.session_view import LightUnit, SessionHead
+from unitclass.io.session_view import N_RANKED, LightUnit, SessionHead
 from unitclass.io.standing import newest_of, standing_labels
 from unitclass.io.store_records import SessionLog
 from unitclass.records import Decision, Labels, Suggestion, UnitResult
@@ -55,7 +55,7 @@ def row_of(head: SessionHead, unit: LightUnit, standing: Standing) -> QueueEntry
 
 def suggested_anew(unit: LightUnit, suggestion: Suggestion) -> LightUnit:
     """Return the light unit with another suggestion."""
-    return replace(unit, suggested_type=suggestion.type, ranked=suggestion.ranked)
+    return replace(unit, suggested_type=suggestion.type, ranked=suggestion.ranked[:N_RANKED])
 
 
 def change_in_words(before: LightUnit, after: LightUnit) -> str:
