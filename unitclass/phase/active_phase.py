@@ -21,7 +21,8 @@ class ActivePhase:
 
     `onset`, `offset` are NaN when no part of the cycle stands out; `peak`, `peak_hz` are then those of
     the greatest rate all the same. `background_hz` is the rate of the quietest quarter,
-    `level_hz` the rate that counts as active, `is_active` (n_bins,) the bins between.
+    `level_hz` the rate that counts as active, `is_active` (n_bins,) the bins between; `starts_at_once`
+    tells a step from a ramp at the onset.
     """
 
     onset: float
@@ -31,6 +32,7 @@ class ActivePhase:
     background_hz: float
     level_hz: float
     is_active: BoolArray
+    starts_at_once: bool = False
 
     @property
     def is_found(self) -> bool:
@@ -68,11 +70,11 @@ def active_phase(histogram: PhaseHistogram) -> ActivePhase:
         return ActivePhase(np.nan, float(histogram.centres[peak_bin]), np.nan, peak_hz, background, level, is_active)
     is_active[(first + np.arange(n_active)) % rate.size] = True
     edge = _Edge(histogram, rate, level, background, peak_hz, width)
-    onset = edge.phase(first, (peak_bin - first) % rate.size, rate.size - n_active)
-    offset = edge.mirrored().phase((-first - n_active) % rate.size, (first + n_active - 1 - peak_bin) % rate.size,
+    onset, is_step = edge.phase(first, (peak_bin - first) % rate.size, rate.size - n_active)
+    offset, _ = edge.mirrored().phase((-first - n_active) % rate.size, (first + n_active - 1 - peak_bin) % rate.size,
                                    rate.size - n_active)
     return ActivePhase(onset % 2.0, float(histogram.centres[peak_bin]), -offset % 2.0, peak_hz, background, level,
-                       is_active)
+                       is_active, is_step)
 
 
 @dataclass(frozen=True)
@@ -90,11 +92,11 @@ class _Edge:
     def mirrored(self) -> _Edge:
         return replace(self, rate_hz=self.rate_hz[::-1], is_mirrored=True)
 
-    def phase(self, first: int, n_to_peak: int, n_quiet: int) -> float:
-        """Return the phase at which activity begins, `first` being its first bin."""
+    def phase(self, first: int, n_to_peak: int, n_quiet: int) -> tuple[float, bool]:
+        """Return the phase at which activity begins, `first` being its first bin, and whether by a step."""
         n = self.rate_hz.size
         if first % (n // 2) == 0:
-            return first * 2.0 / n
+            return first * 2.0 / n, True
         reach = self.width * n / 2
         before = min(int(np.ceil(2 * reach)) + 2, n_quiet)
         after = max(2, min(int(np.ceil(4 * reach)) + 3, n_to_peak + 1))
@@ -102,7 +104,8 @@ class _Edge:
         turn = -1 if self.is_mirrored else 1
         rise = Rise(self.histogram.counts[::turn][window], self.histogram.exposure_s[::turn][window],
                     self.rate_hz[window], before)
-        return (first - before + rise_place(rise, self.level_hz, self.background_hz, self.peak_hz)) * 2.0 / n
+        place = rise_place(rise, self.level_hz, self.background_hz, self.peak_hz)
+        return (first - before + place.bins) * 2.0 / n, place.is_step
 
 
 def _flat_noise(histogram: PhaseHistogram, width: float) -> FloatArray:

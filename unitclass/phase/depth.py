@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 from numpy.typing import NDArray
 
 from unitclass.phase.exposure import CycleResamples
-from unitclass.phase.histogram import chosen_bandwidth, smoothing_matrix
+from unitclass.phase.histogram import chosen_bandwidth
 from unitclass.records import FloatArray, PhaseHistogram
 
 
@@ -44,8 +45,8 @@ def modulation_depth(histogram: PhaseHistogram, resamples: CycleResamples,
     """
     if histogram.n_spikes == 0 or histogram.n_cycles < 2:
         return Depth(np.nan, np.nan)
-    width = chosen_bandwidth(histogram, spikes=80.0, low=0.06, high=0.15) * histogram.n_bins / 2
-    kernel = smoothing_matrix(histogram.n_bins, width)
+    width = chosen_bandwidth(histogram, spikes=80.0, low=0.04, high=0.1) * histogram.n_bins / 2
+    kernel = _circular_weights(histogram.n_bins, width)
     raw = _depths((histogram.counts @ kernel)[None], (histogram.exposure_s @ kernel)[None])[0]
     drawn = _depths(resamples.counts(by_phase) @ kernel, resamples.seconds @ kernel)
     drawn = drawn[np.isfinite(drawn)]
@@ -53,6 +54,17 @@ def modulation_depth(histogram: PhaseHistogram, resamples: CycleResamples,
         return Depth(float(raw), np.nan)
     high = 2 * raw - np.quantile(drawn, 0.05)
     return Depth(float(np.clip(2 * raw - drawn.mean(), 0.0, 1.0)), float(np.clip(high, 0.0, 1.0)))
+
+
+@lru_cache(maxsize=64)
+def _circular_weights(n_bins: int, width_bins: float) -> FloatArray:
+    """Return Gaussian weights between bins, (n_bins, n_bins).
+
+    They run on across the transitions: breaks would leave half as many neighbours there, hence
+    the noise that a limit must not have.
+    """
+    gap = np.abs(np.arange(n_bins)[:, None] - np.arange(n_bins))
+    return np.exp(-0.5 * (np.minimum(gap, n_bins - gap) / width_bins) ** 2)
 
 
 def _depths(counts: FloatArray, seconds: FloatArray) -> FloatArray:

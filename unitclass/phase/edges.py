@@ -29,18 +29,31 @@ class Rise:
     n_quiet: int
 
 
-def rise_place(rise: Rise, level_hz: float, background_hz: float, peak_hz: float) -> float:
-    """Return where firing begins, in bins from the window's start.
+@dataclass(frozen=True)
+class Place:
+    """Where firing begins, in bins from the window's start, and whether it does so by a step."""
 
-    Where a step of some height explains the counts clearly better than a ramp, the step; else
-    the smoothed rate's passing of `level_hz`, interpolated between the bins' middles.
+    bins: float
+    is_step: bool
+
+
+def rise_place(rise: Rise, level_hz: float, background_hz: float, peak_hz: float, *,
+               is_blurred: bool = False) -> Place:
+    """Return where firing begins.
+
+    Where a step of some height explains the counts clearly better than a ramp, the step. Else,
+    when `is_blurred` says that it is a step all the same whose place differs from cycle to cycle,
+    its mean place. Else the smoothed rate's passing of `level_hz`, interpolated between the
+    bins' middles.
     """
     place, height, gain = _best_step(rise, background_hz)
     if gain >= STEP_GAIN and height >= STEP_HEIGHT * (peak_hz - background_hz):
-        return place
+        return Place(place, True)
+    if is_blurred:
+        return Place(_mean_place(rise, background_hz), True)
     below, above = rise.rate_hz[rise.n_quiet - 1], rise.rate_hz[rise.n_quiet]
     share = (level_hz - below) / (above - below) if above > below else 0.5
-    return float(rise.n_quiet - 0.5 + np.clip(share, 0.0, 1.0))
+    return Place(float(rise.n_quiet - 0.5 + np.clip(share, 0.0, 1.0)), False)
 
 
 def _best_step(rise: Rise, background_hz: float) -> tuple[float, float, float]:
@@ -54,6 +67,14 @@ def _best_step(rise: Rise, background_hz: float) -> tuple[float, float, float]:
     ramped, _ = _fits(rise, floor, np.diff(ends**2, axis=1) / 2)
     best = int(np.argmax(stepped))
     return float(place[best]), float(heights[best]), float(stepped[best] - ramped.max())
+
+
+def _mean_place(rise: Rise, background_hz: float) -> float:
+    """Return the place of the step with the same area under the same height, that of the last third."""
+    n = rise.counts.size
+    excess = rise.counts / np.maximum(rise.seconds, 1e-12) - background_hz
+    height = excess[-max(1, n // 3):].mean()
+    return float(np.clip(n - excess.sum() / height, 0, n)) if height > 0 else float(rise.n_quiet)
 
 
 def _fits(rise: Rise, floor_hz: float, form: FloatArray) -> tuple[FloatArray, FloatArray]:

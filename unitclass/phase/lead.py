@@ -5,11 +5,13 @@ from __future__ import annotations
 import numpy as np
 
 from unitclass.phase.active_phase import ActivePhase
+from unitclass.phase.edges import Rise, rise_place
 from unitclass.phase.locked import LockedFrame, locked_of
 from unitclass.records import FloatArray
 
 EARLIEST, LATEST = 1.5, 0.5
 SPIKES = 25.0
+QUIET_BINS, ACTIVE_BINS = 12, 20
 
 
 def lead_ms(times_s: FloatArray, active: ActivePhase, frame: LockedFrame, ti_s: float, te_s: float) -> float:
@@ -32,34 +34,36 @@ def lead_ms(times_s: FloatArray, active: ActivePhase, frame: LockedFrame, ti_s: 
     if not active.is_found or LATEST < active.onset < EARLIEST:
         return np.nan
     by_phase_s = active.onset * ti_s if active.onset <= LATEST else (active.onset - 2) * te_s
-    crossing = _crossing_s(times_s, frame, by_phase_s, active.level_hz, ti_s)
+    crossing = _crossing_s(times_s, frame, by_phase_s, active, ti_s)
     return float(-1000 * (by_phase_s if np.isnan(crossing) else crossing))
 
 
-def _crossing_s(times_s: FloatArray, frame: LockedFrame, near_s: float, level_hz: float, ti_s: float) -> float:
-    locked = locked_of(times_s, frame)
-    rate = _smoothed(np.nan_to_num(locked.rate_hz), np.nan_to_num(frame.seconds))
+def _crossing_s(times_s: FloatArray, frame: LockedFrame, near_s: float, active: ActivePhase,
+                ti_s: float) -> float:
     step_s = (frame.edges_ms[1] - frame.edges_ms[0]) / 1000
-    first = round((near_s - frame.edges_ms[0] / 1000) / step_s)
-    stop = min(first + max(1, round(0.5 * ti_s / step_s)), rate.size)
-    if not 1 <= first < rate.size - 1:
+    start_s = frame.edges_ms[0] / 1000
+    rate = np.nan_to_num(locked_of(times_s, frame).rate_hz)
+    smooth = _smoothed(rate, frame.seconds)
+    first = _first_active(smooth, round((near_s - start_s) / step_s), round(0.5 * ti_s / step_s), active.level_hz)
+    if first < 1:
         return np.nan
-    return _walk(rate, locked.centres_ms / 1000, first, stop, level_hz)
+    before, after = min(first, QUIET_BINS), min(rate.size - first, ACTIVE_BINS)
+    window = slice(first - before, first + after)
+    rise = Rise((rate * frame.seconds)[window], frame.seconds[window], smooth[window], before)
+    place = rise_place(rise, active.level_hz, active.background_hz, active.peak_hz,
+                       is_blurred=active.starts_at_once)
+    return float(start_s + (first - before + place.bins) * step_s)
 
 
-def _walk(rate: FloatArray, centres_s: FloatArray, first: int, stop: int, level_hz: float) -> float:
-    """Return the rise through the level nearest before `first`, or, when quiet there, next after it."""
-    if rate[first] > level_hz:
-        quiet = np.flatnonzero(rate[:first] <= level_hz)
-        last_quiet = int(quiet[-1]) if quiet.size else -1
-    else:
-        busy = np.flatnonzero(rate[first:stop] > level_hz)
-        last_quiet = first + int(busy[0]) - 1 if busy.size else -1
-    if last_quiet < 0:
-        return np.nan
-    low, high = rate[last_quiet], rate[last_quiet + 1]
-    share = (level_hz - low) / (high - low)
-    return float(centres_s[last_quiet] + share * (centres_s[last_quiet + 1] - centres_s[last_quiet]))
+def _first_active(rate: FloatArray, near: int, reach: int, level_hz: float) -> int:
+    """Return the bin that passes the level nearest before bin `near`, or, if quiet there, next after; -1 if none."""
+    if not 1 <= near < rate.size - 1:
+        return -1
+    if rate[near] > level_hz:
+        quiet = np.flatnonzero(rate[:near] <= level_hz)
+        return int(quiet[-1]) + 1 if quiet.size else -1
+    busy = np.flatnonzero(rate[near : near + max(reach, 1)] > level_hz)
+    return near + int(busy[0]) if busy.size else -1
 
 
 def _smoothed(rate_hz: FloatArray, seconds: FloatArray) -> FloatArray:
