@@ -134,15 +134,11 @@ def peaks_above(score: FloatArray, threshold: float, apart: int) -> IntArray:
     before = np.where(high > 0, score[high - 1], -np.inf)
     after = np.where(high < score.size - 1, score[np.minimum(high + 1, score.size - 1)], -np.inf)
     peaks = high[(level >= before) & (level > after)]
-    return without_lesser_neighbours(peaks, score[peaks], apart)
+    return peaks[leaders(peaks.astype(float), score[peaks], apart)]
 
 
-def without_lesser_neighbours(at: IntArray, level: FloatArray, apart: float) -> IntArray:
-    """Return `at` (ascending) without what stands within `apart` of a higher one, highest first."""
-    return at[_leaders(np.asarray(at, float), level, apart)]
-
-
-def _leaders(at: FloatArray, level: FloatArray, apart: float) -> BoolArray:
+def leaders(at: FloatArray, level: FloatArray, apart: float) -> BoolArray:
+    """Return which of `at` (ascending) do not stand within `apart` of a higher one, highest first."""
     keep = np.ones(at.size, bool)
     if at.size < 2 or np.diff(at).min() > apart:
         return keep

@@ -151,7 +151,7 @@ def _measured_events(block: Block, coarse: FloatArray, score: FloatArray, peaks:
     found = measured(waves, lens)
     at = first + found.rise_samples
     if detector.kernel is not None and not detector.times_by_slope:
-        at = (peaks + 0.5 + _vertex(score, peaks)) * k - 0.5 + detector.kernel.steep_ms * 1e-3 * lens.rate_hz
+        at = (peaks + 0.5 + score_vertex(score, peaks)) * k - 0.5 + detector.kernel.steep_ms * 1e-3 * lens.rate_hz
     trough = _trough_mv(coarse, (first + found.rise_samples) / k, after, grid)
     return Events(time_s=block.start_s + at / lens.rate_hz, size_mv=score[peaks], z=score[peaks] / noise,
                   bump_mv=_bump_near(coarse, peaks, detector), threshold_mv=found.threshold_mv,
@@ -159,7 +159,8 @@ def _measured_events(block: Block, coarse: FloatArray, score: FloatArray, peaks:
                   max_dvdt_mv_ms=found.max_dvdt_mv_ms, ahp_mv=found.threshold_mv - trough)
 
 
-def _vertex(score: FloatArray, peaks: IntArray) -> FloatArray:
+def score_vertex(score: FloatArray, peaks: IntArray) -> FloatArray:
+    """Return where the parabola through each peak of the score tops, in bins from the peak."""
     left, mid, right = score[peaks - 1], score[peaks], score[np.minimum(peaks + 1, score.size - 1)]
     with np.errstate(invalid="ignore", divide="ignore"):
         bend = left - 2.0 * mid + right

@@ -9,13 +9,14 @@ smaller than the spike just before it belongs to the same burst.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 from math import erfc, sqrt
 
 import numpy as np
 
 from unitclass.records import BoolArray, FloatArray
 from unitclass.settings import MembraneSettings
-from unitclass.signals.vm_bumps import without_lesser_neighbours
+from unitclass.signals.vm_bumps import leaders
 from unitclass.signals.vm_detector import Detector, Events
 
 LEAST_HEIGHT_MV = 7.0
@@ -95,7 +96,7 @@ def dominant_size(sizes: FloatArray) -> tuple[float, float]:
         return 0.0, 0.0
     limits = [0.0, *group_limits(sizes), np.inf]
     enough = min(20.0, max(5.0, 0.03 * sizes.size))
-    for low, high in reversed(list(zip(limits[:-1], limits[1:], strict=True))):
+    for low, high in reversed(list(pairwise(limits))):
         inside = sizes[(sizes >= low) & (sizes < high)]
         if inside.size >= enough or low == 0.0:
             return float(np.median(inside if inside.size else sizes)), float(low)
@@ -221,10 +222,8 @@ class _Tracker:
 
 def _refractory(events: Events, is_spike: BoolArray, refractory_ms: float) -> BoolArray:
     rows = np.flatnonzero(is_spike)
-    times = events.time_s[rows]
-    kept = without_lesser_neighbours(times, events.size_mv[rows], 1e-3 * refractory_ms)
     out = np.zeros(is_spike.size, bool)
-    out[rows[np.isin(times, kept)]] = True
+    out[rows[leaders(events.time_s[rows], events.size_mv[rows], 1e-3 * refractory_ms)]] = True
     return out
 
 

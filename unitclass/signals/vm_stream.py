@@ -109,7 +109,7 @@ class _Stretch:
         if np.isfinite(values.sum()):
             return Block(start_s, values, first, last)
         bad = ~np.isfinite(values)
-        runs = _runs(bad[first:last])
+        runs = runs_of(bad[first:last])
         missing = tuple((start_s + (first + a) / self.plan.rate_hz, start_s + (first + b) / self.plan.rate_hz)
                         for a, b in runs)
         return Block(start_s, _filled(values, bad), first, last, missing)
@@ -127,7 +127,7 @@ def _filled(values: FloatArray, bad: np.ndarray) -> FloatArray:
     return np.where(source < 0, start, values[np.maximum(source, 0)])
 
 
-def _runs(mask: np.ndarray) -> list[tuple[int, int]]:
+def runs_of(mask: np.ndarray) -> list[tuple[int, int]]:
     """Return the half-open index ranges where `mask` is true."""
     edges = np.flatnonzero(np.diff(np.concatenate([[False], mask, [False]]).astype(np.int8)))
     return [(int(a), int(b)) for a, b in zip(edges[::2], edges[1::2], strict=True)]

@@ -1,0 +1,89 @@
+"""What the quality of a membrane potential is judged by: level and noise by the second, stuck values."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass, fields
+from itertools import pairwise
+
+import numpy as np
+
+from unitclass.records import FloatArray
+from unitclass.signals.vm_bumps import Grid
+from unitclass.signals.vm_stream import Block, runs_of
+
+STUCK_MS = 20.0
+
+
+@dataclass(frozen=True)
+class Seconds:
+    """Pieces of about one second: level and noise, each of shape (n_pieces,)."""
+
+    start_s: FloatArray
+    stop_s: FloatArray
+    level_mv: FloatArray
+    noise_mv: FloatArray
+
+    @staticmethod
+    def joined(parts: Iterable[Seconds]) -> Seconds:
+        """Return all pieces in their order."""
+        kept = list(parts)
+        if not kept:
+            return Seconds(*(np.empty(0) for _ in fields(Seconds)))
+        return Seconds(*(np.concatenate([getattr(p, f.name) for p in kept]) for f in fields(Seconds)))
+
+
+@dataclass(frozen=True)
+class Stuck:
+    """A run of equal values."""
+
+    start_s: float
+    stop_s: float
+    value_mv: float
+
+
+@dataclass(frozen=True)
+class BlockLook:
+    """What quality needs of one block."""
+
+    seconds: Seconds
+    stuck: tuple[Stuck, ...]
+    missing_s: tuple[tuple[float, float], ...]
+    span_s: tuple[float, float]
+    low_mv: float
+    high_mv: float
+    n_at_high: int
+
+
+def look_at(block: Block, coarse: FloatArray, grid: Grid) -> BlockLook:
+    """Summarise a block's own samples from its coarse means."""
+    k = grid.bin_samples
+    first, last = block.first // k, max(block.first // k + 1, block.last // k)
+    own = coarse[first:last]
+    bin_s = 1e-3 * grid.bin_ms
+    start_s = block.start_s + block.first / grid.rate_hz
+    stop_s = block.start_s + block.last / grid.rate_hz
+    high = float(own.max())
+    return BlockLook(_seconds(own, start_s, stop_s, bin_s), tuple(_stuck_runs(own, start_s, bin_s)),
+                     block.missing_s, (start_s, stop_s), float(own.min()), high,
+                     int(np.count_nonzero(own >= high - 1e-9 * (1.0 + abs(high)))))
+
+
+def _seconds(own: FloatArray, start_s: float, stop_s: float, bin_s: float) -> Seconds:
+    n = max(1, round(own.size * bin_s))
+    edges = np.linspace(0, own.size, n + 1).astype(np.int64)
+    times = start_s + edges * bin_s
+    times[-1] = stop_s
+    change = np.abs(np.diff(own, append=own[-1]))
+    level = [float(np.median(own[a:b:4])) for a, b in pairwise(edges)]
+    noise = [float(np.median(change[a:b:4])) for a, b in pairwise(edges)]
+    return Seconds(times[:-1], times[1:], np.array(level), np.array(noise))
+
+
+def _stuck_runs(own: FloatArray, start_s: float, bin_s: float) -> Iterable[Stuck]:
+    equal = np.abs(np.diff(own)) <= 1e-9 * (1.0 + np.abs(own[:-1]))
+    if not equal.any():
+        return
+    for a, b in runs_of(equal):
+        if (b - a) * bin_s >= 1e-3 * STUCK_MS:
+            yield Stuck(start_s + a * bin_s, start_s + (b + 1) * bin_s, float(own[a]))
