@@ -100,8 +100,8 @@ class ModulationSettings:
 class ClassifySettings:
     """From counts to probabilities."""
 
-    n_draws: int = tunable(384, "draws", 32, 4096, "profiles drawn from each family")
-    concentration: float = tunable(150.0, "spikes", 10, 100000,
+    n_draws: int = tunable(1024, "draws", 32, 4096, "profiles drawn from each family")
+    concentration: float = tunable(300.0, "spikes", 10, 100000,
                                    "spikes after which a histogram stops adding evidence: doubt about the shape")
     temperature: float = tunable(1.0, "x", 0.2, 10.0, "flattens (over 1) or sharpens the probabilities")
     sure_probability: float = tunable(0.95, "probability", 0.5, 1.0, "suggestions at or over this are sure")

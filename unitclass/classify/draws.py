@@ -13,6 +13,7 @@ from unitclass.classify.templates import COMMON, FORMS, NEEDED, Family, TypeLibr
 from unitclass.records import BoolArray, FloatArray, IntArray
 
 FINE = 8  # points per bin on which a profile is evaluated before it is averaged into bins
+SELDOM_LARGE = ("background", "wiggle", "foreign", "dip", "second_start")  # drawn as cubes: mostly small, now and then large
 FLOOR = 0.002  # a family never says "impossible": share of the peak that stray spikes may reach
 
 
@@ -73,12 +74,12 @@ def draw_profiles(family: Family, timing: Timing, *, n_bins: int, n_draws: int) 
     p = _draw_parameters(family, timing, n_draws, rng)
     level = _drawn(family, p, phase) if family.form == "drawn" else FORM_SHAPES[family.form](p, phase)
     if family.form not in ("flat", "cosine"):
-        # Most cells have little background; the square keeps the rare strong one in the family.
         level = p["background"] + (1 - p["background"]) * level
     level = level * np.exp(p["wiggle"] * _smooth_noise(phase, n_draws, rng))
     binned = level.reshape(n_draws, n_bins, FINE).mean(axis=2)
+    binned = _with_foreign(binned, p["foreign"], rng)
     binned = np.maximum(binned, FLOOR * binned.max(axis=1, keepdims=True))
-    return np.asarray(binned / binned.mean(axis=1, keepdims=True))
+    return _mean_one(binned)
 
 
 def _seed(family: Family) -> int:
@@ -90,7 +91,7 @@ def _draw_parameters(family: Family, timing: Timing, n_draws: int, rng: np.rando
     unit = _latin_hypercube(n_draws, len(names) + 1, rng)
     drawn: dict[str, FloatArray] = {}
     for column, name in enumerate(names):
-        share = unit[:, column] ** 2 if name in ("background", "wiggle") else unit[:, column]
+        share = unit[:, column] ** 3 if name in SELDOM_LARGE else unit[:, column]
         value = _scaled(family, name, share, timing, by_time=unit[:, -1] < 0.5)
         drawn[name] = value[:, None]
     return drawn
@@ -132,6 +133,23 @@ def _drawn(family: Family, p: Parameters, phase: FloatArray) -> FloatArray:
     height = height / max(float(height.max()), 1e-12)
     moved = ((phase - p["shift"] - 1.0) / p["stretch"] + 1.0) % 2.0
     return np.interp(moved, at, height, period=2.0)
+
+
+def _with_foreign(binned: FloatArray, share: FloatArray, rng: np.random.Generator) -> FloatArray:
+    """Return the profiles with a share of another cell's spikes: no sorting is perfect.
+
+    Half of the foreign trains fire steadily, half in one hump somewhere in the cycle.
+    """
+    n_draws, n_bins = binned.shape
+    phase = (np.arange(n_bins) + 0.5) * (2.0 / n_bins)
+    away = np.abs((phase - rng.uniform(0, 2, (n_draws, 1)) + 1.0) % 2.0 - 1.0)
+    hump = np.exp(-0.5 * (away / rng.uniform(0.08, 0.3, (n_draws, 1))) ** 2)
+    other = np.where(rng.random((n_draws, 1)) < 0.5, 1.0, hump)
+    return (1 - share) * _mean_one(binned) + share * _mean_one(other)
+
+
+def _mean_one(binned: FloatArray) -> FloatArray:
+    return binned / binned.mean(axis=1, keepdims=True)
 
 
 def _smooth_noise(phase: FloatArray, n_draws: int, rng: np.random.Generator) -> FloatArray:

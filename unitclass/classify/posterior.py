@@ -31,8 +31,8 @@ def _block_evidence(units: UnitCounts, drawn: DrawnFamilies, settings: ClassifyS
     evidence = family_evidence(log_lik, weight, drawn)
     if NOT_MODULATED in drawn.types and STEADY in drawn.types:
         nrm, steady = drawn.types.index(NOT_MODULATED), drawn.types.index(STEADY)
-        evidence[:, nrm] = evidence[:, steady] + _modulation_odds(
-            log_lik, units, drawn, settings)
+        certain = evidence[:, steady] + _modulation_odds(log_lik, units, drawn, settings)
+        evidence[:, nrm] = np.minimum(evidence[:, nrm], certain)
     return np.column_stack([evidence, other_evidence(units, weight)])
 
 

@@ -65,18 +65,19 @@ def two_humps(p: Parameters, phase: FloatArray) -> FloatArray:
                   start_level=p["second_start"], end_level=np.ones_like(p["edge"]), foot=0 * p["foot"],
                   tail=0 * p["tail"])
     between = p["dip"] * _gate(phase, p["onset"], p["second_offset"], p["edge"])
-    return np.maximum.reduce([first, p["second_level"] * window(second, phase), between])
+    return np.maximum.reduce([p["first_level"] * first, p["second_level"] * window(second, phase), between])
 
 
 def cosine(p: Parameters, phase: FloatArray) -> FloatArray:
-    """Return steady firing that waxes and wanes; `step` turns the wave into a step between phases.
+    """Return steady firing that waxes and wanes, or steps between inspiration and expiration.
 
-    `depth` is (max - min)/(max + min).
+    `depth` is (max - min)/(max + min). A third of the draws step at the transitions themselves.
     """
-    angle = np.pi * (phase - p["at"])
-    wave = np.cos(angle) + p["harmonic"] * np.cos(2 * angle + np.pi * p["at"])
-    step = np.tanh(4.0 * np.cos(angle))
-    mixed = (1 - p["step"]) * wave + p["step"] * step
+    is_step = p["step"] < 0.33
+    at = np.where(is_step, np.where(p["at"] < 1.0, 0.5, 1.5), p["at"])
+    angle = np.pi * (phase - at)
+    wave = np.cos(angle) + p["harmonic"] * np.cos(2 * angle + np.pi * at)
+    mixed = np.where(is_step, np.tanh(15.0 * np.cos(angle)), wave)
     mixed = mixed / np.max(np.abs(mixed), axis=1, keepdims=True)
     return (1 + p["depth"] * mixed) / (1 + p["depth"])
 

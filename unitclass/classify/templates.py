@@ -19,7 +19,7 @@ Range = tuple[float, float]
 # What each form assumes of a parameter that its file does not give. Phases are canonical and may
 # leave [0, 2) so that a range can straddle an edge; levels are shares of the peak rate.
 COMMON: Mapping[str, Range] = {
-    "background": (0.0, 0.4), "edge": (0.01, 0.05), "wiggle": (0.0, 0.25), "foot": (0.0, 0.0),
+    "background": (0.0, 0.35), "edge": (0.01, 0.05), "wiggle": (0.0, 0.2), "foreign": (0.0, 0.15), "foot": (0.0, 0.0),
     "foot_onset": (-0.2, -0.05), "tail": (0.0, 0.0), "tail_offset": (1.05, 1.2),
     "curve_up": (0.6, 2.0), "curve_down": (0.6, 2.5),
 }
@@ -29,7 +29,7 @@ FORMS: Mapping[str, Mapping[str, Range]] = {
     "plateau": {"start_level": (0.7, 1.0), "end_level": (0.7, 1.0), "curve_up": (0.5, 1.0),
                 "curve_down": (0.5, 1.0)},
     "spanning": {"start_level": (0.0, 0.6), "end_level": (0.0, 0.6)},
-    "two humps": {"start_level": (0.5, 1.0), "end_level": (0.0, 0.3), "second_level": (0.3, 1.0),
+    "two humps": {"start_level": (0.5, 1.0), "end_level": (0.0, 0.3), "first_level": (0.3, 1.0), "second_level": (0.3, 1.0),
                   "dip": (0.0, 0.3), "second_start": (0.0, 0.5)},
     "cosine": {"depth": (0.2, 0.8), "at": (0.0, 2.0), "step": (0.0, 1.0), "harmonic": (0.0, 0.3)},
     "flat": {"depth": (0.0, 0.12), "at": (0.0, 2.0), "wiggle": (0.0, 0.05)},

@@ -11,6 +11,7 @@ from numpy.typing import ArrayLike
 from unitclass.records import FloatArray
 
 N_THIRDS = 3
+CYCLES_A_STRETCH, MOST_STRETCHES = 8, 8
 
 
 @dataclass(frozen=True)
@@ -92,7 +93,9 @@ def shape_dispersion(by_cycle: FloatArray, seconds: FloatArray) -> float:
 
     Pearson's chi-squared of the cycles x bins table, expected counts being the cycle's total
     shared out by the mean profile, over its degrees of freedom [1]_: 1 for a Poisson process
-    whatever its gain from cycle to cycle, more for bursts that come and go in phase.
+    whatever its gain from cycle to cycle, more for bursts that come and go in phase. Each stretch
+    of the session has its own mean profile, so that a cell which drifts in phase is not taken
+    for a wild one.
 
     Parameters
     ----------
@@ -102,13 +105,22 @@ def shape_dispersion(by_cycle: FloatArray, seconds: FloatArray) -> float:
     ----------
     .. [1] P. McCullagh, J. A. Nelder, *Generalized Linear Models*, 2nd ed., 1989, sect. 4.5.
     """
+    n_stretches = max(1, min(MOST_STRETCHES, len(by_cycle) // CYCLES_A_STRETCH))
+    parts = [_pearson(by_cycle[rows], seconds[rows]) for rows in np.array_split(np.arange(len(by_cycle)), n_stretches)]
+    freedom = sum(df for _, df in parts)
+    return sum(chi for chi, _ in parts) / freedom if freedom > 0 else 1.0
+
+
+def _pearson(by_cycle: FloatArray, seconds: FloatArray) -> tuple[float, int]:
+    """Return chi-squared against "total of the cycle times mean profile", and its degrees of freedom."""
     total_s = seconds.sum(axis=0)
     rate = np.divide(by_cycle.sum(axis=0), total_s, out=np.zeros(total_s.size), where=total_s > 0)
     share = seconds * rate
     whole = share.sum(axis=1, keepdims=True)
-    expected = np.divide(by_cycle.sum(axis=1, keepdims=True) * share, whole, out=np.zeros_like(share), where=whole > 0)
+    totals = by_cycle.sum(axis=1, keepdims=True)
+    expected = np.divide(totals * share, whole, out=np.zeros_like(share), where=whole > 0)
     used = expected > 0
     freedom = (int(used.any(axis=1).sum()) - 1) * (int(used.any(axis=0).sum()) - 1)
     if freedom < 1:
-        return 1.0
-    return float(np.sum((by_cycle[used] - expected[used]) ** 2 / expected[used]) / freedom)
+        return 0.0, 0
+    return float(np.sum((by_cycle[used] - expected[used]) ** 2 / expected[used])), freedom
