@@ -153,6 +153,8 @@ class ReviewSettings:
     mouse: bool = worded(True, "report mouse events to the program")
     keys: Mapping[str, str] = worded({}, "action id to key, e.g. accept = \"enter\"")
     reviewer: str = worded("", "name of the reviewer; empty is the login name")
+    background: str = worded("auto", "background of the terminal, for the shading of inspiration",
+                             choices=("auto", "dark", "light"))
 
 
 @dataclass(frozen=True)

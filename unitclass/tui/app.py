@@ -2,36 +2,176 @@
 
 from __future__ import annotations
 
+import gc
 import os
-from typing import ClassVar
 
+gc.disable()  # until the first unit is painted: collecting while importing costs a tenth of a second
 os.environ.setdefault("TEXTUAL_FPS", "120")  # read once by the toolkit: a repaint waits 8 ms, not 16
 
-from textual.app import App
-from textual.screen import Screen
+from collections.abc import Callable, Iterator, Mapping, Sequence  # noqa: E402
+from typing import Any, ClassVar  # noqa: E402
 
-from unitclass.tui.desk import Desk
-from unitclass.tui.keys import KeyMap
-from unitclass.tui.screens.review import ReviewScreen
-from unitclass.tui.theme import Theme, background_of_terminal, look_of_terminal
+from textual.app import App  # noqa: E402
+from textual.screen import Screen  # noqa: E402
+
+from unitclass.review.session import ReviewSession  # noqa: E402
+from unitclass.settings import Settings  # noqa: E402
+from unitclass.tui.desk import Desk  # noqa: E402
+from unitclass.tui.keys import KeyMap  # noqa: E402
+from unitclass.tui.messages import ANALYSIS, EXPORT, LEARNING, WorkDone  # noqa: E402
+from unitclass.tui.screens.base import BaseScreen  # noqa: E402
+from unitclass.tui.screens.review import ReviewScreen  # noqa: E402
+from unitclass.tui.theme import Theme, background_of_terminal, look_of_terminal  # noqa: E402
+from unitclass.tui.workers import Done, Work  # noqa: E402
+
+LABELS_TO_LEARN = 5
 
 
-class ReviewApp(App[int]):
-    """One review session on the screen."""
+class ReviewApp(App[int], inherit_bindings=False):
+    """One review session on the screen.
+
+    Parameters
+    ----------
+    session : ReviewSession
+        What is ready already; `pending` files come in while it runs.
+    analyse : callable, optional
+        analyse(path) -> SessionResult or SessionView, run in a process of its own: a module-level
+        function or a partial of one. Called for `pending`, and again when cycles were edited; it
+        reads the edits from the store itself.
+    pending : sequence of str
+        Files still to be analysed.
+    relearn : callable, optional
+        relearn(lessons) -> {(path, unit, condition): Suggestion}, run in a process too.
+    export : callable, optional
+        export(path, SessionResult, Labels, target) -> where it was written, run in a process too.
+    library : callable, optional
+        Returns the TypeLibrary; called when it is first needed.
+    """
 
     ENABLE_COMMAND_PALETTE = False
     BINDINGS: ClassVar = []
-    CSS = ""
 
-    def __init__(self, desk: Desk, keys: KeyMap) -> None:
+    def __init__(self, session: ReviewSession, *, analyse: Callable[[str], Any] | None = None,
+                 pending: Sequence[str] = (), relearn: Callable[..., Mapping[Any, Any]] | None = None,
+                 export: Callable[..., str] | None = None, settings: Settings | None = None,
+                 library: Callable[[], Any] | None = None) -> None:
         super().__init__(ansi_color=True)
         self.animation_level = "none"
-        self.desk, self.keys = desk, keys
-        self.inks = Theme(look_of_terminal(), background_of_terminal())
+        review = (settings or Settings()).review
+        self.keys = KeyMap.of(review.keys)
+        self.set_keymap(dict(self.keys.changed))
+        self.desk = Desk(session, library)
+        self.inks = Theme(look_of_terminal(), background_of_terminal(review.background))
+        self._analyse, self._relearn, self._export = analyse, relearn, export
+        self._pending = list(pending)
+        self._works: dict[str, Work] = {}
+        self._n_unlearned = 0
 
-    def get_default_screen(self) -> Screen[object]:
+    def get_default_screen(self) -> Screen[Any]:
         """Return the review screen."""
         return ReviewScreen(self.desk, self.inks, self.keys)
 
-    def action_quit(self) -> None:
-        self.exit(0)
+    def other_screen(self, name: str) -> BaseScreen:
+        """Return another screen; its module is imported when it is first wanted."""
+        from importlib import import_module
+
+        module = import_module(f"unitclass.tui.screens.{name}")
+        screen: BaseScreen = getattr(module, f"{name.capitalize()}Screen")(self.desk, self.inks, self.keys)
+        return screen
+
+    def begin(self) -> None:
+        """Begin with what can wait until the first unit is on the screen."""
+        gc.freeze()
+        gc.enable()
+        self._start_analysis()
+
+    def on_unmount(self) -> None:
+        """End the processes with the program."""
+        for work in self._works.values():
+            work.stop()
+
+    # ------------------------------------------------------------------ background work
+
+    def analyse_again(self, paths: Sequence[str]) -> bool:
+        """Have files analysed anew; return whether this program can."""
+        if self._analyse is None:
+            return False
+        self._pending += [path for path in paths if path not in self._pending]
+        self._start_analysis()
+        return True
+
+    def _start_analysis(self) -> None:
+        if self._analyse is not None and self._pending and ANALYSIS not in self._works:
+            pieces = [(path, (path,)) for path in self._pending]
+            self._pending = []
+            self._start(ANALYSIS, self._analyse, pieces)
+
+    def labels_changed(self) -> None:
+        """Count what was decided; after a few decisions the suggestions are made afresh."""
+        self._n_unlearned += 1
+        if self._relearn is not None and self._n_unlearned >= LABELS_TO_LEARN and LEARNING not in self._works:
+            self._n_unlearned = 0
+            self._start(LEARNING, self._relearn, [("labels", (self.desk.session.lessons(),))])
+
+    def start_export(self) -> bool:
+        """Write every labelled file that can be written; return whether there is one."""
+        plan = [item for item in self.desk.session.export_plan() if not item.problem]
+        if self._export is None or not plan or EXPORT in self._works:
+            return False
+        session = self.desk.session
+
+        def pieces() -> Iterator[tuple[str, tuple[Any, ...]]]:
+            for item in plan:
+                yield item.path, (item.path, session.session_result(item.path), session.labels(item.path),
+                                  item.target)
+
+        self._start(EXPORT, self._export, pieces())
+        return True
+
+    def _start(self, task: str, function: Callable[..., Any], pieces: Any) -> None:
+        self._works[task] = Work(function, pieces, lambda done: self._post(task, done)).start()
+
+    def _post(self, task: str, done: Done | None) -> None:
+        if self.is_running:
+            self.post_message(WorkDone(task, done))
+
+    def on_work_done(self, message: WorkDone) -> None:
+        """Take in what came out of the background."""
+        if message.done is None:
+            self._works.pop(message.task, None)
+            self._start_analysis()
+        elif message.task == ANALYSIS:
+            self._take_analysis(message.done)
+        elif message.task == LEARNING and not message.done.problem:
+            self.desk.session.update_suggestions(message.done.result)
+        if message.task == EXPORT:
+            self._show_export(message.done)
+        for screen in self.screen_stack:
+            if isinstance(screen, ReviewScreen) or (screen is self.screen and message.task == ANALYSIS):
+                screen.repaint_soon()  # type: ignore[attr-defined]
+
+    def _take_analysis(self, done: Done) -> None:
+        session = self.desk.session
+        if done.problem:
+            session.add_failure(done.name, done.problem)
+        elif hasattr(done.result, "head"):
+            session.add_session(done.result)
+        else:
+            session.add_result(done.result)
+        self.desk.forget()
+        for screen in self.screen_stack:
+            if not done.problem and hasattr(screen, "results_changed"):
+                screen.results_changed(done.name)
+
+    def _show_export(self, done: Done | None) -> None:
+        from unitclass.tui.screens.finish import FinishScreen
+
+        for screen in self.screen_stack:
+            if isinstance(screen, FinishScreen):
+                screen.show_written(done)
+                return
+        if done is not None:
+            review = self.screen_stack[0]
+            assert isinstance(review, ReviewScreen)
+            review.say(f"not written: {done.problem}" if done.problem else f"written: {done.result}",
+                       "warn" if done.problem else "")

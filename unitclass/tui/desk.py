@@ -1,16 +1,311 @@
+"""Between the review session and the screens: what they show, and words for what was done.
+
+Holds no decision of its own; the session does. Nothing is computed here, only chosen and worded.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable, Mapping, Sequence
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING, Any
+
+from unitclass.records import NOT_ONE_CELL, OTHER, SILENT, UNDETERMINED, NerveProfile, UnitResult
+from unitclass.review.entry import STATES, QueueEntry
+from unitclass.review.filters import Filter
+from unitclass.review.misfit import contradictions, misfit
+from unitclass.review.ordering import INFORMATIVE, SORTS
+from unitclass.review.session import ReviewSession
+from unitclass.review.unit_facts import mean_durations
+from unitclass.tui.choice import Option
+from unitclass.tui.renderables.verdict import Verdict
+from unitclass.tui.widgets.panels import UnitView
+
+if TYPE_CHECKING:
+    from unitclass.classify.templates import TypeLibrary
+
+OWN_WORDS = {"viewed": "looking at it", "blind": "blind", "batch": "in a batch", "settled": "settled"}
+
+
+@dataclass(frozen=True)
+class ConditionFacts:
+    """What the unit page needs of a condition, kept while results stay the same."""
+
+    nerves: tuple[NerveProfile, ...]
+    ti_s: float
+    te_s: float
+    regime: str
+
+
 class Desk:
-    def __init__(self, result):
-        from unitclass.tui.renderables.queue_rows import QueueEntry
-        self.units=[(c,u) for c,u in result.units()]
-        self.entries=[QueueEntry(u.unit,u.suggestion.type) for c,u in self.units]
-        self.here=0
-    def view(self):
-        from unitclass.tui.renderables.verdict import Verdict
-        from unitclass.tui.widgets.panels import UnitView
-        c,u=self.units[self.here]; s=u.suggestion
-        return UnitView(u,c.nerve_profiles,1,2,s.type,Verdict(s.type,s.probability,s.ranked,reasons=s.reasons,flags=u.flags,rule="rule of thumb: "+s.rule_type, fit="differs most from x at phase 0.3: 30 spikes/s, fitted 40"))
-    def head(self):
-        c,u=self.units[self.here]
-        return f"unit {u.unit} {u.condition}","rig/heron.nwb",f"{self.here+1} of {len(self.units)}"
-    def go(self,p): self.here=min(max(p,0),len(self.entries)-1)
-    def accept(self): self.go(self.here+1); return "accepted"
+    """What the screens ask for.
+
+    Parameters
+    ----------
+    session : ReviewSession
+    library : callable, optional
+        Returns the type library; called when a list of types is first wanted.
+    """
+
+    def __init__(self, session: ReviewSession, library: Callable[[], TypeLibrary] | None = None) -> None:
+        self.session = session
+        self._read_library = library
+        self._library: TypeLibrary | None = None
+        self._conditions: dict[tuple[str, str], ConditionFacts] = {}
+
+    # ------------------------------------------------------------------------- showing
+
+    @property
+    def entries(self) -> Sequence[QueueEntry]:
+        """Return the rows of the queue in view."""
+        return self.session.entries
+
+    @property
+    def here(self) -> int:
+        """Return the place of the current row."""
+        return max(0, self.session.index)
+
+    def forget(self) -> None:
+        """Read conditions anew: results have changed."""
+        self._conditions.clear()
+
+    def view(self) -> UnitView | None:
+        """Return what the review screen shows of the current unit; None when there is none."""
+        entry = self.session.current
+        if entry is None:
+            return None
+        unit, condition = self.session.unit_result(entry), self.condition(entry)
+        return UnitView(unit, condition.nerves, condition.ti_s, condition.te_s, family_shown(entry, unit),
+                        verdict_of(entry, unit, condition))
+
+    def condition(self, entry: QueueEntry) -> ConditionFacts:
+        """Return what is needed of an entry's condition."""
+        key = entry.path, entry.condition
+        if key not in self._conditions:
+            result = self.session.condition_result(entry)
+            ti_s, te_s = mean_durations(result.nerve_cycles.cycles)
+            share = result.regime_probabilities.get(result.regime)
+            regime = result.regime + ("" if share is None else f" {share:.2f}")
+            self._conditions[key] = ConditionFacts(result.nerve_profiles, ti_s, te_s, regime)
+        return self._conditions[key]
+
+    def head(self) -> tuple[str, str, str]:
+        """Return title, file and place in the queue for the line at the top."""
+        entry = self.session.current
+        if entry is None:
+            return "unitclass", "", self.pending_words()
+        title = f"unit {entry.unit}" + (f"  {entry.condition}" if entry.condition else "")
+        place = f"{self.here + 1} of {len(self.entries)}"
+        if not self.session.filter.is_empty:
+            place += " shown"
+        return title, entry.path, "  ".join(filter(None, (self.pending_words(), place)))
+
+    def pending_words(self) -> str:
+        """Return how many files are still to come, and how many failed; nothing when all are there."""
+        states = [file.state for file in self.session.files]
+        words = []
+        if waiting := states.count("waiting"):
+            words.append(f"{waiting} file{'s' if waiting > 1 else ''} to come")
+        if failed := states.count("failed"):
+            words.append(f"{failed} failed")
+        return ", ".join(words)
+
+    def why_empty(self) -> str:
+        """Return what to tell when there is no unit to show."""
+        files = self.session.files
+        if self.session.all_entries:
+            return "No unit fits what is asked for. Choose which units again, or all of them."
+        lines = [f"{file.path}: {file.reason}" for file in files if file.state == "failed"]
+        if any(file.state == "waiting" for file in files):
+            lines.insert(0, "The first files are being analysed; units appear here as they are ready.")
+        elif not lines:
+            lines.append("These files hold no units to review.")
+        return "\n".join(lines)
+
+    # -------------------------------------------------------------------------- acting
+
+    def go(self, place: int) -> None:
+        """Go to a place of the queue."""
+        self.session.jump(place)
+
+    def accept(self) -> str:
+        """Accept the suggestion; return what was done."""
+        return decided_words(self.session.accept())
+
+    def take(self, number: int) -> str:
+        """Take the type listed as `number`; return what was done."""
+        return decided_words(self.session.take_alternative(number))
+
+    def name(self, type_id: str) -> str:
+        """Decide on a type; return what was done."""
+        return decided_words(self.session.name_type(type_id))
+
+    def mixed(self) -> str:
+        """Decide that this is not one cell; return what was done."""
+        return decided_words(self.session.not_one_cell())
+
+    def note(self, text: str) -> str:
+        """Keep a note; return what was done."""
+        entry = self.session.note(text)
+        return f"{entry.unit}: note kept" if text else f"{entry.unit}: note removed"
+
+    def later(self) -> str:
+        """Put the unit off or take it back among the open ones; return what was done."""
+        entry = self.session.later()
+        return f"{entry.unit}: left for later" if entry.is_later else f"{entry.unit}: open again"
+
+    def turn(self, is_undo: bool) -> tuple[str, tuple[str, ...]]:
+        """Undo or redo; return what was done and the files to analyse again."""
+        turn = self.session.undo() if is_undo else self.session.redo()
+        if turn is None:
+            return ("nothing to take back" if is_undo else "nothing to give again"), ()
+        what = "taken back" if is_undo else "given again"
+        units = ", ".join(entry.unit for entry in turn.entries[:3])
+        more = f" and {len(turn.entries) - 3} more" if len(turn.entries) > 3 else ""
+        return f"{what}: {turn.act.kind} {units}{more}", turn.paths
+
+    # --------------------------------------------------------------------- which units
+
+    def go_to_changed(self) -> bool:
+        """Go to the next unit in view whose suggestion has changed; return whether there is one."""
+        places = [*range(self.here + 1, len(self.entries)), *range(self.here)]
+        found = next((place for place in places if self.entries[place].is_changed), None)
+        if found is not None:
+            self.session.jump(found)
+        return found is not None
+
+    def filter_options(self) -> list[Option]:
+        """Return everything by which units can be chosen, each with the number of units."""
+        options = [Option("all", "all units", "")]
+        options += [Option(f"{name}=", words, "") for name, words in YES_NO.items()]
+        for field, noun in FACETS.items():
+            values = self.session.choices(field)
+            if len(values) > 1 or field in ("flags", "types"):
+                options += [Option(f"{field}={value}", f"{noun} {value}", f"{count}") for value, count in values]
+        return options
+
+    def show_only(self, wanted: str) -> str:
+        """Show only what an option of `filter_options` asks for, in addition to what is asked already."""
+        name, _, value = wanted.partition("=")
+        if wanted == "all":
+            chosen = Filter()
+        elif name in YES_NO:
+            chosen = replace(self.session.filter, **NAMED_FILTERS[name])
+        else:
+            chosen = replace(self.session.filter, **{name: (value,)})
+        self.session.show(chosen)
+        return f"{len(self.entries)} of {len(self.session.all_entries)} units in view"
+
+    def order_options(self) -> list[Option]:
+        """Return the orders of the queue."""
+        return [Option(INFORMATIVE, "most informative first", "uncertain, then contradicted, then sure"),
+                *(Option(name, f"by {name}") for name in SORTS),
+                Option("reverse", "the other way round")]
+
+    def sort(self, by: str) -> str:
+        """Put the queue in an order; the current unit stays."""
+        if by == "reverse":
+            self.session.sort(self.session.sorted_by, is_reversed=not self.session.is_reversed)
+        else:
+            self.session.sort(by)
+        backwards = ", backwards" if self.session.is_reversed else ""
+        return f"order: {self.session.sorted_by}{backwards}"
+
+    # -------------------------------------------------------------------------- types
+
+    @property
+    def library(self) -> TypeLibrary | None:
+        """Return the type library, read when first asked for; None when there is none."""
+        if self._library is None and self._read_library is not None:
+            self._library = self._read_library()
+        return self._library
+
+    def type_ids(self) -> list[str]:
+        """Return the types in the order of the library, with the reviewer's own verdicts at the end."""
+        known = [family.id for family in self.library.families] if self.library is not None else []
+        suggested = [name for entry in self.entries[:200] for name, _ in entry.ranked]
+        return list(dict.fromkeys([*known, *suggested, OTHER, NOT_ONE_CELL, SILENT, UNDETERMINED]))
+
+    def type_options(self) -> list[Option]:
+        """Return every type that can be named, with its words."""
+        families = {f.id: f for f in self.library.families} if self.library is not None else {}
+        words = {OTHER: "modulated, but like none of these", NOT_ONE_CELL: "two cells in one train, or an artefact",
+                 SILENT: "hardly fires here", UNDETERMINED: "too little data to say"}
+        options = []
+        for name in self.type_ids():
+            family = families.get(name)
+            detail = family.words if family is not None else words.get(name, "")
+            options.append(Option(name, name, detail, " ".join(family.also) if family is not None else ""))
+        return options
+
+
+def family_shown(entry: QueueEntry, unit: UnitResult) -> str:
+    """Return the type whose fitted family is drawn: none while hidden, and none for a state."""
+    return "" if entry.is_hidden or not unit.suggestion.fitted_rate_hz.size else unit.suggestion.type
+
+
+def verdict_of(entry: QueueEntry, unit: UnitResult, condition: ConditionFacts) -> Verdict:
+    """Return the verdict on a unit in words."""
+    suggestion = unit.suggestion
+    verdict = Verdict(entry.suggested_type, entry.probability, entry.ranked, flags=flags_of(entry),
+                      decided=standing_words(entry), change=entry.change, note=entry.note,
+                      facts=tuple(_short_facts(entry, unit, condition)), is_blind=entry.is_hidden)
+    if entry.is_hidden:
+        return verdict
+    worst = misfit(unit)
+    fit = "" if worst is None or worst.is_contradiction else worst.words(suggestion.type)
+    return replace(verdict, against=contradictions(unit), fit=fit, rule=rule_words(unit),
+                   reasons=suggestion.reasons)
+
+
+def rule_words(unit: UnitResult) -> str:
+    """Return the rule of thumb as a cross-check, when it agrees (if not, it speaks against)."""
+    rule = unit.suggestion.rule_type
+    if not rule or unit.suggestion.type in STATES:
+        return ""
+    return f"rule of thumb: {rule}" + (", the same" if rule == unit.suggestion.type else "")
+
+
+def flags_of(entry: QueueEntry) -> tuple[str, ...]:
+    """Return the flags of the data; those of the label are in `standing_words`."""
+    return tuple(entry.flags)
+
+
+def standing_words(entry: QueueEntry) -> str:
+    """Return what has been decided on a unit, by whom and how."""
+    words = []
+    if entry.own_type:
+        words.append(f"you: {entry.own_type} ({OWN_WORDS.get(entry.own_how, entry.own_how)})")
+    if entry.label is not None and entry.label.type and (not entry.own_type or entry.label.type != entry.own_type
+                                                        or ";" in entry.label.reviewer):
+        words.append(f"stands: {entry.label.type}, {entry.label.reviewer}")
+    words += [LABEL_FLAGS.get(flag, flag) for flag in entry.label_flags]
+    if entry.is_later and not entry.own_type:
+        words.append("left for later")
+    return "; ".join(words)
+
+
+YES_NO: Mapping[str, str] = {"open": "without my label", "labelled": "with my label", "later": "left for later",
+                             "changed": "suggestion changed", "sure": "sure suggestions",
+                             "unsure": "unsure suggestions"}
+NAMED_FILTERS: Mapping[str, Mapping[str, Any]] = {
+    "open": {"is_reviewed": False}, "labelled": {"is_reviewed": True}, "later": {"is_later": True},
+    "changed": {"is_changed": True}, "sure": {"low": 0.95, "high": 1.0}, "unsure": {"low": 0.0, "high": 0.95}}
+FACETS: Mapping[str, str] = {"types": "type", "files": "file", "conditions": "condition", "regions": "region",
+                             "flags": "flag", "shape_groups": "shape group", "states": "state"}
+LABEL_FLAGS: Mapping[str, str] = {
+    "disagreement": "reviewers differ", "stale": "label is older than a change of the cycles: look again",
+    "asks again": "the spike train is not the one that was labelled: label it again"}
+
+
+def _short_facts(entry: QueueEntry, unit: UnitResult, condition: ConditionFacts) -> Iterable[tuple[str, str]]:
+    yield "spikes", f"{unit.n_spikes} in {unit.n_cycles} cycles"
+    yield "rhythm", condition.regime
+    if entry.shape_group:
+        yield "shape group", entry.shape_group
+    for name, value in entry.columns.items():
+        yield str(name), str(value)
+
+
+def decided_words(entry: QueueEntry) -> str:
+    """Return what was just decided."""
+    return f"{entry.unit}: {entry.own_type}"

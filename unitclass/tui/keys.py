@@ -71,10 +71,11 @@ DECLARED: tuple[Key, ...] = (
     Key("types", "k", "kinds of unit: the families behind the suggestions", (REVIEW,), "kinds", 20),
     Key("discuss", "d", "units on which reviewers differ", (REVIEW,), "discuss", 21),
     Key("finish", "e", "end: what is left, and export of labelled files", (REVIEW,), "end/export", 2),
+    Key("move", "m", "keep decisions in another file, e.g. on a full disk", (REVIEW,), "", 40),
     Key("help", "question_mark", "all keys", (REVIEW, *OTHERS), "help", 0),
-    Key("quit", "q", "leave (every decision is already stored)", (REVIEW,), "leave", 19),
+    Key("quit", "q,ctrl+c", "leave (every decision is already stored)", (REVIEW,), "leave", 19),
     # on the other screens
-    Key("close", "escape", "back to the unit", OTHERS, "back", 1),
+    Key("close", "escape,ctrl+c", "back to the unit", OTHERS, "back", 1),
     Key("goto", "enter", "go to this unit", (POPULATION, CONDITIONS, DISCUSS), "go to unit", 2),
     Key("confirm", "enter", "accept all that is listed", (BATCH,), "accept these", 0),
     Key("leave_out", "x", "leave this one out of the batch, or take it in again", (BATCH,), "leave out", 2),
@@ -91,6 +92,7 @@ DECLARED: tuple[Key, ...] = (
     Key("undo_edit", "u", "take back the last change that is not applied yet", (CYCLES,), "undo", 6),
 )
 
+_DEFAULTS = {declared.id: declared.key for declared in DECLARED}
 READABLE = {"enter": "Enter", "escape": "Esc", "slash": "/", "question_mark": "?", "down": "Down", "up": "Up",
             "left": "Left", "right": "Right", "pagedown": "PgDn", "pageup": "PgUp", "home": "Home",
             "end": "End",
@@ -125,7 +127,7 @@ class KeyMap:
 
     def key(self, action: str) -> str:
         """Return the key of an action, by the toolkit's name."""
-        return self.changed.get(action) or next(d.key for d in DECLARED if d.id == action)
+        return self.changed.get(action) or _DEFAULTS[action]
 
     def shown(self, action: str) -> str:
         """Return the key of an action as a person reads it."""
@@ -159,8 +161,9 @@ class KeyMap:
 
 
 def readable(key: str) -> str:
-    """Return a toolkit key name as a person reads it."""
-    return READABLE.get(key, key)
+    """Return a toolkit key name (the first, of several for one action) as a person reads it."""
+    first = key.partition(",")[0]
+    return READABLE.get(first, first)
 
 
 def _checked(action: str, key: str, known: set[str]) -> None:

@@ -2,50 +2,36 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from typing import Any
-
 from textual.message import Message
 
-
-@dataclass
-class Analysed(Message):
-    """One session is analysed; `result` is what the analysis returned."""
-
-    path: str
-    result: Any
+from unitclass.tui.workers import Done
 
 
-@dataclass
-class AnalysisFailed(Message):
-    """One session could not be analysed; `reason` is one line for the user."""
+class WorkDone(Message):
+    """A piece of work in the background came to an end; `task` is ANALYSIS, LEARNING or EXPORT.
 
-    path: str
-    reason: str
+    `done` is None when the task has nothing left to do.
+    """
 
-
-@dataclass
-class AnalysisEnded(Message):
-    """Nothing is being analysed any more."""
+    def __init__(self, task: str, done: Done | None) -> None:
+        super().__init__()
+        self.task, self.done = task, done
 
 
-@dataclass
-class Learned(Message):
-    """Suggestions were made afresh from the labels; `result` is what the learner returned."""
-
-    result: Any
-
-
-@dataclass
-class Exported(Message):
-    """Labelled files are written; `paths` says where, `problems` what went wrong with others."""
-
-    paths: tuple[str, ...]
-    problems: tuple[str, ...]
-
-
-@dataclass
 class Picked(Message):
     """The mouse chose entry `index` of the list that posted this."""
 
-    index: int
+    def __init__(self, index: int) -> None:
+        super().__init__()
+        self.index = index
+
+
+class Stepped(Message):
+    """The mouse wheel asks for `steps` units on (negative: back)."""
+
+    def __init__(self, steps: int) -> None:
+        super().__init__()
+        self.steps = steps
+
+
+ANALYSIS, LEARNING, EXPORT = "analysis", "learning", "export"

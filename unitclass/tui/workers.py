@@ -10,40 +10,48 @@ import os
 import signal
 import sys
 import threading
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterable
+from dataclasses import dataclass
 from typing import Any
 
 from unitclass.errors import UnitclassError
 
-Report = tuple[str, str, Any]
-"""(path, "done" or "failed", result or reason)."""
-
 NICENESS = 10
 
 
-class Analysis:
-    """Runs `analyse(path)` for each of several paths in one process, one after the other.
+@dataclass(frozen=True)
+class Done:
+    """What came of one piece of work: `result`, or in `problem` one line why there is none."""
+
+    name: str
+    result: Any = None
+    problem: str = ""
+
+
+class Work:
+    """Calls `function` for each of several pieces of work in one process, one after the other.
 
     Parameters
     ----------
-    analyse : callable
+    function : callable
         A module-level function or a partial of one, so that the process can find it.
+    pieces : iterable of (name, arguments)
+        Gone through in a thread while the process works; may be a generator that takes its time.
     report : callable
-        Called from a thread with each Report as it comes, and with None after the last.
+        Called from that thread with a Done for each piece as it comes, and with None at the end.
     """
 
-    def __init__(self, analyse: Callable[[str], Any], paths: Sequence[str],
-                 report: Callable[[Report | None], None]) -> None:
-        self._report = report
-        self._left = list(paths)
+    def __init__(self, function: Callable[..., Any], pieces: Iterable[tuple[str, tuple[Any, ...]]],
+                 report: Callable[[Done | None], None]) -> None:
+        self._function, self._pieces, self._report = function, pieces, report
         self._is_stopped = False
-        self._thread = threading.Thread(target=self._run, args=(analyse, tuple(paths)), daemon=True,
-                                        name="analysis")
         self._process: Any = None
+        self._thread = threading.Thread(target=self._run, daemon=True, name="work")
 
-    def start(self) -> None:
+    def start(self) -> Work:
         """Start without waiting."""
         self._thread.start()
+        return self
 
     def stop(self) -> None:
         """End the process now; nothing more is reported."""
@@ -51,56 +59,65 @@ class Analysis:
         if self._process is not None and self._process.is_alive():
             self._process.terminate()
 
-    def _run(self, analyse: Callable[[str], Any], paths: tuple[str, ...]) -> None:
+    def _run(self) -> None:
         import multiprocessing
 
         context = multiprocessing.get_context("spawn")
-        receiver, sender = context.Pipe(duplex=False)
-        self._process = context.Process(target=_work, args=(analyse, paths, sender), daemon=True)
+        ours, theirs = context.Pipe()
+        self._process = context.Process(target=_serve, args=(self._function, theirs), daemon=True)
         try:
             self._process.start()
-            sender.close()
-            self._pass_on(receiver)
+            theirs.close()
+            self._pass_on(ours)
         except Exception as error:
-            self._fail_rest(f"the analysis could not be started: {error}")
-        if not self._is_stopped:
-            self._report(None)
+            self._tell(Done("", problem=f"the work could not be started: {error}"))
+        finally:
+            ours.close()
+        self._tell(None)
 
-    def _pass_on(self, receiver: Any) -> None:
-        while self._left and not self._is_stopped:
+    def _pass_on(self, pipe: Any) -> None:
+        for name, arguments in self._pieces:
+            if self._is_stopped:
+                return
             try:
-                report = receiver.recv()
+                pipe.send(arguments)
+                result, problem = pipe.recv()
+                self._tell(Done(name, result, problem))
             except (EOFError, OSError):
                 self._process.join(5.0)
-                self._fail_rest(f"the analysis ended unexpectedly (exit code {self._process.exitcode})")
+                code = self._process.exitcode
+                self._tell(Done(name, problem=f"{name}: the work ended unexpectedly (exit code {code})"))
                 return
-            self._left.remove(report[0])
-            if not self._is_stopped:
-                self._report(report)
+        pipe.send(None)
 
-    def _fail_rest(self, reason: str) -> None:
-        left, self._left = self._left, []
-        for path in left:
-            if not self._is_stopped:
-                self._report((path, "failed", reason))
+    def _tell(self, done: Done | None) -> None:
+        if not self._is_stopped:
+            self._report(done)
 
 
-def _work(analyse: Callable[[str], Any], paths: tuple[str, ...], sender: Any) -> None:
-    """Analyse each path and send what comes of it; runs in the process."""
+def _serve(function: Callable[..., Any], pipe: Any) -> None:
+    """Work off what comes through the pipe; runs in the process."""
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     _silence()
-    os.nice(NICENESS)
-    for path in paths:
-        sender.send(_outcome(analyse, path))
+    if hasattr(os, "nice"):
+        os.nice(NICENESS)
+    while True:
+        try:
+            arguments = pipe.recv()
+        except EOFError:
+            return
+        if arguments is None:
+            return
+        pipe.send(_outcome(function, arguments))
 
 
-def _outcome(analyse: Callable[[str], Any], path: str) -> Report:
+def _outcome(function: Callable[..., Any], arguments: tuple[Any, ...]) -> tuple[Any, str]:
     try:
-        return path, "done", analyse(path)
+        return function(*arguments), ""
     except UnitclassError as error:
-        return path, "failed", str(error)
+        return None, str(error)
     except Exception as error:
-        return path, "failed", f"{path}: {type(error).__name__}: {error}"
+        return None, f"{type(error).__name__}: {error}"
 
 
 def _silence() -> None:

@@ -9,7 +9,6 @@ from unitclass.tui.renderables.glyphs import COLOUR, Look
 from unitclass.tui.renderables.sheet import Sheet, width_of
 from unitclass.tui.renderables.words import shortened
 
-
 MARKS = {"later": "z", "disagreement": "?", "asks again": "!", "stale": "~", "labelled": "+"}
 """State of a unit to the character before its name; "reviewed" has the glyph of its own."""
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from typing import ClassVar
 
 from textual import events
@@ -34,7 +34,7 @@ class Question:
     lead: str
     done: Callable[[str], None]
     options: tuple[Option, ...] = ()
-    entry: LineEntry = LineEntry()
+    entry: LineEntry = field(default_factory=LineEntry)
     here: int = 0
     live: Callable[[str], None] | None = None
 
@@ -50,7 +50,7 @@ def bindings_of(screen: str) -> list[Binding | tuple[str, str] | tuple[str, str,
             for d in DECLARED if screen in d.screens]
 
 
-class BaseScreen(Screen[None]):
+class BaseScreen(Screen[str]):
     """A screen with a foot. Subclasses name themselves and fill the rest."""
 
     KEYS: ClassVar[str] = ""

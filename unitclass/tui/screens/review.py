@@ -21,6 +21,7 @@ from unitclass.tui.widgets.panels import QueueColumn, UnitPage, VerdictPanel
 COLUMN_FROM = 100
 BESIDE_FROM = 64
 LEAST = (30, 9)
+TOO_SMALL = "This terminal is too small:\nmake it 40 x 12 or larger."
 
 
 class ReviewScreen(BaseScreen):
@@ -41,9 +42,12 @@ class ReviewScreen(BaseScreen):
         self.queue = QueueColumn(theme)
         self.page = UnitPage(theme)
         self.verdict = VerdictPanel(theme)
+        self._arranged_for = (0, 0)
 
     def compose(self) -> ComposeResult:
-        """Lay the parts out."""
+        """Lay the parts out, with the first unit in them, so that the first paint shows it."""
+        self._arrange(*self.app.size)
+        self.repaint()
         yield self.head
         yield self.foot
         yield self.queue
@@ -51,14 +55,14 @@ class ReviewScreen(BaseScreen):
         yield self.verdict
 
     def on_mount(self) -> None:
-        """Show the first unit."""
-        self._arrange(*self.app.size)
-        self.repaint()
+        """Tell the program when the first unit is on the screen."""
+        self.call_after_refresh(self.app.begin)  # type: ignore[attr-defined]
 
     def on_resize(self, event: events.Resize) -> None:
         """Give every part the room it needs at this size."""
-        self._arrange(event.size.width, event.size.height)
-        self.repaint_soon()
+        if tuple(event.size) != self._arranged_for:
+            self._arrange(*event.size)
+            self.repaint_soon()
 
     def list_area(self) -> Canvas:
         """Return where lists are shown: the verdict's place, or the picture's on a narrow terminal."""
@@ -75,18 +79,18 @@ class ReviewScreen(BaseScreen):
         if has_column:
             self.queue.show(entries, here)
         if view is None or self._is_too_small():
-            words = desk.why_empty() if view is None else "This terminal is too small: make it 40 x 12 or larger."
-            self.page.show(None, words)
+            self.page.show(None, desk.why_empty() if view is None else TOO_SMALL)
             self.verdict.show(None, "")
             return
         self.page.show(view)
         self.verdict.show(view.verdict, f"{self.keys.shown('account')}: all of it")
 
     def _is_too_small(self) -> bool:
-        width, height = self.size
+        width, height = self._arranged_for
         return width < LEAST[0] or height < LEAST[1]
 
     def _arrange(self, width: int, height: int) -> None:
+        self._arranged_for = (width, height)
         has_column = width >= COLUMN_FROM and height >= 16
         is_brief = width < BESIDE_FROM
         self.queue.display = has_column
@@ -139,12 +143,169 @@ class ReviewScreen(BaseScreen):
     def _do(self, act: Callable[[], str]) -> None:
         """Do something that is written to the store, and say what came of it."""
         try:
-            message, ink = act(), ""
+            message = act()
         except UnitclassError as error:
-            message, ink = str(error), "warn"
-        self.say(message, ink)
+            self.say(f"{error}" + (f"; {self.keys.shown('move')}: keep decisions elsewhere"
+                                   if self.desk.session.has_unsaved else ""), "warn")
+        else:
+            self.say(message)
+            self.app.labels_changed()  # type: ignore[attr-defined]
         self.repaint_soon()
 
     def action_accept(self) -> None:
         """Accept the suggestion."""
-        self._do(self.desk.accept)
+        if self.desk.session.current is not None:
+            self._do(self.desk.accept)
+
+    def action_take(self, number: int) -> None:
+        """Take the type listed with a number."""
+        if self.desk.session.current is not None:
+            self._do(lambda: self.desk.take(number))
+
+    def action_name(self) -> None:
+        """Name any type."""
+        if self.desk.session.current is not None:
+            self.ask("type", lambda name: self._do(lambda: self.desk.name(name)),
+                     options=self.desk.type_options())
+
+    def action_mixed(self) -> None:
+        """Decide that this is not one cell."""
+        if self.desk.session.current is not None:
+            self._do(self.desk.mixed)
+
+    def action_later(self) -> None:
+        """Leave the unit for later."""
+        if self.desk.session.current is not None:
+            self._do(self.desk.later)
+
+    def action_note(self) -> None:
+        """Write a note."""
+        entry = self.desk.session.current
+        if entry is not None:
+            self.ask("note", lambda text: self._do(lambda: self.desk.note(text)), text=entry.note)
+
+    def action_undo(self) -> None:
+        """Take back the last decision."""
+        self._turn(True)
+
+    def action_redo(self) -> None:
+        """Give again what was taken back."""
+        self._turn(False)
+
+    def _turn(self, is_undo: bool) -> None:
+        try:
+            message, paths = self.desk.turn(is_undo)
+        except UnitclassError as error:
+            self.say(str(error), "warn")
+            return
+        self.say(message)
+        if paths:
+            self.app.analyse_again(paths)  # type: ignore[attr-defined]
+        self.repaint_soon()
+
+    def action_move(self) -> None:
+        """Go on with the decisions in another place, e.g. when the disk is full."""
+        self.ask("keep decisions in the file", self._move, text=str(self.desk.session.store_path))
+
+    def _move(self, path: str) -> None:
+        def move() -> str:
+            self.desk.session.move_store(path)
+            return f"decisions are kept in {self.desk.session.store_path}"
+        self._do(move)
+
+    def action_blind(self) -> None:
+        """Hide suggestions until a label is given, or show them again."""
+        self.desk.session.set_blind(not self.desk.session.is_blind)
+        self.say("blind: suggestions are hidden until you name a type" if self.desk.session.is_blind else
+                 "suggestions are shown")
+        self.repaint_soon()
+
+    # ------------------------------------------------------------------ finding and ordering
+
+    def action_open(self) -> None:
+        """Go to the next unit without a label."""
+        if self.desk.session.next_open() is None:
+            self.say(f"every unit in view has your label; {self.keys.shown('finish')}: end and export")
+        self.repaint_soon()
+
+    def action_changed(self) -> None:
+        """Go to the next changed suggestion."""
+        self.say("" if self.desk.go_to_changed() else "no suggestion in view has changed")
+        self.repaint_soon()
+
+    def action_find(self) -> None:
+        """Find a unit by name."""
+        self.ask("find unit", self._find)
+
+    def _find(self, text: str) -> None:
+        found = self.desk.session.find(text) if text else None
+        self.say("" if found is not None or not text else f"no unit in view is called {text}")
+        self.repaint_soon()
+
+    def action_only(self) -> None:
+        """Choose which units are in view."""
+        self.ask("which units", self._show_only, options=self.desk.filter_options())
+
+    def _show_only(self, value: str) -> None:
+        self.say(self.desk.show_only(value))
+        self.repaint_soon()
+
+    def action_order(self) -> None:
+        """Choose the order of the queue."""
+        self.ask("order", self._sort, options=self.desk.order_options())
+
+    def _sort(self, by: str) -> None:
+        self.say(self.desk.sort(by))
+        self.repaint_soon()
+
+    # --------------------------------------------------------------------- other screens
+
+    def _push(self, screen: str) -> None:
+        if self.desk.session.current is None and screen not in ("help", "finish"):
+            self.say("there is no unit to show")
+            return
+        self.app.push_screen(self.app.other_screen(screen), self._returned)  # type: ignore[attr-defined]
+
+    def _returned(self, message: str | None) -> None:
+        self.say(message or "")
+        self.repaint_soon()
+
+    def action_account(self) -> None:
+        """Show this unit in full."""
+        self._push("account")
+
+    def action_population(self) -> None:
+        """Show the population."""
+        self._push("population")
+
+    def action_conditions(self) -> None:
+        """Show the conditions side by side."""
+        self._push("conditions")
+
+    def action_cycles(self) -> None:
+        """Show the cycles."""
+        self._push("cycles")
+
+    def action_types(self) -> None:
+        """Show the kinds of unit."""
+        self._push("types")
+
+    def action_discuss(self) -> None:
+        """Show the units on which reviewers differ."""
+        self._push("discuss")
+
+    def action_batch(self) -> None:
+        """Show what a batch would accept."""
+        self._push("batch")
+
+    def action_finish(self) -> None:
+        """Show what is left, and export."""
+        self._push("finish")
+
+    def action_help(self) -> None:
+        """Show all keys."""
+        self._push("help")
+
+    def action_quit(self) -> None:
+        """Leave."""
+        self.app.exit(0)

@@ -54,7 +54,9 @@ class Canvas(Widget):
         self.redraw()
 
     def render_line(self, y: int) -> Strip:
-        """Return row `y` as the toolkit wants it."""
+        """Return row `y` as the toolkit wants it; the first paint draws the sheet."""
+        if (self.sheet.width, self.sheet.height) != tuple(self.size):
+            self.sheet = (self._cover or self.draw)(*self.size)
         if y >= self.sheet.height:
             return Strip.blank(self.size.width)
         style = self.inks.style
