@@ -22,6 +22,7 @@ from unitclass.records import (
     UnitResult,
 )
 from unitclass.review import batch_accept, rows
+from unitclass.review.agreement import AgreementReport, StoredSession, agreement, rated_units
 from unitclass.review.board import Board
 from unitclass.review.entry import EntryKey, QueueEntry
 from unitclass.review.filters import Filter
@@ -45,6 +46,11 @@ class ReviewReader:
     def is_blind(self) -> bool:
         """Return whether suggestions are hidden until this reviewer has decided."""
         return self._board.is_blind
+
+    def set_blind(self, is_blind: bool) -> None:
+        """Hide suggestions until this reviewer has decided, or show them again; places stay."""
+        self._board.is_blind = is_blind
+        self._board.reload(self._board.shelf.views)
 
     @property
     def store_path(self) -> Path:
@@ -217,6 +223,17 @@ class ReviewReader:
             return ()
         log = self._board.store.read(entry.identifier, entry.object_id, unit=entry.unit, condition=entry.condition)
         return opinions(log, {entry.unit: entry.digest}).get((entry.unit, entry.condition), ())
+
+    def agreement(self) -> AgreementReport:
+        """Compare all reviewers over the open files; units that are hidden are left out."""
+        heads = {path: view.head for path, view in self._board.shelf.views.items()}
+        stored = [StoredSession(path, head.identifier, head.object_id, self._board.digests(path))
+                  for path, head in heads.items()]
+        found = rated_units(self._board.store, stored)
+        return agreement([unit for unit in found if not self._is_hidden((unit.path, unit.unit, unit.condition))])
+
+    def _is_hidden(self, key: EntryKey) -> bool:
+        return key in self._board.queue and self.entry(key).is_hidden
 
     def cycle_edits(self, path: str) -> tuple[CycleEdit, ...]:
         """Return the cycle edits of a file that are in force, oldest first."""
