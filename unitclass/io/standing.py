@@ -47,6 +47,12 @@ def opinions(log: SessionLog, digests: Mapping[str, str]) -> Mapping[tuple[str, 
     return {key: tuple(by_reviewer.values()) for key, by_reviewer in newest.items()}
 
 
+def latest_digests(log: SessionLog) -> Mapping[str, str]:
+    """Return unit to the digest of the spike train that was decided on last."""
+    return {logged.decision.unit: logged.decision.digest
+            for logged in sorted(log.decisions, key=lambda d: d.act)}
+
+
 def newest_of(log: SessionLog, reviewer: str,
               digests: Mapping[str, str]) -> Mapping[tuple[str, str], Decision]:
     """Return what the reviewer decided last, settlements included, on the present spike trains."""

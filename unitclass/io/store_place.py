@@ -11,6 +11,7 @@ from dataclasses import dataclass
 from pathlib import Path
 
 from unitclass.errors import TargetError, UsageError
+from unitclass.io.decisions import DecisionStore
 
 STORE_NAME = "unitclass.sqlite"
 CACHE_NAME = "results.sqlite"
@@ -53,6 +54,14 @@ def store_path(paths: Sequence[str | Path], explicit: str | Path | None = None) 
     if _can_write(beside):
         return StorePlace(beside)
     return _in_data_folder(beside)
+
+
+def open_store(place: StorePlace) -> DecisionStore:
+    """Open the store at a place, with what is in its seed; raises TargetError, FileError."""
+    if place.seed is None:
+        return DecisionStore(place.path)
+    with DecisionStore(place.seed, is_read_only=True) as seed:
+        return seed.copy_to(place.path)
 
 
 def existing_store(paths: Sequence[str | Path], explicit: str | Path | None = None) -> Path | None:

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import sqlite3
 from collections.abc import Iterator
-from contextlib import contextmanager
+from contextlib import closing, contextmanager
 from pathlib import Path
 
 from unitclass.errors import FileError, TargetError, UnitclassError
@@ -69,6 +69,8 @@ def open_connection(path: Path, *, is_read_only: bool, busy_timeout_s: float) ->
         If the file is no store of this program, is damaged, or is of a newer version.
     """
     with translated_errors(path):
+        if is_read_only:
+            _finish_interrupted_write(path, busy_timeout_s)
         connection = _connected(path, is_read_only, busy_timeout_s)
         try:
             connection.execute("PRAGMA foreign_keys = ON")
@@ -81,6 +83,19 @@ def open_connection(path: Path, *, is_read_only: bool, busy_timeout_s: float) ->
             connection.close()
             raise
     return connection
+
+
+def _finish_interrupted_write(path: Path, busy_timeout_s: float) -> None:
+    """Roll back what a killed writer left half done; a reader alone may not, and would be refused."""
+    with closing(_connected(path, True, busy_timeout_s)) as reader:
+        try:
+            _version(reader)
+            return
+        except sqlite3.OperationalError as error:
+            if getattr(error, "sqlite_errorcode", 0) != sqlite3.SQLITE_READONLY_ROLLBACK:
+                raise
+    with closing(_connected(path, False, busy_timeout_s)) as writer:
+        _version(writer)
 
 
 def _connected(path: Path, is_read_only: bool, busy_timeout_s: float) -> sqlite3.Connection:
