@@ -149,6 +149,12 @@ def region_of(columns: Mapping[str, str]) -> str:
     return ""
 
 
+def flag_kind(flag: str) -> str:
+    """Return a flag without its numbers, so that "few cycles (12)" is one kind with "few cycles (9)"."""
+    bare = re.sub(r"\([^)]*\)|[-+−]?[0-9]+([.,][0-9]+)?( ?%)?", " ", flag)
+    return " ".join(bare.split()).strip(" :,;").removeprefix("of ").removesuffix(" by")
+
+
 def natural(text: str) -> tuple[tuple[int, int, str], ...]:
     """Return a sort key under which unit 9 comes before unit 12."""
     pieces = re.findall(r"[0-9]+|[^0-9]+", text)

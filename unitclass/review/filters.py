@@ -6,7 +6,7 @@ import math
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 
-from unitclass.review.entry import QueueEntry
+from unitclass.review.entry import QueueEntry, flag_kind
 
 
 @dataclass(frozen=True)
@@ -16,6 +16,7 @@ class Filter:
     A tuple lets an entry through that has one of its values. `types` looks at the reviewer's
     own label where there is one, else at the suggestion. `low` and `high` bound the
     probability; a state such as "silent" has none and is let through only without bounds.
+    `flags` are kinds of flags, without their numbers (see `flag_kind`).
     """
 
     types: tuple[str, ...] = ()
@@ -59,7 +60,7 @@ _VALUES: Mapping[str, Callable[[QueueEntry], tuple[str, ...]]] = {
     "files": lambda e: (e.path, e.file),
     "conditions": lambda e: (e.condition,),
     "regions": lambda e: (e.region,),
-    "flags": lambda e: e.all_flags,
+    "flags": lambda e: tuple(dict.fromkeys(map(flag_kind, e.all_flags))),
     "shape_groups": lambda e: (e.shape_group,),
     "states": lambda e: (e.state,),
 }

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Collection, Mapping
+from collections.abc import Collection, Iterable, Mapping
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -12,6 +12,9 @@ from unitclass.io.standing import newest_of, standing_labels
 from unitclass.io.store_records import SessionLog
 from unitclass.records import Decision, Labels, Suggestion, UnitResult
 from unitclass.review.entry import QueueEntry
+
+_OF_DATA = ("few cycles", "intervals under", "rate drifts", "halves of the session", "bias current", "heart", "pump")
+"""Words of flags that may be read before a blind judgement."""
 
 UnitKey = tuple[str, str]
 """(unit, condition) within one session."""
@@ -71,12 +74,17 @@ def change_in_words(before: LightUnit, after: LightUnit) -> str:
 
 def hidden(row: QueueEntry, own_note: str) -> QueueEntry:
     """Return the row without anything that tells a suggestion or another's opinion."""
-    return replace(row, suggested_type="", ranked=(), label=None, change="", is_changed=False, flags=(),
-                   shape_group="", note=own_note, is_hidden=True)
+    return replace(row, suggested_type="", ranked=(), label=None, change="", is_changed=False,
+                   flags=flags_of_data(row.flags), shape_group="", note=own_note, is_hidden=True)
+
+
+def flags_of_data(flags: Iterable[str]) -> tuple[str, ...]:
+    """Return the flags that speak of the data alone; any other may betray a suggestion."""
+    return tuple(flag for flag in flags if any(word in flag for word in _OF_DATA))
 
 
 def without_suggestion(unit: UnitResult) -> UnitResult:
     """Return the unit's data without the engine's opinion of it."""
     nothing = np.empty(0)
     blank = Suggestion("", {}, (), {}, nothing, nothing, nothing)
-    return replace(unit, suggestion=blank, flags=(), shape_group="")
+    return replace(unit, suggestion=blank, flags=flags_of_data(unit.flags), shape_group="")
