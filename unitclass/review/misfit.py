@@ -12,6 +12,9 @@ from unitclass.records import SILENT, UNDETERMINED, FloatArray, UnitResult
 LARGE_SHARE = 0.12
 """Share of the spikes outside what the family allows, beyond both bands, that is a contradiction."""
 
+CLOSE = 0.1
+"""Greatest difference, as a share of the fitted peak, that is not worth a place."""
+
 
 @dataclass(frozen=True)
 class Misfit:
@@ -19,7 +22,7 @@ class Misfit:
 
     `observed_hz` is the unit's rate at canonical `phase`; `low_hz` to `high_hz` the family's band
     there. `share` is the share of all spikes that lie beyond both the histogram's confidence limits
-    and the family's band; `is_contradiction` when it is large.
+    and the family's band; `is_contradiction` when it is large, `is_close` when no bin differs.
     """
 
     phase: float
@@ -29,12 +32,15 @@ class Misfit:
     high_hz: float
     share: float
     is_contradiction: bool
+    is_close: bool = False
 
     def words(self, family: str) -> str:
         """Return one sentence with phase and rates."""
         where = f"at phase {self.phase:.2f}: {self.observed_hz:.0f} spikes/s"
         if self.is_contradiction:
             return f"does not fit {family} {where}, {family} allows {self.low_hz:.0f} to {self.high_hz:.0f}"
+        if self.is_close:
+            return f"follows {family} within {CLOSE:.0%} of its peak rate"
         return f"differs most from {family} {where}, fitted {self.expected_hz:.0f}"
 
 
@@ -46,11 +52,15 @@ def misfit(unit: UnitResult) -> Misfit | None:
     rate = histogram.rate_hz
     gap = _gap(histogram.low_hz, histogram.high_hz, fit.fitted_low_hz, fit.fitted_high_hz)
     beyond = float(np.nansum(gap * histogram.exposure_s)) / histogram.n_spikes
-    excess = gap if np.any(gap > 0) else np.nan_to_num(np.abs(rate - fit.fitted_rate_hz))
-    worst = int(np.argmax(excess))
+    is_contradiction = beyond > LARGE_SHARE
+    worst = int(np.argmax(gap if is_contradiction else np.nan_to_num(np.abs(rate - fit.fitted_rate_hz))))
     return Misfit(float(histogram.centres[worst]), float(rate[worst]), float(fit.fitted_rate_hz[worst]),
                   float(fit.fitted_low_hz[worst]), float(fit.fitted_high_hz[worst]), beyond,
-                  beyond > LARGE_SHARE)
+                  is_contradiction, _is_close(rate, fit.fitted_rate_hz))
+
+
+def _is_close(rate: FloatArray, fitted: FloatArray) -> bool:
+    return bool(np.nanmax(np.abs(rate - fitted)) <= CLOSE * np.nanmax(fitted))
 
 
 def _gap(low: FloatArray, high: FloatArray, fit_low: FloatArray, fit_high: FloatArray) -> FloatArray:

@@ -21,10 +21,12 @@ from unitclass.tui.keys import KeyMap  # noqa: E402
 from unitclass.tui.messages import ANALYSIS, EXPORT, LEARNING, WorkDone  # noqa: E402
 from unitclass.tui.screens.base import BaseScreen  # noqa: E402
 from unitclass.tui.screens.review import ReviewScreen  # noqa: E402
+from unitclass.tui.terminal import check_terminal  # noqa: E402
 from unitclass.tui.theme import Theme, background_of_terminal, look_of_terminal  # noqa: E402
 from unitclass.tui.workers import Done, Work  # noqa: E402
 
 LABELS_TO_LEARN = 5
+EXISTS = "exists already"
 
 
 class ReviewApp(App[int], inherit_bindings=False):
@@ -43,7 +45,8 @@ class ReviewApp(App[int], inherit_bindings=False):
     relearn : callable, optional
         relearn(lessons) -> {(path, unit, condition): Suggestion}, run in a process too.
     export : callable, optional
-        export(path, SessionResult, Labels, target) -> where it was written, run in a process too.
+        export(path, SessionResult, Labels, target, is_replacing) -> where it was written, run in a
+        process too.
     library : callable, optional
         Returns the TypeLibrary; called when it is first needed.
     """
@@ -113,9 +116,10 @@ class ReviewApp(App[int], inherit_bindings=False):
             self._n_unlearned = 0
             self._start(LEARNING, self._relearn, [("labels", (self.desk.session.lessons(),))])
 
-    def start_export(self) -> bool:
+    def start_export(self, is_replacing: bool = False) -> bool:
         """Write every labelled file that can be written; return whether there is one."""
-        plan = [item for item in self.desk.session.export_plan() if not item.problem]
+        plan = [item for item in self.desk.session.export_plan()
+                if not item.problem or (is_replacing and item.problem == EXISTS)]
         if self._export is None or not plan or EXPORT in self._works:
             return False
         session = self.desk.session
@@ -123,7 +127,7 @@ class ReviewApp(App[int], inherit_bindings=False):
         def pieces() -> Iterator[tuple[str, tuple[Any, ...]]]:
             for item in plan:
                 yield item.path, (item.path, session.session_result(item.path), session.labels(item.path),
-                                  item.target)
+                                  item.target, is_replacing)
 
         self._start(EXPORT, self._export, pieces())
         return True
@@ -175,3 +179,16 @@ class ReviewApp(App[int], inherit_bindings=False):
             assert isinstance(review, ReviewScreen)
             review.say(f"not written: {done.problem}" if done.problem else f"written: {done.result}",
                        "warn" if done.problem else "")
+
+
+def run_review(app: ReviewApp, *, mouse: bool = True) -> int:
+    """Show the review until the user leaves; return the exit code.
+
+    Raises
+    ------
+    UsageError
+        Where there is no terminal that could show it.
+    """
+    check_terminal()
+    app.run(mouse=mouse)
+    return app.return_code or 0

@@ -64,6 +64,11 @@ class Desk:
         """Return the place of the current row."""
         return max(0, self.session.index)
 
+    @property
+    def has_conditions(self) -> bool:
+        """Return whether the rows in view are of more than one condition."""
+        return len({entry.condition for entry in self.entries}) > 1
+
     def forget(self) -> None:
         """Read conditions anew: results have changed."""
         self._conditions.clear()
@@ -94,7 +99,8 @@ class Desk:
         if entry is None:
             return "unitclass", "", self.pending_words()
         title = f"unit {entry.unit}" + (f"  {entry.condition}" if entry.condition else "")
-        place = f"{self.here + 1} of {len(self.entries)}"
+        n_done = sum(1 for row in self.entries if row.own_type)
+        place = f"{n_done} labelled, {self.here + 1} of {len(self.entries)}"
         if not self.session.filter.is_empty:
             place += " shown"
         return title, entry.path, "  ".join(filter(None, (self.pending_words(), place)))

@@ -25,7 +25,8 @@ class Key:
     """One action on one key.
 
     `footer` is the word beside the key in the footer ("" keeps it to the help screen); lower
-    `rank` comes first and survives longest on a narrow terminal.
+    `rank` comes first and survives longest on a narrow terminal. `pair` is the id of the action
+    in the other direction, shown with it.
     """
 
     id: str
@@ -34,6 +35,7 @@ class Key:
     screens: tuple[str, ...]
     footer: str = ""
     rank: int = 50
+    pair: str = ""
 
     @property
     def method(self) -> str:
@@ -49,9 +51,9 @@ DECLARED: tuple[Key, ...] = (
     Key("later", "l", "leave this unit for later and go on", (REVIEW,), "later", 7),
     Key("mixed", "x", "not one cell: two cells in one train, or an artefact", (REVIEW,), "not one cell", 8),
     Key("note", "n", "write a note on this unit", (REVIEW,), "note", 9),
-    Key("undo", "u", "take back the last decision", (REVIEW, BATCH, DISCUSS), "undo", 4),
+    Key("undo", "u", "take back the last decision", (REVIEW, BATCH, DISCUSS), "undo", 5),
     Key("redo", "r", "give the decision again that was taken back", (REVIEW,), "redo", 18),
-    Key("batch", "a", "accept all sure suggestions: shows exactly which first", (REVIEW,), "all sure", 6),
+    Key("batch", "a", "accept all sure suggestions: shows exactly which first", (REVIEW,), "all sure", 4),
     Key("next", "down", "next unit", (REVIEW, *LISTS, TYPES, CONDITIONS, HELP, ACCOUNT, FINISH)),
     Key("previous", "up", "previous unit", (REVIEW, *LISTS, TYPES, CONDITIONS, HELP, ACCOUNT, FINISH)),
     Key("forward", "pagedown", "a page of units on", (REVIEW, *LISTS, CYCLES, HELP, ACCOUNT, FINISH)),
@@ -67,7 +69,7 @@ DECLARED: tuple[Key, ...] = (
     Key("account", "i", "this unit in full: reasons, features, history", (REVIEW,), "in full", 10),
     Key("population", "p", "population: every unit as a row, by type and phase", (REVIEW,), "population", 11),
     Key("conditions", "s", "conditions of this unit side by side", (REVIEW,), "side by side", 17),
-    Key("cycles", "c", "cycles: nerve, bursts, threshold, cycles left out", (REVIEW,), "cycles", 5),
+    Key("cycles", "c", "cycles: nerve, bursts, threshold, cycles left out", (REVIEW,), "cycles", 6),
     Key("types", "k", "kinds of unit: the families behind the suggestions", (REVIEW,), "kinds", 20),
     Key("discuss", "d", "units on which reviewers differ", (REVIEW,), "discuss", 21),
     Key("finish", "e", "end: what is left, and export of labelled files", (REVIEW,), "end/export", 2),
@@ -79,14 +81,15 @@ DECLARED: tuple[Key, ...] = (
     Key("goto", "enter", "go to this unit", (POPULATION, CONDITIONS, DISCUSS), "go to unit", 2),
     Key("confirm", "enter", "accept all that is listed", (BATCH,), "accept these", 0),
     Key("leave_out", "x", "leave this one out of the batch, or take it in again", (BATCH,), "leave out", 2),
-    Key("settle-1", "1", "let the first reviewer's label stand", (DISCUSS,), "first stands", 3),
-    Key("settle-2", "2", "let the second reviewer's label stand", (DISCUSS,), "second stands", 4),
-    Key("agree_on", "t", "settle on any type", (DISCUSS,), "other type", 5),
+    Key("settle-1", "1", "let the first reviewer's label stand", (DISCUSS,), "first stands", 2),
+    Key("settle-2", "2", "let the second reviewer's label stand", (DISCUSS,), "second stands", 3),
+    Key("agree_on", "t", "settle on any type", (DISCUSS,), "other type", 4),
     Key("export", "enter", "write the labelled files", (FINISH,), "export", 2),
+    Key("replace", "w", "write them, replacing earlier labelled files", (FINISH,), "replace earlier ones", 3),
     Key("earlier", "left", "one cycle back", (CYCLES,), "", 5),
-    Key("after", "right", "one cycle on", (CYCLES,), "cycle", 5),
+    Key("after", "right", "one cycle on", (CYCLES,), "cycle", 5, "earlier"),
     Key("raise", "up", "raise the threshold", (CYCLES,), "", 4),
-    Key("lower", "down", "lower the threshold", (CYCLES,), "threshold", 4),
+    Key("lower", "down", "lower the threshold", (CYCLES,), "threshold", 4, "raise"),
     Key("drop", "x", "leave this cycle out, or take it in again", (CYCLES,), "drop/restore", 3),
     Key("apply", "enter", "apply the changes: analyses this session again", (CYCLES,), "apply", 2),
     Key("undo_edit", "u", "take back the last change that is not applied yet", (CYCLES,), "undo", 6),
@@ -140,7 +143,7 @@ class KeyMap:
     def footer(self, screen: str) -> list[tuple[str, str]]:
         """Return (key, word) for the footer, most needed first."""
         named = sorted((d for d in self.on(screen) if d.footer), key=lambda d: d.rank)
-        return [(self.shown(d.id), d.footer) for d in named]
+        return [(" ".join(self.shown(i) for i in (d.pair, d.id) if i), d.footer) for d in named]
 
     def help(self, screen: str) -> list[tuple[str, str]]:
         """Return (key, sentence) for the help screen; the digits make one line."""

@@ -19,7 +19,8 @@ def choice_rows(title: str, options: Sequence[tuple[str, str]], here: int, width
         return sheet
     room = max(1, height - 1)
     first = max(0, min(here - room // 2, len(options) - room))
-    longest = min(max(width_of(label) for label, _ in options), max(8, width - 2))
+    room_of_detail = min(max(width_of(detail) for _, detail in options), width // 3)
+    longest = min(max(width_of(label) for label, _ in options), max(8, width - 3 - room_of_detail))
     for y, (label, detail) in enumerate(options[first : first + room], start=1):
         is_here = first + y - 1 == here
         ink = "here" if is_here else ""

@@ -37,11 +37,13 @@ def condition_rows(views: Sequence[ConditionView], here: int, width: int, height
     n_beside = max(1, min(len(views), width // LEAST_WIDTH))
     first = here // n_beside * n_beside
     room = width // n_beside
-    top = common_top(views)
+    top, n_nerves = common_top(views), max(len(view.nerves) for view in views)
     for place, view in enumerate(views[first : first + n_beside]):
-        sheet.paste(_column(view, first + place == here, room - 1, height, top, look), place * room, 0)
+        column = _column(view, first + place == here, room - 1, height, (top, n_nerves), look)
+        sheet.paste(column, place * room, 0)
     if len(views) > n_beside:
-        words = f"{first + 1}-{min(first + n_beside, len(views))} of {len(views)} conditions"
+        last = min(first + n_beside, len(views))
+        words = (f"{last}" if n_beside == 1 else f"{first + 1}-{last}") + f" of {len(views)} conditions"
         sheet.right(width, 0, words, "quiet")
     return sheet
 
@@ -52,7 +54,8 @@ def common_top(views: Sequence[ConditionView]) -> float:
     return max(bars_of(view.unit, axis, with_fit=bool(view.family)).top_hz for view in views)
 
 
-def _column(view: ConditionView, is_here: bool, width: int, height: int, top_hz: float, look: Look) -> Sheet:
+def _column(view: ConditionView, is_here: bool, width: int, height: int, common: tuple[float, int],
+            look: Look) -> Sheet:
     sheet = Sheet(width, height, look)
     mark = look.glyphs.here if is_here else " "
     sheet.put(0, 0, f"{mark}{shortened(view.title, width - 1, look)}", "title")
@@ -60,6 +63,6 @@ def _column(view: ConditionView, is_here: bool, width: int, height: int, top_hz:
         sheet.put(1, y, shortened(line, width - 1, look), "strong" if y == 1 else "quiet")
     y = 1 + min(3, len(view.lines))
     picture = unit_picture(view.unit, view.nerves, view.ti_s, view.te_s, width, height - y,
-                           family=view.family, top_hz=top_hz, look=look)
+                           family=view.family, top_hz=common[0], n_nerves=common[1], look=look)
     sheet.paste(picture, 0, y)
     return sheet

@@ -38,7 +38,7 @@ def cycle_rows(view: CyclesView, window: TraceWindow, height: int, *, look: Look
     if not view.envelopes:
         sheet.put(0, 0, "no nerve trace is kept for this condition", "warn")
         return sheet
-    n_words = min(len(view.lines), max(1, height // 4))
+    n_words = min(len(view.lines), 1 if height < 12 else height // 4)
     others = view.envelopes[1 : 1 + (1 if height >= 24 else 0) + (1 if height >= 36 else 0)]
     rows = max(2, height - 5 - n_words - 4 * len(others))
     tops = (*view.tops, *(np.nan for _ in view.envelopes))

@@ -26,7 +26,7 @@ def type_of(entry: QueueEntry) -> str:
 
 
 def queue_column(entries: Sequence[QueueEntry], here: int, width: int, height: int, *,
-                 look: Look = COLOUR) -> Sheet:
+                 with_condition: bool = False, look: Look = COLOUR) -> Sheet:
     """Draw the page of the queue that holds entry `here`.
 
     Pages stay where they are while one steps through them, so that a step changes two lines only.
@@ -39,7 +39,7 @@ def queue_column(entries: Sequence[QueueEntry], here: int, width: int, height: i
         sheet.put(0, y, look.glyphs.here if is_here else " ", "strong")
         sheet.put(1, y, mark_of(entry, look), "good" if entry.state == "reviewed" else "warn")
         name_room = max(4, width - 12)
-        sheet.put(3, y, shortened(entry.unit, name_room, look), "strong" if is_here else "")
+        sheet.put(3, y, shortened(name_of(entry, with_condition), name_room, look), "strong" if is_here else "")
         sheet.put(3 + name_room + 1, y, shortened(type_of(entry), width - name_room - 5, look),
                   "" if entry.state == "reviewed" else "quiet")
     n_pages = -(-len(entries) // max(1, height - 1))
@@ -55,24 +55,25 @@ def page_start(here: int, per_page: int) -> int:
     return here // per_page * per_page
 
 
-def queue_line(entries: Sequence[QueueEntry], here: int, width: int, *, look: Look = COLOUR) -> Sheet:
+def queue_line(entries: Sequence[QueueEntry], here: int, width: int, *, with_condition: bool = False,
+               look: Look = COLOUR) -> Sheet:
     """Draw the entries around `here` in one line, the current one between brackets."""
     sheet = Sheet(width, 1, look)
     if not entries:
         return sheet
-    words = _word(entries[here], look)
+    words = _word(entries[here], with_condition, look)
     start = min(width // 3, max(0, (width - width_of(words)) // 2))
     sheet.put(start, 0, f"[{words}]", "strong")
     x = start + width_of(words) + 3
     for entry in entries[here + 1 :]:
-        text = _word(entry, look)
+        text = _word(entry, with_condition, look)
         if x + width_of(text) > width:
             break
         sheet.put(x, 0, text, "" if entry.state == "open" else "quiet")
         x += width_of(text) + 2
     x = start - 1
     for entry in reversed(entries[:here]):
-        text = _word(entry, look)
+        text = _word(entry, with_condition, look)
         x -= width_of(text)
         if x < 0:
             break
@@ -81,6 +82,14 @@ def queue_line(entries: Sequence[QueueEntry], here: int, width: int, *, look: Lo
     return sheet
 
 
-def _word(entry: QueueEntry, look: Look) -> str:
+def name_of(entry: QueueEntry, with_condition: bool) -> str:
+    """Return a unit's name, with its condition where there are several."""
+    return f"{entry.unit} {entry.condition}" if with_condition and entry.condition else entry.unit
+
+
+def _word(entry: QueueEntry, with_condition: bool, look: Look) -> str:
     mark = mark_of(entry, look).strip()
-    return shortened(f"{entry.unit} {type_of(entry)}".strip() + mark, 24, look)
+    name = shortened(entry.unit, 12, look)
+    if with_condition and entry.condition:
+        name += f" {shortened(entry.condition, 6, look)}"
+    return shortened(f"{name} {type_of(entry)}".strip() + mark, 28, look)

@@ -101,7 +101,7 @@ def time_axis(window: TraceWindow, *, look: Look = COLOUR) -> Sheet:
     while tick < window.stop_s:
         x = window.column_of(float(tick))
         sheet.cell(x, 0, look.glyphs.tick, "axis")
-        words = f"{tick:g}"
+        words = f"{tick + 0.0:g}"
         if x + len(words) < window.n_columns - 2:
             sheet.put(x, 1, words, "axis")
         tick += step

@@ -48,17 +48,19 @@ class Rows:
 
 
 def unit_picture(unit: UnitResult, nerves: Sequence[NerveProfile], ti_s: float, te_s: float, width: int,
-                 height: int, *, family: str = "", top_hz: float = 0.0, look: Look = COLOUR) -> Sheet:
+                 height: int, *, family: str = "", top_hz: float = 0.0, n_nerves: int = 0,
+                 look: Look = COLOUR) -> Sheet:
     """Draw the unit; `family` names the fitted family (empty draws none: blind, or a state).
 
     `ti_s` and `te_s` are mean durations in seconds; `top_hz` fixes the histogram's scale, so that
-    pictures beside each other compare (0 chooses one).
+    pictures beside each other compare (0 chooses one), and `n_nerves` the room for nerves.
     """
     sheet = Sheet(width, height, look)
-    gutter = 9 if width >= 64 else 6
+    gutter = 9 if width >= 64 else 7
     axis = CycleAxis.for_durations(width - gutter, ti_s, te_s)
-    rows = Rows.share(height, len(nerves), unit.vm is not None, unit.raster.n_cycles)
-    y = _put_nerves(sheet, axis, nerves[: rows.n_nerves], rows.nerve, gutter)
+    rows = Rows.share(height, max(len(nerves), n_nerves), unit.vm is not None, unit.raster.n_cycles)
+    _put_nerves(sheet, axis, nerves[: rows.n_nerves], rows.nerve, gutter)
+    y = rows.nerve * rows.n_nerves
     bars = bars_of(unit, axis, with_fit=bool(family))
     y = _put_histogram(sheet, axis, bars, top_hz or bars.top_hz, y, rows.histogram, gutter)
     if rows.legend:
@@ -81,13 +83,11 @@ def bars_of(unit: UnitResult, axis: CycleAxis, *, with_fit: bool) -> Bars:
 
 
 def _put_nerves(sheet: Sheet, axis: CycleAxis, nerves: Sequence[NerveProfile], height: int,
-                gutter: int) -> int:
-    y = 0
-    for nerve in nerves:
+                gutter: int) -> None:
+    for place, nerve in enumerate(nerves):
+        y = place * height
         sheet.paste(nerve_rows(axis, nerve.mean, height, look=sheet.look), gutter, y)
         sheet.right(gutter - 1, y + height - 1, shortened(nerve.name, gutter - 1, sheet.look), "axis")
-        y += height
-    return y
 
 
 def _put_histogram(sheet: Sheet, axis: CycleAxis, bars: Bars, top_hz: float, y: int, height: int,

@@ -100,7 +100,7 @@ class CyclesScreen(PageScreen):
             lines.append((f"not applied yet: threshold x {scale:.2f}, {n_turned} cycles turned; "
                           f"{self.keys.shown('apply')} analyses the file again", "warn"))
         elif self._before:
-            lines.append((f"unit {self._entry.unit}: before {self._before}; now {self._state()}", "good"))
+            lines.append((f"unit {self._entry.unit}: {self._before}; now {self._state()}", "good"))
         else:
             lines.append((f"unit {self._entry.unit}: {self._state()}", ""))
         return lines + [(words, "quiet") for words in self._result.nerve_cycles.detection]
@@ -108,7 +108,7 @@ class CyclesScreen(PageScreen):
     def _state(self) -> str:
         entry = self.desk.session.entry(self._entry.key)
         suggested = "" if entry.is_hidden else f"{entry.suggested_type} {in_words(entry.probability).strip()}, "
-        return f"{suggested}{entry.n_cycles} cycles, {entry.n_spikes} spikes"
+        return f"{suggested}{entry.n_spikes} spikes in {entry.n_cycles} cycles"
 
     # ---------------------------------------------------------------------------- keys
 

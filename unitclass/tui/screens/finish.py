@@ -79,11 +79,18 @@ class FinishScreen(PageScreen):
 
     def action_export(self) -> None:
         """Write the labelled files."""
+        self._export(False)
+
+    def action_replace(self) -> None:
+        """Write the labelled files, replacing earlier ones."""
+        self._export(True)
+
+    def _export(self, is_replacing: bool) -> None:
         if self._is_writing:
             self.say("Still writing.")
             return
         self._written = []
-        self._is_writing = self.app.start_export()  # type: ignore[attr-defined]
+        self._is_writing = self.app.start_export(is_replacing)  # type: ignore[attr-defined]
         self.say("Writing; this can take a while, and you may go on reviewing." if self._is_writing else
                  "There is nothing that can be written now.", "" if self._is_writing else "warn")
         self.repaint_soon()

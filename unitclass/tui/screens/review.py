@@ -75,9 +75,10 @@ class ReviewScreen(BaseScreen):
         entries, here = desk.entries, desk.here
         title, where, right = desk.head()
         has_column = self.queue.display
-        self.head.show(title, where, right, () if has_column else entries, here)
+        several = desk.has_conditions
+        self.head.show(title, where, right, () if has_column else entries, here, several)
         if has_column:
-            self.queue.show(entries, here)
+            self.queue.show(entries, here, several)
         if view is None or self._is_too_small():
             self.page.show(None, desk.why_empty() if view is None else TOO_SMALL)
             self.verdict.show(None, "")
@@ -94,7 +95,7 @@ class ReviewScreen(BaseScreen):
         has_column = width >= COLUMN_FROM and height >= 16
         is_brief = width < BESIDE_FROM
         self.queue.display = has_column
-        self.queue.styles.width = min(28, 20 + max(0, width - COLUMN_FROM) // 12)
+        self.queue.styles.width = min(34, 22 + max(0, width - COLUMN_FROM) // 8)
         self.head.styles.height = 1 if has_column or height < 16 else 2
         self.set_class(is_brief, "-brief")
         self.verdict.styles.width = "1fr" if is_brief else max(25, min(60, round(width * 0.3)))

@@ -20,13 +20,13 @@ class Head(Canvas):
         super().__init__(*args, **kwargs)  # type: ignore[arg-type]
         self._title, self._where, self._right = "", "", ""
         self._entries: Sequence[QueueEntry] = ()
-        self._here = 0
+        self._here, self._with_condition = 0, False
 
     def show(self, title: str, where: str, right: str, entries: Sequence[QueueEntry] = (),
-             here: int = 0) -> None:
+             here: int = 0, with_condition: bool = False) -> None:
         """Show a title, the file it is about, a few words at the right, and the queue's neighbours."""
         self._title, self._where, self._right = title, where, right
-        self._entries, self._here = entries, here
+        self._entries, self._here, self._with_condition = entries, here, with_condition
         self.redraw()
 
     def draw(self, width: int, height: int) -> Sheet:
@@ -41,5 +41,6 @@ class Head(Canvas):
         if room >= 8:
             sheet.put(width_of(title) + 2, 0, shortened_middle(self._where, room, look))
         if height > 1:
-            sheet.paste(queue_line(self._entries, self._here, width, look=look), 0, 1)
+            sheet.paste(queue_line(self._entries, self._here, width,
+                                   with_condition=self._with_condition, look=look), 0, 1)
         return sheet

@@ -34,16 +34,18 @@ class QueueColumn(Canvas):
 
     entries: Sequence[QueueEntry] = ()
     here = 0
+    with_condition = False
 
-    def show(self, entries: Sequence[QueueEntry], here: int) -> None:
+    def show(self, entries: Sequence[QueueEntry], here: int, with_condition: bool) -> None:
         """Show another place of the queue."""
-        self.entries, self.here = entries, here
+        self.entries, self.here, self.with_condition = entries, here, with_condition
         self.redraw()
 
     def draw(self, width: int, height: int) -> Sheet:
         """Draw the page."""
         sheet = Sheet(width, height, self.inks.look)
-        column = queue_column(self.entries, self.here, width - 2, height, look=self.inks.look)
+        column = queue_column(self.entries, self.here, width - 2, height,
+                              with_condition=self.with_condition, look=self.inks.look)
         sheet.paste(column, 0, 0)
         for y in range(height):
             sheet.put(width - 2, y, self.inks.look.glyphs.upright, "axis")
