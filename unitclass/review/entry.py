@@ -6,6 +6,7 @@ import math
 import re
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from functools import lru_cache
 from pathlib import PurePath
 
 from unitclass.io.store_records import ASKS_AGAIN, BATCH, DISAGREEMENT, STALE
@@ -155,6 +156,7 @@ def flag_kind(flag: str) -> str:
     return " ".join(bare.split()).strip(" :,;").removeprefix("of ").removesuffix(" by")
 
 
+@lru_cache(maxsize=1 << 16)
 def natural(text: str) -> tuple[tuple[int, int, str], ...]:
     """Return a sort key under which unit 9 comes before unit 12."""
     pieces = re.findall(r"[0-9]+|[^0-9]+", text)

@@ -73,6 +73,8 @@ def values_of(entry: QueueEntry, name: str) -> tuple[str, ...]:
 
 def matches(entry: QueueEntry, text: str) -> bool:
     """Return whether every word of `text` is in the unit's name, file, condition or region."""
+    if not text:
+        return True
     told = f"{entry.unit} {entry.file} {entry.condition} {entry.region} {entry.session}".lower()
     return all(word in told for word in text.lower().split())
 

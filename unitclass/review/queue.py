@@ -40,7 +40,8 @@ class ReviewQueue:
                 self._ranks[row.key] = rank(row, self.sorted_by, self._sure_probability)
                 new.append(row)
             self._rows[row.key] = row
-        shown = [row.key for row in new if self.filter.lets_through(row)]
+        shows_all = self.filter.is_empty
+        shown = [row.key for row in new if shows_all or self.filter.lets_through(row)]
         if shown:
             self._view = self._ordered([*self._view, *shown])
         self._settle_cursor()
