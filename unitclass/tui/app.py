@@ -37,9 +37,12 @@ class ReviewApp(App[int], inherit_bindings=False):
     session : ReviewSession
         What is ready already; `pending` files come in while it runs.
     analyse : callable, optional
-        analyse(path) -> SessionResult or SessionView, run in a process of its own: a module-level
-        function or a partial of one. Called for `pending`, and again when cycles were edited; it
-        reads the edits from the store itself.
+        analyse(path) -> SessionResult, or anything that `take` understands; run in a process of
+        its own: a module-level function or a partial of one. Called for `pending`, and again when
+        cycles were edited; it reads the edits from the store itself.
+    take : callable, optional
+        take(path, what analyse returned) -> SessionView, in this process: opens results that
+        the analysis left in the cache, so that nothing large travels.
     pending : sequence of str
         Files still to be analysed.
     relearn : callable, optional
@@ -57,7 +60,8 @@ class ReviewApp(App[int], inherit_bindings=False):
     def __init__(self, session: ReviewSession, *, analyse: Callable[[str], Any] | None = None,
                  pending: Sequence[str] = (), relearn: Callable[..., Mapping[Any, Any]] | None = None,
                  export: Callable[..., str] | None = None, settings: Settings | None = None,
-                 library: Callable[[], Any] | None = None) -> None:
+                 library: Callable[[], Any] | None = None,
+                 take: Callable[[str, Any], Any] | None = None) -> None:
         super().__init__(ansi_color=True)
         self.animation_level = "none"
         review = (settings or Settings()).review
@@ -65,7 +69,7 @@ class ReviewApp(App[int], inherit_bindings=False):
         self.set_keymap(dict(self.keys.changed))
         self.desk = Desk(session, library)
         self.inks = Theme(look_of_terminal(), background_of_terminal(review.background))
-        self._analyse, self._relearn, self._export = analyse, relearn, export
+        self._analyse, self._take, self._relearn, self._export = analyse, take, relearn, export
         self._pending = list(pending)
         self._works: dict[str, Work] = {}
         self._n_unlearned = 0
@@ -158,8 +162,8 @@ class ReviewApp(App[int], inherit_bindings=False):
         session = self.desk.session
         if done.problem:
             session.add_failure(done.name, done.problem)
-        elif hasattr(done.result, "head"):
-            session.add_session(done.result)
+        elif self._take is not None:
+            session.add_session(self._take(done.name, done.result))
         else:
             session.add_result(done.result)
         self.desk.forget()
