@@ -53,7 +53,7 @@ def simulate(n_per_type: int, *, n_cycles: int = 60, regime: str = "three-phase"
     wanted = list(types) if types is not None else [*TYPES[regime], *([OTHER] if with_other else [])]
     found: dict[str, list[FloatArray]] = {name: [] for name in wanted}
     wears: dict[str, list[Wear]] = {name: [] for name in wanted}
-    for _ in range(6):
+    for _ in range(4):
         short = [name for name in wanted for _ in range(_ask(n_per_type - len(found[name])))]
         if not short:
             break
@@ -68,7 +68,8 @@ def simulate(n_per_type: int, *, n_cycles: int = 60, regime: str = "three-phase"
 
 
 def _ask(missing: int) -> int:
-    return missing + 1 + missing // 2 if missing > 0 else 0
+    # Each round costs about the same whatever the number of cells, so rounds are kept few.
+    return 3 * missing + 4 if missing > 0 else 0
 
 
 def _recorded(wanted: list[str], found: Mapping[str, list[FloatArray]], wears: Mapping[str, list[Wear]],

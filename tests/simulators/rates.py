@@ -38,6 +38,7 @@ from tests.simulators.common import (
 from unitclass.records import NOT_MODULATED, OTHER, Cycles, FloatArray
 
 Rng = np.random.Generator
+FLAT_FOREIGN = 0.5
 
 
 def simulate(n_per_type: int, *, n_cycles: int = 60, regime: str = "three-phase", rng: Rng,
@@ -97,12 +98,17 @@ def drawn(name: str, at: Clock, regime: str, rng: Rng) -> tuple[Shape, str]:
     return made if isinstance(made, tuple) else (made, "")
 
 
+def form(name: str, at: Clock, regime: str, rng: Rng) -> FloatArray:
+    """Return a drawn shape of the type at every moment of the clock, for the oracle."""
+    return drawn(name, at, regime, rng)[0](at)
+
+
 def _n_to_1(name: str, rng: Rng, detail: str) -> int:
     return int(detail[0]) if name == "late-E" else 1
 
 
 def _foreign(at: Clock, cycles: Cycles, regime: str, n: int, rng: Rng) -> FloatArray:
-    if rng.uniform() < 0.5:
+    if rng.uniform() < FLAT_FOREIGN:
         return rng.uniform(at.time_s[0], at.time_s[-1], n)
     shape, _ = drawn(str(rng.choice(TYPES[regime])), at, regime, rng)
     form = shape(at)

@@ -34,6 +34,7 @@ from tests.simulators.definition import N, agrees
 from unitclass.records import NOT_MODULATED, OTHER, Cycles, FloatArray
 
 Rng = np.random.Generator
+FLAT_FOREIGN = 1.0
 Stairs = tuple[FloatArray, FloatArray]
 
 
@@ -64,6 +65,12 @@ def _unit(stairs: Stairs, detail: str, at: Clock, cycles: Cycles, peak_hz: float
     train = retimed(rate * gain_over_time(at, gains(cycles.n_cycles, wear, rng), cycles), at, rng)
     foreign = retimed(np.full(at.time_s.size, 2.0 + 0.3 * peak_hz), at, rng)
     return recorded(train, foreign, cycles, wear, rng)
+
+
+def form(name: str, at: Clock, regime: str, rng: Rng) -> FloatArray:
+    """Return a drawn staircase of the type at every moment of the clock, for the oracle."""
+    stairs, detail = staircase(name, regime, at.te_s, rng)
+    return level(stairs, at, moving=detail == "drifting")
 
 
 def retimed(rate_hz: FloatArray, at: Clock, rng: Rng) -> FloatArray:
