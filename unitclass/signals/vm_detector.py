@@ -11,6 +11,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable
 from dataclasses import dataclass, fields
+from math import inf
 
 import numpy as np
 
@@ -52,6 +53,8 @@ class Detector:
         None while the cell's spikes are not known.
     times_by_slope : bool
         True where dV/dt is clear enough to time each spike by itself.
+    usual_slope_mv_ms : float
+        Median maximal dV/dt of the spikes seen so far; inf while there are none.
     """
 
     grid: Grid
@@ -61,6 +64,12 @@ class Detector:
     slope_noise_mv_ms: float
     kernel: Kernel | None = None
     times_by_slope: bool = True
+    usual_slope_mv_ms: float = inf
+
+    @property
+    def least_slope_mv_ms(self) -> float:
+        """Return the threshold of dV/dt: 2.5 deviations of its noise, at most half the cell's usual."""
+        return min(2.5 * self.slope_noise_mv_ms, 0.5 * self.usual_slope_mv_ms)
 
     def score(self, coarse: FloatArray) -> FloatArray:
         """Return the score of an event with its centre in each bin, mV; -inf near both ends."""

@@ -61,28 +61,47 @@ def sort_events(events: Events, detector: Detector, settings: MembraneSettings, 
                           float(np.sum(clear) / max(observed_s, 1e-9)))
     typical = clear & (events.size_mv >= split)
     width = float(np.median(events.half_width_ms[typical]))
-    usual = _usual_width(events, width)
+    usual = ~too_brief(events, 0.45 * width) & (events.half_width_ms <= 3.5 * width + 0.5)
     passing = shaped & usual & (events.z >= least_z) & (events.height_mv >= settings.min_height_mv)
     is_spike, jumps = _follow(events, passing, dominant, split / dominant)
     is_spike = _refractory(events, is_spike, settings.refractory_ms)
     spikelet = shaped & usual & ~is_spike & (events.z > 5.5) & (events.height_mv > 2.0)
     spikelet &= ~_near(events.time_s, events.time_s[is_spike], 0.004)
     n_artefacts = int(np.sum((events.z > 6.0) & ~is_spike & (events.height_mv > 0.4 * dominant)
-                             & (events.half_width_ms < max(settings.min_width_ms, 0.45 * width))))
+                             & too_brief(events, max(settings.min_width_ms, 0.45 * width))))
     return Sorted(is_spike, spikelet, n_artefacts, dominant, least_z, jumps)
 
 
 def spike_shaped(events: Events, detector: Detector, settings: MembraneSettings) -> BoolArray:
     """Return which events rise steeply, last long enough, and fall again on both sides."""
-    slope = settings.min_dvdt_mv_ms or 2.5 * detector.slope_noise_mv_ms
+    slope = settings.min_dvdt_mv_ms or detector.least_slope_mv_ms
+    return ((events.max_dvdt_mv_ms >= slope) & (events.height_mv > 0.0) & _stands_out(events)
+            & ~too_brief(events, settings.min_width_ms)
+            & (events.half_width_ms <= max(6.0, 4.0 * detector.lens.width_ms)))
+
+
+def _stands_out(events: Events) -> BoolArray:
+    """Return which events are bumps of about the size their score says: not the flank of another, not a step."""
     with np.errstate(invalid="ignore", divide="ignore"):
         ratio = events.bump_mv / events.size_mv
-    usual = float(np.median(ratio[events.z > 4.5])) if np.any(events.z > 4.5) else 1.0
+    clear = events.z > 4.5
+    usual = min(float(np.median(ratio[clear])), 1.0) if clear.any() else 1.0
     noise = events.size_mv / np.maximum(events.z, 1e-9)
-    stands_out = events.bump_mv >= 0.35 * min(usual, 1.0) * events.size_mv - 2.0 * noise
-    return ((events.max_dvdt_mv_ms >= slope) & (events.half_width_ms >= settings.min_width_ms)
-            & (events.half_width_ms <= max(6.0, 4.0 * detector.lens.width_ms)) & stands_out
-            & (events.height_mv > 0.0))
+    return np.asarray(events.bump_mv >= 0.35 * usual * events.size_mv - 2.0 * noise)
+
+
+def too_brief(events: Events, least_ms: float) -> BoolArray:
+    """Return which events are pops: briefer than `least_ms`, and so with a score small for their height.
+
+    Noise on a small spike can make it look brief; its score, which averages over the whole shape, then
+    is still that of a spike. Without five longer events to compare with, brevity alone decides.
+    """
+    brief = events.half_width_ms < least_ms
+    longer = ~brief & (events.z > 4.5) & (events.height_mv > 0.0)
+    if longer.sum() < 5 or not brief.any():
+        return np.asarray(brief)
+    usual = float(np.median(events.size_mv[longer] / events.height_mv[longer]))
+    return np.asarray(brief & (events.size_mv < 0.65 * usual * events.height_mv))
 
 
 def dominant_size(sizes: FloatArray) -> tuple[float, float]:
@@ -153,11 +172,6 @@ def _is_tall_enough(events: Events, clear: BoolArray, split: float, settings: Me
 def _no_spikes(events: Events, clear: BoolArray, dominant: float) -> Sorted:
     none = np.zeros(events.time_s.size, bool)
     return Sorted(none, clear & (events.z > 5.5) & (events.height_mv > 2.0), 0, dominant, 5.5)
-
-
-def _usual_width(events: Events, width_ms: float) -> BoolArray:
-    """Return which events are neither much narrower (pops) nor much wider (synaptic) than the spikes."""
-    return np.asarray((events.half_width_ms >= 0.45 * width_ms) & (events.half_width_ms <= 3.5 * width_ms + 0.5))
 
 
 def _follow(events: Events, passing: BoolArray, dominant: float, least: float) -> tuple[BoolArray, tuple[float, ...]]:

@@ -128,12 +128,12 @@ def _contrast(detector: Detector, events: Events) -> float:
 
 def _matched_detector(sample: Sample, detector: Detector, events: Events, settings: MembraneSettings) -> Detector:
     width = float(np.clip(np.median(events.half_width_ms), 0.4, 4.0))
-    lens, by_slope = _lens_for(sample, detector, events, width)
+    lens, by_slope, slope = _lens_for(sample, detector, events, width)
     centres = _centres(sample, detector, events)
     taps, before = _matched_taps(sample, detector.grid, centres, width)
     bare = replace(detector, lens=lens, bump=BumpFilter(detector.grid, float(np.clip(1.2 * width, 0.5, 4.0))),
                    kernel=Kernel(taps, before, 0.0), times_by_slope=by_slope,
-                   slope_noise_mv_ms=_slope_noise(sample, lens))
+                   slope_noise_mv_ms=_slope_noise(sample, lens), usual_slope_mv_ms=slope)
     scores = [bare.score(c) for c in sample.coarse]
     noise = max(quiet_noise_sd(np.concatenate(scores), 2 * taps.size), 1e-3)
     steep_ms = _steepest_ms(sample, bare, scores, noise)
@@ -157,22 +157,23 @@ def _has_neighbour(times: FloatArray, others: FloatArray, within_s: float) -> np
     return np.asarray(np.searchsorted(others, times + within_s) > low)
 
 
-def _lens_for(sample: Sample, detector: Detector, events: Events, width_ms: float) -> tuple[Lens, bool]:
+def _lens_for(sample: Sample, detector: Detector, events: Events, width_ms: float) -> tuple[Lens, bool, float]:
     """Choose how many samples a slope and a smoothed value take, and whether slopes can time a spike.
 
     The shortest slope that stands eight deviations out of its noise, up to 0.2 ms; else the clearest up
-    to 0.4 ms, and then the matched filter times the spikes.
+    to 0.4 ms, and then the matched filter times the spikes. The third result is the usual slope.
     """
     rate = detector.grid.rate_hz
-    clearest, best = 1, 0.0
+    clearest, best, usual = 1, 0.0, 0.0
     for m in _span_samples(rate, 0.4):
         lens = Lens(rate, width_ms, slope_samples=m)
-        clarity = _slope_clarity(sample, lens, events)
+        slope = _usual_slope(sample, lens, events)
+        clarity = slope / max(_slope_noise(sample, lens), 1e-6)
         if clarity >= 8.0 and (m == 1 or m <= 0.2e-3 * rate):
-            return _smoothing(sample, lens, events), True
+            return _smoothing(sample, lens, events), True, slope
         if clarity > best:
-            clearest, best = m, clarity
-    return _smoothing(sample, Lens(rate, width_ms, slope_samples=clearest), events), False
+            clearest, best, usual = m, clarity, slope
+    return _smoothing(sample, Lens(rate, width_ms, slope_samples=clearest), events), False, usual
 
 
 def _span_samples(rate_hz: float, longest_ms: float) -> list[int]:
@@ -180,11 +181,9 @@ def _span_samples(rate_hz: float, longest_ms: float) -> list[int]:
     return sorted({m for m in (1, 2, 3, 4, 6, 8, 10, 12, 16, 20, 24, longest) if m <= longest})
 
 
-def _slope_clarity(sample: Sample, lens: Lens, events: Events) -> float:
+def _usual_slope(sample: Sample, lens: Lens, events: Events) -> float:
     waves = _waves(sample, lens, events.time_s[:: max(1, events.time_s.size // 100)])
-    if waves.size == 0:
-        return 0.0
-    return float(np.median(measured(waves, lens).max_dvdt_mv_ms) / max(_slope_noise(sample, lens), 1e-6))
+    return float(np.median(measured(waves, lens).max_dvdt_mv_ms)) if waves.size else 0.0
 
 
 def _smoothing(sample: Sample, lens: Lens, events: Events) -> Lens:
