@@ -39,6 +39,11 @@ def stored(path: Path) -> Counter[int]:
         return Counter(int(d.unit) for d in store.history(IDENTIFIER, OBJECT_ID))
 
 
+def decide_much(store: DecisionStore) -> None:
+    for _ in range(100):
+        store.decide([decision(note="x" * 5000)])
+
+
 def test_every_decision_told_before_a_kill_is_there_once(tmp_path):
     path = tmp_path / "unitclass.sqlite"
     rng = random.Random(7)
@@ -65,7 +70,7 @@ def test_two_processes_at_once_lose_nothing(tmp_path):
     told = [acknowledged(process) for process in both]
     assert [process.wait() for process in both] == [0, 0]
     assert told == [list(range(40))] * 2
-    assert stored(path) == Counter({i: 2 for i in range(40)})
+    assert stored(path) == Counter(dict.fromkeys(range(40), 2))
 
 
 def test_a_store_whose_writer_died_half_way_opens_read_only_without_the_half(tmp_path):
@@ -102,8 +107,7 @@ def test_a_full_disk_is_said_and_spoils_nothing(tmp_path):
         db = store._connection
         db.execute(f"PRAGMA max_page_count = {db.execute('PRAGMA page_count').fetchone()[0]}")
         with pytest.raises(TargetError, match=r"unitclass\.sqlite: the disk is full; nothing was saved.*free"):
-            for _ in range(100):
-                store.decide([decision(note="x" * 5000)])
+            decide_much(store)
         n = len(store.history(IDENTIFIER, OBJECT_ID))
         db.execute("PRAGMA max_page_count = 100000")
         store.decide([decision()])
@@ -120,8 +124,7 @@ def test_a_write_that_fails_is_said_and_spoils_nothing(tmp_path):
         resource.setrlimit(resource.RLIMIT_FSIZE, (path.stat().st_size, hard))
         try:
             with pytest.raises(TargetError, match="nothing was saved"):
-                for _ in range(100):
-                    store.decide([decision(note="x" * 5000)])
+                decide_much(store)
         finally:
             resource.setrlimit(resource.RLIMIT_FSIZE, (soft, hard))
             signal.signal(signal.SIGXFSZ, before)

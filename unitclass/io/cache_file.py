@@ -7,9 +7,10 @@ from pathlib import Path
 
 _LAYOUT = 1
 
+# AUTOINCREMENT: the number of a dropped session is never given to another one.
 _TABLES = """
 CREATE TABLE sessions (
-    id INTEGER PRIMARY KEY, path TEXT NOT NULL, size INTEGER NOT NULL, mtime_ns INTEGER NOT NULL,
+    id INTEGER PRIMARY KEY AUTOINCREMENT, path TEXT NOT NULL, size INTEGER NOT NULL, mtime_ns INTEGER NOT NULL,
     object_id TEXT NOT NULL, settings_digest TEXT NOT NULL, template_digest TEXT NOT NULL,
     program TEXT NOT NULL, options TEXT NOT NULL, edits_digest TEXT NOT NULL,
     is_complete INTEGER NOT NULL, used_on TEXT NOT NULL);
@@ -62,8 +63,8 @@ def _set_up(db: sqlite3.Connection) -> None:
         return
     db.execute("BEGIN IMMEDIATE")
     if _layout(db) != _LAYOUT:
-        for (table,) in db.execute("SELECT name FROM sqlite_master WHERE type = 'table'").fetchall():
-            raise sqlite3.DatabaseError(f"another layout, with a table {table}")
+        if db.execute("SELECT count(*) FROM sqlite_master").fetchone()[0]:
+            raise sqlite3.DatabaseError("another layout")
         for statement in _TABLES.split(";"):
             db.execute(statement)
         db.execute(f"PRAGMA user_version = {_LAYOUT}")

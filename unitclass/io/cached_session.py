@@ -87,15 +87,14 @@ class CachedSession:
         except sqlite3.Error as error:
             raise self._gone(error) from error
         if row is None:
-            raise self._missing(kind, unit, condition)
+            raise self._missing(unit, condition)
         content: bytes = row[0]
         return content
 
-    def _missing(self, kind: str, unit: str, condition: str) -> Exception:
-        known = kind == cached_pieces.HEAD or any(
-            (u.unit, u.condition) == (unit, condition) or (not unit and u.condition == condition)
-            for u in self.units)
-        return self._gone(None) if known else KeyError((unit, condition))
+    def _missing(self, unit: str, condition: str) -> Exception:
+        with self._lock:
+            is_there = self._db.execute("SELECT 1 FROM pieces WHERE session = ? LIMIT 1", (self._number,)).fetchone()
+        return KeyError((unit, condition)) if is_there and (unit or condition) else self._gone(None)
 
     def _gone(self, error: Exception | None) -> FileError:
         return FileError("its kept results are gone or damaged" + (f" ({error})" if error else ""),
