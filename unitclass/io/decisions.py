@@ -166,8 +166,9 @@ class DecisionStore:
 
     def edits_for(self, identifier: str, object_id: str) -> tuple[CycleEdit, ...]:
         """Return the cycle edits of a session that are in force, oldest first."""
-        log = self.read(identifier, object_id)
-        return tuple(e.edit for e in log.edits if len(e.acts) % 2 == 1)
+        with self._lock, translated_errors(self.path):
+            logged = store_reading.logged_edits(self._connection, storable(object_id))
+        return tuple(edit.edit for edit in logged if edit.holds)
 
     def edits_digest(self, identifier: str, object_id: str) -> str:
         """Return a digest of the cycle edits in force; empty when there are none."""

@@ -123,7 +123,7 @@ def _agreed(voices: Sequence[LoggedDecision], note: str, flags: tuple[str, ...])
 
 def _is_stale(logged: LoggedDecision, edits: Sequence[LoggedEdit]) -> bool:
     """Tell whether the cycles are edited otherwise now than when the decision was made."""
-    return any(edit.holds_at(logged.act) != (len(edit.acts) % 2 == 1) for edit in edits
+    return any(edit.holds_at(logged.act) != edit.holds for edit in edits
                if edit.edit.condition == logged.decision.condition)
 
 

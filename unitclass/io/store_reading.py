@@ -25,7 +25,7 @@ def session_log(db: sqlite3.Connection, identifier: str, object_id: str, unit: s
     one = "" if unit is None else " AND unit = ?3 AND condition = ?4"
     given = (identifier, object_id, *(() if unit is None else (unit, condition)))
     return SessionLog(tuple(_decisions(db, one, given)), tuple(_notes(db, one, given)),
-                      tuple(_later(db, one, given)), _edits(db, object_id, condition))
+                      tuple(_later(db, one, given)), logged_edits(db, object_id, condition))
 
 
 def _newest(table: str, columns: str, one: str, also: str = "") -> str:
@@ -55,7 +55,9 @@ def _later(db: sqlite3.Connection, one: str, given: Sequence[str | None]) -> Ite
             yield reviewer, UnitRef(*ref)
 
 
-def _edits(db: sqlite3.Connection, object_id: str, condition: str | None) -> tuple[LoggedEdit, ...]:
+def logged_edits(db: sqlite3.Connection, object_id: str,
+                 condition: str | None = None) -> tuple[LoggedEdit, ...]:
+    """Return the cycle edits of a session or of one condition, oldest first, taken-back ones included."""
     one = "" if condition is None else " AND condition = ?2"
     given = (object_id,) if condition is None else (object_id, condition)
     rows = db.execute("SELECT act, condition, action, at_s, value, reviewer, made_at, note FROM cycle_edits"

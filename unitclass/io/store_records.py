@@ -68,6 +68,11 @@ class LoggedEdit:
     object_id: str
     edit: CycleEdit
 
+    @property
+    def holds(self) -> bool:
+        """Return whether the edit is in force now."""
+        return len(self.acts) % 2 == 1
+
     def holds_at(self, act: int) -> bool:
         """Return whether the edit was in force right after `act`."""
         return sum(turn <= act for turn in self.acts) % 2 == 1

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
+import gc
+from collections.abc import Iterable, Iterator, Sequence
+from contextlib import contextmanager
 from dataclasses import replace
 
 from unitclass.io.decisions import DecisionStore
@@ -29,10 +31,11 @@ class Board:
         self.queue = ReviewQueue(sure_probability)
         self._seen_version = store.version()
 
-    def put(self, view: SessionView) -> None:
-        """Take in a session's results."""
-        self.queue.drop(self.shelf.put(view))
-        self.reload([view.head.path])
+    def put(self, views: Sequence[SessionView]) -> None:
+        """Take in the results of sessions."""
+        with _collector_paused():
+            self.queue.drop([key for view in views for key in self.shelf.put(view)])
+            self.reload([view.head.path for view in views])
 
     def reload(self, paths: Iterable[str]) -> None:
         """Make the rows of some files anew from the results and the store."""
@@ -41,6 +44,16 @@ class Board:
     def reload_units(self, keys: Iterable[EntryKey]) -> None:
         """Make some rows anew."""
         self.queue.put([self._row_of_unit(key) for key in keys])
+
+    def suggest(self, keys: Iterable[EntryKey]) -> None:
+        """Show the suggestions now in force for some rows; the store is not asked."""
+        rows = [self.queue.row(key) for key in keys]
+        self.queue.put([row if row.is_hidden else self._with_suggestion(row) for row in rows])
+
+    def _with_suggestion(self, row: QueueEntry) -> QueueEntry:
+        light, change = self.shelf.light(row.key), self.shelf.change(row.key)
+        return replace(row, suggested_type=light.suggested_type, ranked=light.ranked, is_changed=bool(change),
+                       change=change)
 
     def took(self, act: Act) -> tuple[EntryKey, ...]:
         """Show what an act changed, and what others did meanwhile; return the keys it touched."""
@@ -112,3 +125,15 @@ class Board:
             return hidden(row, standing.notes.get(key[1:], ""))
         change = self.shelf.change(key)
         return replace(row, is_changed=bool(change), change=change) if change else row
+
+
+@contextmanager
+def _collector_paused() -> Iterator[None]:
+    """Spare the collector's passes over thousands of new rows, none of which is garbage."""
+    was_enabled = gc.isenabled()
+    gc.disable()
+    try:
+        yield
+    finally:
+        if was_enabled:
+            gc.enable()

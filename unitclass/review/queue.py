@@ -48,8 +48,11 @@ class ReviewQueue:
 
     def drop(self, keys: Iterable[EntryKey]) -> None:
         """Remove rows; a cursor on one of them goes to the row that takes its place."""
+        gone = set(keys) & set(self._rows)
+        if not gone:
+            return
         index = self.index
-        for key in set(keys) & set(self._rows):
+        for key in gone:
             del self._rows[key], self._ranks[key]
         self._view = [key for key in self._view if key in self._rows]
         if self._current not in self._rows and self._view:

@@ -39,6 +39,7 @@ class ReviewReader:
                  is_blind: bool = False) -> None:
         self._board = Board(store, reviewer, sure_probability, is_blind)
         self._held: dict[EntryKey, Suggestion] = {}
+        self._in_sight: set[EntryKey] = set()
         self.reviewer = reviewer
         self.sure_probability = sure_probability
 
@@ -48,7 +49,11 @@ class ReviewReader:
         return self._board.is_blind
 
     def set_blind(self, is_blind: bool) -> None:
-        """Hide suggestions until this reviewer has decided, or show them again; places stay."""
+        """Hide suggestions until this reviewer has decided, or show them again; places stay.
+
+        A unit whose suggestion was under the cursor before counts as viewed, hidden or not.
+        """
+        self._note_sight()
         self._board.is_blind = is_blind
         self._board.reload(self._board.shelf.views)
 
@@ -68,10 +73,14 @@ class ReviewReader:
         """Take in a session's results; results of the same path are replaced."""
         self.add_session(MemorySession(result))
 
-    def add_session(self, view: SessionView) -> None:
-        """Take in a session, e.g. one found in the result cache; like `add_result`."""
-        self._held = {key: held for key, held in self._held.items() if key[0] != view.head.path}
-        self._board.put(view)
+    def add_session(self, *views: SessionView) -> None:
+        """Take in sessions, e.g. those found in the result cache; like `add_result`.
+
+        Many at once are quicker than one by one.
+        """
+        paths = {view.head.path for view in views}
+        self._held = {key: held for key, held in self._held.items() if key[0] not in paths}
+        self._board.put(views)
 
     def add_failure(self, path: str, reason: str) -> None:
         """List a file that could not be analysed, with the reason."""
@@ -161,6 +170,7 @@ class ReviewReader:
 
     def _moved(self, move: Callable[[], QueueEntry | None]) -> QueueEntry | None:
         """Move the cursor; what it leaves has been seen, and gets the suggestion held back for it."""
+        self._note_sight()
         before = self._board.queue.current
         found = move()
         after = self._board.queue.current
@@ -168,13 +178,17 @@ class ReviewReader:
             self._leave(before.key)
         return found
 
+    def _note_sight(self) -> None:
+        if self.current is not None and not self.current.is_hidden:
+            self._in_sight.add(self.current.key)
+
     def _leave(self, key: EntryKey) -> None:
         was_marked = self._board.shelf.seen(key)
         held = self._held.pop(key, None)
         if held is not None:
             self._board.shelf.replace_suggestion(key, held)
         if was_marked or held is not None:
-            self._board.reload_units({key})
+            self._board.suggest([key])
 
     # -------------------------------------------------------------------------- results
 

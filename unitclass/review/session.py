@@ -84,12 +84,12 @@ class ReviewSession(ReviewReader):
         return self._decide(self._at_cursor(), NOT_ONE_CELL)
 
     def _decide(self, entry: QueueEntry, type_id: str) -> QueueEntry:
-        how = BLIND if entry.is_hidden else VIEWED
+        how = BLIND if entry.is_hidden and entry.key not in self._in_sight else VIEWED
         if not deciding.is_decided_so(entry, type_id, how):
             decision = deciding.decision_on(entry, type_id, self.reviewer, how)
             self._do(lambda: self._board.store.decide([decision]))
         if self._board.shelf.seen(entry.key):
-            self._board.reload_units([entry.key])
+            self._board.suggest([entry.key])
         decided = self.entry(entry.key)
         self.next_open()
         return decided
@@ -182,7 +182,7 @@ class ReviewSession(ReviewReader):
             else:
                 self._board.shelf.replace_suggestion(key, suggestion)
                 changed.append(key)
-        self._board.reload({key[0] for key in changed})
+        self._board.suggest(changed)
         return tuple(changed)
 
     # ---------------------------------------------------------------------------- saving
