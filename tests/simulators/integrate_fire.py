@@ -79,7 +79,8 @@ def _recorded(wanted: list[str], found: Mapping[str, list[FloatArray]], wears: M
     for name in wanted:
         for train, wear in zip(found[name], wears[name], strict=True):
             neighbour = everyone[int(rng.integers(len(everyone)))]
-            trains.append(recorded(train, neighbour, cycles, wear, rng))
+            flat = rng.uniform(cycles.onset_s[0], cycles.end_s[-1], max(train.size, 10))
+            trains.append(recorded(train, flat if rng.uniform() < 0.5 else neighbour, cycles, wear, rng))
             types.append(name)
     return SimUnits(trains, types, regime, cycles, [""] * len(trains))
 

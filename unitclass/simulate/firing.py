@@ -6,6 +6,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from unitclass.records import FloatArray
 from unitclass.simulate.breathing import Breaths, phase_at
@@ -112,9 +113,16 @@ def missorted(trains: Sequence[FloatArray], rng: np.random.Generator) -> list[Fl
 
 def _missorted(train: FloatArray, neighbour: FloatArray, rng: np.random.Generator) -> FloatArray:
     kept = train[rng.uniform(size=train.size) >= rng.uniform(0, 0.08)]
+    neighbour = neighbour[_is_near(neighbour, kept)]
     n = min(neighbour.size, round(kept.size * rng.uniform(0, 0.03)))
     foreign = rng.choice(neighbour, n, replace=False) if n else np.zeros(0)
     return np.unique(np.concatenate([kept, foreign]))
+
+
+def _is_near(times_s: FloatArray, train: FloatArray, within_s: float = 3.0) -> NDArray[np.bool_]:
+    """Tell which times have a spike of the train close by: a sorter mixes up only cells that fire."""
+    first = np.searchsorted(train, times_s - within_s)
+    return np.searchsorted(train, times_s + within_s) > first
 
 
 def _curve(name: str, hurry: float, rng: np.random.Generator) -> Curve:

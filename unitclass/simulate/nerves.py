@@ -106,7 +106,8 @@ def _resonance(peak_hz: float, rate_hz: float) -> tuple[FloatArray, FloatArray, 
 
 def _hum(wire: Wire, times_s: FloatArray) -> FloatArray:
     turn = 2 * np.pi * wire.hum_hz * times_s
-    return wire.hum * (np.sin(turn) + 0.3 * np.sin(3 * turn + 1)) + 0.8 * np.sin(2 * np.pi * 0.02 * times_s)
+    sway = 0.8 * np.sin(2 * np.pi * 0.02 * times_s)
+    return np.asarray(wire.hum * (np.sin(turn) + 0.3 * np.sin(3 * turn + 1)) + sway)
 
 
 def _heart_beats(wire: Wire, stop_s: float, rng: np.random.Generator) -> FloatArray:

@@ -99,7 +99,7 @@ SCENARIOS: Mapping[str, Scenario] = {
         stem="bramble-pons-removed",
         animal=Animal("bramble", RAT, "P31D", "F", "0.092 kg", "perfused juvenile rat"),
         title="Units before and after removal of the pons", look=PERFUSED_LOOK,
-        stretches=(Stretch("baseline", 165.0, Pattern(ti_s=0.8, te_s=1.6), "three-phase"),
+        stretches=(Stretch("baseline", 190.0, Pattern(ti_s=0.8, te_s=1.6), "three-phase"),
                    Stretch("pons removed", 195.0, Pattern(ti_s=1.15, te_s=1.7, sigh_every=0), "two-phase",
                            gap_s=25.0)),
         wires=(Wire("PNA", "phrenic", ("augmenting burst", "square burst"), 2000.0, heart=4.0),
