@@ -74,9 +74,13 @@ def _seen(cells: Sequence[Cell], cycles: Cycles, settings: Settings) -> list[_Se
             yield times_s, cell.observed_s
 
     profiles = unit_profiles(trains(), cycles, settings=settings, seed=SEED)
-    return [_Seen(cell, digests[i], profile, count_row(profile.by_phase, profile.exposure.seconds),
+    return [_Seen(cell, digests[i], profile, _row(profile),
                   mean_potential(cell, cycles, settings))
             for i, (cell, profile) in enumerate(zip(cells, profiles, strict=True))]
+
+
+def _row(profile: UnitProfile) -> CountRow:
+    return count_row(profile.by_phase, profile.exposure.seconds, profile.modulation.eta_squared_p)
 
 
 def _timing(cycles: Cycles) -> Timing:

@@ -13,8 +13,10 @@ from unitclass.classify.templates import COMMON, FORMS, NEEDED, Family, TypeLibr
 from unitclass.records import BoolArray, FloatArray, IntArray
 
 FINE = 8  # points per bin on which a profile is evaluated before it is averaged into bins
-SELDOM_LARGE = ("background", "wiggle", "foreign", "dip", "second_start")  # drawn as cubes: mostly small, now and then large
-FLOOR = 0.002  # a family never says "impossible": share of the peak that stray spikes may reach
+SELDOM_LARGE = ("background", "foreign", "dip", "second_start", "wiggle")  # none, small, now and then large
+NONE_SHARE = 0.3  # of the draws have none at all of these
+STRAY_S = 0.08  # how far an edge at a transition may stray into expiration, however long that lasts
+FLOOR = 3e-4  # a family never says "impossible": share of the peak that stray spikes may reach
 
 
 @dataclass(frozen=True)
@@ -91,10 +93,25 @@ def _draw_parameters(family: Family, timing: Timing, n_draws: int, rng: np.rando
     unit = _latin_hypercube(n_draws, len(names) + 1, rng)
     drawn: dict[str, FloatArray] = {}
     for column, name in enumerate(names):
-        share = unit[:, column] ** 3 if name in SELDOM_LARGE else unit[:, column]
+        share = _seldom_large(unit[:, column]) if name in SELDOM_LARGE else unit[:, column]
         value = _scaled(family, name, share, timing, by_time=unit[:, -1] < 0.5)
-        drawn[name] = value[:, None]
+        drawn[name] = _kept_near(value, name, timing)[:, None]
+    drawn["ti_s"], drawn["te_s"] = np.full((n_draws, 1), timing.ti_s), np.full((n_draws, 1), timing.te_s)
     return drawn
+
+
+def _seldom_large(unit: FloatArray) -> FloatArray:
+    return np.clip((unit - NONE_SHARE) / (1 - NONE_SHARE), 0.0, 1.0) ** 2.5
+
+
+def _kept_near(value: FloatArray, name: str, timing: Timing) -> FloatArray:
+    """Return edges that lie just across a transition into expiration no further than STRAY_S."""
+    stray = STRAY_S / timing.te_s
+    if name == "onset":
+        return np.where((value > -0.1) & (value < 0.0), np.maximum(value, -stray), value)
+    if name == "offset":
+        return np.where((value > 1.0) & (value < 1.1), np.minimum(value, 1.0 + stray), value)
+    return value
 
 
 def _latin_hypercube(n_draws: int, n_dims: int, rng: np.random.Generator) -> FloatArray:
@@ -103,7 +120,7 @@ def _latin_hypercube(n_draws: int, n_dims: int, rng: np.random.Generator) -> Flo
 
 
 def _scaled(family: Family, name: str, share: FloatArray, timing: Timing, *, by_time: BoolArray) -> FloatArray:
-    in_ms = family.ranges.get(f"{name}_ms")
+    in_ms = None if name.endswith("_ms") else family.ranges.get(f"{name}_ms")
     if in_ms is None:
         low, high = family.range(name)
         return low + (high - low) * share

@@ -35,16 +35,19 @@ def other_evidence(units: UnitCounts, weight: FloatArray) -> FloatArray:
     return _log_mean(mixed)
 
 
-def arbitrary_evidence(counts: FloatArray, exposure_s: FloatArray, weight: FloatArray) -> FloatArray:
+def arbitrary_evidence(counts: FloatArray, exposure_s: FloatArray, weight: FloatArray, *,
+                       alpha: float = ALPHA) -> FloatArray:
     """Return the log evidence of an arbitrary profile, averaged over grids so that no edge matters.
 
     Parameters
     ----------
     counts, exposure_s : ndarray, shape (n_units, n_bins)
     weight : ndarray, shape (n_units,)
+    alpha : float
+        Dirichlet parameter per fraction; large values keep the profile near a steady rate.
     """
     n_bins = counts.shape[1]
-    each = [_grid_evidence(counts, exposure_s, weight, member)
+    each = [_grid_evidence(counts, exposure_s, weight, member, alpha)
             for n in GRIDS if n <= n_bins for member in _grids(n_bins, n)]
     return _log_mean(np.stack(each))
 
@@ -113,15 +116,18 @@ def _grids(n_bins: int, n_coarse: int) -> list[FloatArray]:
 
 
 def _grid_evidence(counts: FloatArray, exposure_s: FloatArray, weight: FloatArray,
-                   member: FloatArray) -> FloatArray:
+                   member: FloatArray, alpha: float) -> FloatArray:
     from scipy.special import gammaln
 
     count, seconds = weight[:, None] * (counts @ member), exposure_s @ member
     observed = seconds > 0
-    alpha = np.where(observed, ALPHA, 0.0).sum(axis=1)
-    gained = np.where(observed, gammaln(ALPHA + count) - gammaln(ALPHA), 0.0).sum(axis=1)
+    # The prior's mean is a steady rate, so a fraction's share goes with the seconds it lasts.
+    share = alpha * seconds * observed.sum(axis=1, keepdims=True) / np.maximum(seconds.sum(axis=1, keepdims=True), 1e-12)
+    safe = np.where(observed, share, 1.0)
+    gained = np.where(observed, gammaln(safe + count) - gammaln(safe), 0.0).sum(axis=1)
+    whole = np.maximum(share.sum(axis=1), 1e-12)
     spread = (count * np.log(np.where(observed, seconds, 1.0))).sum(axis=1)
-    normal = gammaln(np.maximum(alpha, ALPHA)) - gammaln(np.maximum(alpha, ALPHA) + count.sum(axis=1))
+    normal = gammaln(whole) - gammaln(whole + count.sum(axis=1))
     return np.asarray(normal + gained - spread)
 
 

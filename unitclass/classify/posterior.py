@@ -8,13 +8,15 @@ import numpy as np
 
 from unitclass.classify.draws import DrawnFamilies
 from unitclass.classify.likelihood import evidence_weight, family_evidence, log_likelihood
-from unitclass.classify.open_set import other_evidence
+from unitclass.classify.open_set import arbitrary_evidence, other_evidence
 from unitclass.classify.templates import TypeLibrary
 from unitclass.classify.unit_counts import UnitCounts
 from unitclass.records import NOT_MODULATED, FloatArray
 from unitclass.settings import ClassifySettings
 
 STEADY = "tonic"
+SMALL_P = 0.01  # of the modulation test: at or below this a steady cell must explain itself
+SHALLOW = 12.0  # Dirichlet parameter per fraction of the cycle: rates within a third or so of their mean
 BLOCK = 500  # units scored at once: keeps the (units x draws) matrix small
 
 
@@ -41,11 +43,31 @@ def _modulation_odds(log_lik: FloatArray, units: UnitCounts, drawn: DrawnFamilie
     """Return the log odds of no modulation against steady firing with modulation.
 
     Doubt about a profile's shape is no doubt about whether there is one: here evidence
-    saturates ten times later, so that a shallow but certain modulation is not called NRM.
+    saturates ten times later, so that a shallow but certain modulation is not called NRM. And
+    the rival is not only a drawn wave but any profile that stays near a steady rate. The test
+    by circular shifts sees what counts per bin cannot, the regularity of a train: its p bounds
+    the odds of a perfectly steady cell [1]_.
+
+    References
+    ----------
+    .. [1] T. Sellke, M. J. Bayarri, J. O. Berger, "Calibration of p values", Am Stat 55:62, 2001.
     """
     weight = evidence_weight(units.n_spikes, units.dispersion, 10 * settings.concentration)
     evidence = family_evidence(log_lik, weight, drawn)
-    return np.asarray(evidence[:, drawn.types.index(NOT_MODULATED)] - evidence[:, drawn.types.index(STEADY)])
+    wavy = evidence[:, drawn.types.index(STEADY)]
+    shallow = arbitrary_evidence(units.counts, units.exposure_s, weight, alpha=SHALLOW)
+    rival = np.logaddexp(wavy, shallow) - np.log(2)
+    unmodulated = evidence[:, drawn.types.index(NOT_MODULATED)]
+    steady = weight * log_likelihood(units.counts, units.exposure_s, np.ones((1, units.counts.shape[1])))[:, 0]
+    bound = _log_odds_bound(units.modulation_p) + np.maximum(unmodulated - steady, 0.0)
+    return np.minimum(unmodulated - rival, bound)
+
+
+def _log_odds_bound(p: FloatArray) -> FloatArray:
+    """Return log of -e p log p, the most that a p value can say against the null; no bound unless p is small."""
+    is_small = np.isfinite(p) & (p <= SMALL_P)
+    safe = np.where(is_small, np.maximum(p, 1e-12), SMALL_P)
+    return np.where(is_small, 1.0 + np.log(safe) + np.log(-np.log(safe)), np.inf)
 
 
 def probabilities(log_evidence: FloatArray, log_prior: FloatArray, temperature: float) -> FloatArray:

@@ -12,6 +12,8 @@ import numpy as np
 
 from unitclass.records import FloatArray
 
+LEAST_GAP = 0.1  # phase between two humps, without which they are one plateau
+
 Parameters = Mapping[str, FloatArray]
 
 
@@ -30,13 +32,13 @@ def _hump(p: Parameters, phase: FloatArray) -> FloatArray:
     peak = np.clip(p["peak"], onset, p["offset"])
     body = _rise_and_fall(phase, onset, peak, p["offset"], p["start_level"], p["end_level"],
                           p["curve_up"], p["curve_down"])
-    body = body * _gate(phase, onset, p["offset"], p["edge"])
+    body = body * _gate(p, phase, onset, p["offset"])
     foot_onset = np.minimum(p["foot_onset"], onset - 0.01)
-    foot = p["foot"] * _ramp(phase, foot_onset, onset) * _gate(phase, foot_onset, onset, p["edge"])
+    foot = p["foot"] * _ramp(phase, foot_onset, onset) * _gate(p, phase, foot_onset, onset)
     tail_offset = np.maximum(p["tail_offset"], p["offset"] + 0.01)
     tail = p["tail"] * _ramp(-phase, -tail_offset, -p["offset"])
-    tail = tail * _gate(phase, p["offset"], tail_offset, p["edge"])
-    return body + foot * (1 - _gate(phase, onset, onset + 9.0, p["edge"])) + tail
+    tail = tail * _gate(p, phase, p["offset"], tail_offset)
+    return body + foot * (1 - _gate(p, phase, onset, onset + 9.0)) + tail
 
 
 def _rise_and_fall(phase: FloatArray, onset: FloatArray, peak: FloatArray, offset: FloatArray,
@@ -50,21 +52,30 @@ def _ramp(phase: FloatArray, low: FloatArray, high: FloatArray) -> FloatArray:
     return np.clip((phase - low) / np.maximum(high - low, 1e-3), 0.0, 1.0)
 
 
-def _gate(phase: FloatArray, onset: FloatArray, offset: FloatArray, edge: FloatArray) -> FloatArray:
-    """Return a window with soft edges: cycle-to-cycle jitter blurs every transition a little."""
-    opening = np.clip((phase - onset) / edge + 0.5, 0.0, 1.0)
-    closing = np.clip((offset - phase) / edge + 0.5, 0.0, 1.0)
+def _gate(p: Parameters, phase: FloatArray, onset: FloatArray, offset: FloatArray) -> FloatArray:
+    """Return a window with soft edges: jitter from cycle to cycle, in seconds, blurs every transition."""
+    now_s, edge_s = _local_s(p, phase), p["edge_ms"] / 1e3
+    opening = np.clip((now_s - _local_s(p, onset)) / edge_s + 0.5, 0.0, 1.0)
+    closing = np.clip((_local_s(p, offset) - now_s) / edge_s + 0.5, 0.0, 1.0)
     return opening * closing
+
+
+def _local_s(p: Parameters, phase: FloatArray) -> FloatArray:
+    """Return seconds from the onset of inspiration, for unwrapped phase."""
+    turn = np.floor(phase / 2.0)
+    within = phase - 2.0 * turn
+    seconds = np.where(within < 1.0, within * p["ti_s"], p["ti_s"] + (within - 1.0) * p["te_s"])
+    return turn * (p["ti_s"] + p["te_s"]) + seconds
 
 
 def two_humps(p: Parameters, phase: FloatArray) -> FloatArray:
     """Return two windows with a dip between: firing before and after inspiration, silent in it."""
     first = window(p, phase)
     second = dict(p)
-    second.update(onset=p["second_onset"], offset=p["second_offset"], peak=p["second_offset"],
-                  start_level=p["second_start"], end_level=np.ones_like(p["edge"]), foot=0 * p["foot"],
+    second.update(onset=np.maximum(p["second_onset"], p["offset"] + LEAST_GAP), offset=p["second_offset"], peak=p["second_offset"],
+                  start_level=p["second_start"], end_level=np.ones_like(p["edge_ms"]), foot=0 * p["foot"],
                   tail=0 * p["tail"])
-    between = p["dip"] * _gate(phase, p["onset"], p["second_offset"], p["edge"])
+    between = p["dip"] * _gate(p, phase, p["onset"], p["second_offset"])
     return np.maximum.reduce([p["first_level"] * first, p["second_level"] * window(second, phase), between])
 
 

@@ -19,7 +19,7 @@ Range = tuple[float, float]
 # What each form assumes of a parameter that its file does not give. Phases are canonical and may
 # leave [0, 2) so that a range can straddle an edge; levels are shares of the peak rate.
 COMMON: Mapping[str, Range] = {
-    "background": (0.0, 0.35), "edge": (0.01, 0.05), "wiggle": (0.0, 0.2), "foreign": (0.0, 0.15), "foot": (0.0, 0.0),
+    "background": (0.0, 0.35), "edge_ms": (10.0, 60.0), "wiggle": (0.0, 0.2), "foreign": (0.0, 0.15), "foot": (0.0, 0.0),
     "foot_onset": (-0.2, -0.05), "tail": (0.0, 0.0), "tail_offset": (1.05, 1.2),
     "curve_up": (0.6, 2.0), "curve_down": (0.6, 2.5),
 }
@@ -150,7 +150,7 @@ def _checked_ranges(given: Mapping[str, Any], form: str, where: str) -> dict[str
     allowed = {*COMMON, *FORMS[form], *NEEDED[form]}
     ranges = {}
     for name, value in given.items():
-        if name.removesuffix("_ms") not in allowed:
+        if name not in allowed and name.removesuffix("_ms") not in allowed:
             raise UsageError(f"range {name!r} means nothing to the form {form!r}", where=where,
                              remedy="use " + ", ".join(sorted(allowed)))
         if not (isinstance(value, list) and len(value) == 2 and value[0] <= value[1]):

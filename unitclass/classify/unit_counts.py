@@ -25,6 +25,8 @@ class UnitCounts:
         The same for the first, middle and last third of the cycles.
     dispersion : ndarray, shape (n_units,)
         See `shape_dispersion`.
+    modulation_p : ndarray, shape (n_units,)
+        Of the test for any modulation; NaN where it was not made.
     """
 
     counts: FloatArray
@@ -32,6 +34,7 @@ class UnitCounts:
     third_counts: FloatArray
     third_exposure_s: FloatArray
     dispersion: FloatArray
+    modulation_p: FloatArray
 
     @property
     def n_units(self) -> int:
@@ -46,7 +49,7 @@ class UnitCounts:
     def rows(self, chosen: slice) -> UnitCounts:
         """Return some of the units."""
         return UnitCounts(self.counts[chosen], self.exposure_s[chosen], self.third_counts[chosen],
-                          self.third_exposure_s[chosen], self.dispersion[chosen])
+                          self.third_exposure_s[chosen], self.dispersion[chosen], self.modulation_p[chosen])
 
 
 @dataclass(frozen=True)
@@ -58,9 +61,10 @@ class CountRow:
     third_counts: FloatArray
     third_exposure_s: FloatArray
     dispersion: float
+    modulation_p: float
 
 
-def count_row(by_cycle: ArrayLike, seconds: ArrayLike) -> CountRow:
+def count_row(by_cycle: ArrayLike, seconds: ArrayLike, modulation_p: float = np.nan) -> CountRow:
     """Return what the classifier needs of one unit.
 
     Parameters
@@ -75,17 +79,17 @@ def count_row(by_cycle: ArrayLike, seconds: ArrayLike) -> CountRow:
     return CountRow(counts.sum(axis=0), exposure.sum(axis=0),
                     np.stack([counts[rows].sum(axis=0) for rows in thirds]),
                     np.stack([exposure[rows].sum(axis=0) for rows in thirds]),
-                    shape_dispersion(counts, exposure))
+                    shape_dispersion(counts, exposure), modulation_p)
 
 
 def stacked(rows: Sequence[CountRow], n_bins: int) -> UnitCounts:
     """Return the rows as one table; with no rows, a table of none."""
     if not rows:
         none, thirds = np.zeros((0, n_bins)), np.zeros((0, N_THIRDS, n_bins))
-        return UnitCounts(none, none, thirds, thirds, np.zeros(0))
+        return UnitCounts(none, none, thirds, thirds, np.zeros(0), np.zeros(0))
     return UnitCounts(np.stack([r.counts for r in rows]), np.stack([r.exposure_s for r in rows]),
                       np.stack([r.third_counts for r in rows]), np.stack([r.third_exposure_s for r in rows]),
-                      np.array([r.dispersion for r in rows]))
+                      np.array([r.dispersion for r in rows]), np.array([r.modulation_p for r in rows]))
 
 
 def shape_dispersion(by_cycle: FloatArray, seconds: FloatArray) -> float:
