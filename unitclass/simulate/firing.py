@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
+from math import exp
 
 import numpy as np
 from numpy.typing import NDArray
@@ -97,7 +98,7 @@ def spikes(rate_hz: FloatArray, step_s: float, rng: np.random.Generator, *, dead
     for t, u, pair in zip(times.tolist(), rng.uniform(size=times.size).tolist(),
                           (rng.uniform(size=times.size) < doublets).tolist(), strict=True):
         wait = t - last - dead_s
-        if wait > 0 and u < 1 - np.exp(-wait / recovery_s):
+        if wait > 0 and u < 1 - exp(-wait / recovery_s):
             kept.append(t)
             last = t
             if pair:

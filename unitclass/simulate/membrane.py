@@ -12,6 +12,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from math import exp
 
 import numpy as np
 from numpy.typing import NDArray
@@ -117,7 +118,7 @@ def integrate(excitation: FloatArray, inhibition: FloatArray, rate_hz: float,
         else:
             total = 1 + ge + gi + w + a
             rest = (cell.leak_mv + ge * cell.e_mv + gi * cell.i_mv + (w + a) * cell.k_mv) / total
-            v = rest + (v - rest) * np.exp(-dt_ms * total / cell.tau_ms)
+            v = rest + (v - rest) * exp(-dt_ms * total / cell.tau_ms)
             if v >= cell.threshold_mv:
                 spikes.append(i / rate_hz + 0.5 * _UP_MS / 1000)
                 left = len(form)

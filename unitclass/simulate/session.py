@@ -164,4 +164,4 @@ def _checked_cell(cell: str) -> str:
 def _checked_number(name: str, value: float) -> float:
     if not 0 <= value < 1e6:
         raise UsageError(f"{value!r} makes no session", where=name, remedy="give 0 or more")
-    return value
+    return float(value)
