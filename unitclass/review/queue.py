@@ -178,6 +178,7 @@ class ReviewQueue:
         if not self._view:
             return
         if self._current not in self._rows:
-            self._current = self._view[0]
+            still_open = (row.key for row in self.view if not row.is_reviewed and not row.is_later)
+            self._current = next(still_open, self._view[0])
         elif self.view and self._current not in self._places:
             self._current = self._nearest(self._ranks[self._current])
