@@ -77,6 +77,7 @@ def open_connection(path: Path, *, is_read_only: bool, busy_timeout_s: float) ->
             if not is_read_only:
                 connection.execute("PRAGMA journal_mode = PERSIST")
                 connection.execute("PRAGMA synchronous = FULL")
+                connection.execute("PRAGMA fullfsync = ON")  # where a plain sync does not reach the disk
                 _migrate(connection, path)
             _check(connection, path)
         except BaseException:
