@@ -193,7 +193,9 @@ class DecisionStore:
 
         For a disk that has become full or unwritable. Raises TargetError, also when the file exists.
         """
-        return store_history.copied(self._connection, self.path, Path(path), DecisionStore)
+        with self._lock:
+            store_history.copy(self._connection, Path(path))
+        return DecisionStore(path)
 
     def _rows(self, query: str) -> list[tuple[Any, ...]]:
         with self._lock, translated_errors(self.path):

@@ -4,17 +4,15 @@ from __future__ import annotations
 
 import math
 import sqlite3
-from collections.abc import Callable, Collection
+from collections.abc import Collection
+from contextlib import closing
 from dataclasses import replace
 from pathlib import Path
-from typing import TypeVar
 
 from unitclass.errors import TargetError
 from unitclass.io.store_records import Act, UnitRef
 from unitclass.io.store_schema import translated_errors
 from unitclass.records import Decision
-
-Store = TypeVar("Store")
 
 _REFS = " UNION ALL ".join(
     f"SELECT identifier, object_id, {unit}, {digest}, condition FROM {table} WHERE act = ?1"
@@ -101,14 +99,9 @@ def decision_from(row: Collection[object]) -> Decision:
     return Decision(*values)  # type: ignore[arg-type]
 
 
-def copied(db: sqlite3.Connection, path: Path, target: Path, reopen: Callable[[Path], Store]) -> Store:
-    """Copy a whole store to a new file and open it there."""
+def copy(db: sqlite3.Connection, target: Path) -> None:
+    """Copy a whole store to a new file; raises TargetError, also when it exists."""
     if target.exists():
         raise TargetError("exists already", where=str(target), remedy="name a new file")
-    with translated_errors(target):
-        copy = sqlite3.connect(target)
-        try:
-            db.backup(copy)
-        finally:
-            copy.close()
-    return reopen(target)
+    with translated_errors(target), closing(sqlite3.connect(target)) as new:
+        db.backup(new)
