@@ -101,10 +101,12 @@ def review(folder: Path, is_busy: bool) -> int:
 
     cache = ResultCache(folder / "cache.sqlite")
     session = ReviewSession(DecisionStore(folder / "decisions.sqlite"), "Ada Fischer")
+    views = []
     for path in sorted(folder.glob("*.nwb")):
         found = cache.find(path, _key())
         assert found is not None
-        session.add_session(found)
+        views.append(found)
+    session.add_session(*views)
     pending = [str(folder / "further.nwb")] if is_busy else []
     session.expect(pending)
     app = ReviewApp(session, library=types, analyse=burn, pending=pending)

@@ -15,6 +15,7 @@ from unitclass.review.filters import Filter
 from unitclass.review.misfit import contradictions, misfit
 from unitclass.review.ordering import INFORMATIVE, SORTS
 from unitclass.review.session import ReviewSession
+from unitclass.review.shelf import FileState
 from unitclass.review.unit_facts import mean_durations
 from unitclass.tui.choice import Option
 from unitclass.tui.renderables.verdict import Verdict
@@ -51,6 +52,7 @@ class Desk:
         self._read_library = library
         self._library: TypeLibrary | None = None
         self._conditions: dict[tuple[str, str], ConditionFacts] = {}
+        self._counted: tuple[Sequence[QueueEntry], int, bool] = ((), 0, False)
 
     # ------------------------------------------------------------------------- showing
 
@@ -67,7 +69,15 @@ class Desk:
     @property
     def has_conditions(self) -> bool:
         """Return whether the rows in view are of more than one condition."""
-        return len({entry.condition for entry in self.entries}) > 1
+        return self._counts()[1]
+
+    def _counts(self) -> tuple[int, bool]:
+        """Return how many rows are labelled and whether conditions differ; counted once per change."""
+        rows = self.entries
+        if rows is not self._counted[0]:
+            n_done = sum(1 for row in rows if row.own_type)
+            self._counted = rows, n_done, len({row.condition for row in rows}) > 1
+        return self._counted[1:]
 
     def forget(self) -> None:
         """Read conditions anew: results have changed."""
@@ -99,8 +109,7 @@ class Desk:
         if entry is None:
             return "unitclass", "", self.pending_words()
         title = f"unit {entry.unit}" + (f"  {entry.condition}" if entry.condition else "")
-        n_done = sum(1 for row in self.entries if row.own_type)
-        place = f"{n_done} labelled, {self.here + 1} of {len(self.entries)}"
+        place = f"{self._counts()[0]} labelled, {self.here + 1} of {len(self.entries)}"
         if not self.session.filter.is_empty:
             place += " shown"
         return title, entry.path, "  ".join(filter(None, (self.pending_words(), place)))
@@ -120,7 +129,7 @@ class Desk:
         files = self.session.files
         if self.session.all_entries:
             return "No unit fits what is asked for. Choose which units again, or all of them."
-        lines = [f"{file.path}: {file.reason}" for file in files if file.state == "failed"]
+        lines = [told(file) for file in files if file.state == "failed"]
         if any(file.state == "waiting" for file in files):
             lines.insert(0, "The first files are being analysed; units appear here as they are ready.")
         elif not lines:
@@ -242,6 +251,11 @@ class Desk:
             detail = family.words if family is not None else words.get(name, "")
             options.append(Option(name, name, detail, " ".join(family.also) if family is not None else ""))
         return options
+
+
+def told(file: FileState) -> str:
+    """Return why a file failed, its name once."""
+    return file.reason if file.path in file.reason else f"{file.path}: {file.reason}"
 
 
 def family_shown(entry: QueueEntry, unit: UnitResult) -> str:

@@ -11,6 +11,7 @@ import signal
 import sys
 import threading
 from collections.abc import Callable, Iterable
+from contextlib import redirect_stderr
 from dataclasses import dataclass
 from typing import Any
 
@@ -64,10 +65,12 @@ class Work:
 
         context = multiprocessing.get_context("spawn")
         ours, theirs = context.Pipe()
-        self._process = context.Process(target=_serve, args=(self._function, theirs), daemon=True)
+        self._process = context.Process(target=_serve, args=(theirs,), daemon=True)
         try:
-            self._process.start()
+            with redirect_stderr(sys.__stderr__):  # the toolkit's stand-in has no file handle to pass on
+                self._process.start()
             theirs.close()
+            ours.send(self._function)
             self._pass_on(ours)
         except Exception as error:
             self._tell(Done("", problem=f"the work could not be started: {error}"))
@@ -95,12 +98,13 @@ class Work:
             self._report(done)
 
 
-def _serve(function: Callable[..., Any], pipe: Any) -> None:
-    """Work off what comes through the pipe; runs in the process."""
+def _serve(pipe: Any) -> None:
+    """Work off what comes through the pipe, the function first; runs in the process."""
     signal.signal(signal.SIGINT, signal.SIG_IGN)
     _silence()
     if hasattr(os, "nice"):
         os.nice(NICENESS)
+    function = pipe.recv()
     while True:
         try:
             arguments = pipe.recv()

@@ -70,8 +70,10 @@ def population_lines(groups: Sequence[tuple[str, int]]) -> list[Line]:
 
 def _put_unit(sheet: Sheet, y: int, unit: HeatEntry, is_here: bool, axis: CycleAxis, name_room: int) -> None:
     look = sheet.look
-    sheet.put(0, y, look.glyphs.here if is_here else " ", "strong")
-    sheet.put(1, y, mark_of(unit.entry, look), "good" if unit.entry.state == "reviewed" else "warn")
+    if is_here:
+        sheet.put(0, y, look.glyphs.here, "strong")
+    if (mark := mark_of(unit.entry, look)) != " ":
+        sheet.put(1, y, mark, "good" if unit.entry.state == "reviewed" else "warn")
     sheet.put(2, y, shortened(unit.entry.unit, name_room, look), "strong" if is_here else "")
     sheet.paste(heat_row(axis, unit.rate_hz, look=look), name_room + 3, y)
     x = name_room + 4 + axis.n_columns

@@ -36,12 +36,13 @@ def queue_column(entries: Sequence[QueueEntry], here: int, width: int, height: i
     shown = entries[first : first + height - 1]
     for y, entry in enumerate(shown):
         is_here = first + y == here
-        sheet.put(0, y, look.glyphs.here if is_here else " ", "strong")
-        sheet.put(1, y, mark_of(entry, look), "good" if entry.state == "reviewed" else "warn")
+        if is_here:
+            sheet.put(0, y, look.glyphs.here, "strong")
+        if (mark := mark_of(entry, look)) != " ":
+            sheet.put(1, y, mark, "good" if entry.state == "reviewed" else "warn")
         name_room = max(4, width - 12)
         sheet.put(3, y, shortened(name_of(entry, with_condition), name_room, look), "strong" if is_here else "")
-        sheet.put(3 + name_room + 1, y, shortened(type_of(entry), width - name_room - 5, look),
-                  "" if entry.state == "reviewed" else "quiet")
+        sheet.put(3 + name_room + 1, y, shortened(type_of(entry), width - name_room - 5, look))
     n_pages = -(-len(entries) // max(1, height - 1))
     if n_pages > 1:
         page = f"page {here // max(1, height - 1) + 1} of {n_pages}"

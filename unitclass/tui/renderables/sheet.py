@@ -105,6 +105,15 @@ class Sheet:
                 self.cells[y + row][x : x + n] = other.cells[row][:n]
                 self.inks[y + row][x : x + n] = other.inks[row][:n]
 
+    def columns(self, start: int, width: int) -> Sheet:
+        """Return `width` columns from `start` on as a sheet of their own, blank where there are none."""
+        part = Sheet(width, self.height, self.look)
+        n = max(0, min(width, self.width - start))
+        for y in range(self.height):
+            part.cells[y][:n] = self.cells[y][start : start + n]
+            part.inks[y][:n] = self.inks[y][start : start + n]
+        return part
+
     def shade(self, x: int, y: int, width: int, height: int) -> None:
         """Mark a block of cells as inspiration: as an ink, or without colour as a sparse lattice."""
         char = self.look.shade

@@ -56,7 +56,7 @@ def unit_picture(unit: UnitResult, nerves: Sequence[NerveProfile], ti_s: float, 
     pictures beside each other compare (0 chooses one), and `n_nerves` the room for nerves.
     """
     sheet = Sheet(width, height, look)
-    gutter = 9 if width >= 64 else 7
+    gutter = gutter_of(width)
     axis = CycleAxis.for_durations(width - gutter, ti_s, te_s)
     rows = Rows.share(height, max(len(nerves), n_nerves), unit.vm is not None, unit.raster.n_cycles)
     _put_nerves(sheet, axis, nerves[: rows.n_nerves], rows.nerve, gutter)
@@ -73,6 +73,11 @@ def unit_picture(unit: UnitResult, nerves: Sequence[NerveProfile], ti_s: float, 
     if rows.axis == AXIS_ROWS:
         sheet.right(gutter - 1, y + 1, "phase", "axis")
     return sheet
+
+
+def gutter_of(width: int) -> int:
+    """Return how many columns the labels at the left take."""
+    return 9 if width >= 64 else 7
 
 
 def bars_of(unit: UnitResult, axis: CycleAxis, *, with_fit: bool) -> Bars:

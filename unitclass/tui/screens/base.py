@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field, replace
-from typing import ClassVar
+from typing import ClassVar, Protocol
 
 from textual import events
 from textual.binding import Binding
@@ -15,12 +15,19 @@ from unitclass.tui.keys import DECLARED, KeyMap
 from unitclass.tui.renderables.choice_rows import choice_rows
 from unitclass.tui.renderables.sheet import Sheet
 from unitclass.tui.theme import Theme
-from unitclass.tui.widgets.canvas import Canvas
 from unitclass.tui.widgets.foot import Foot
 from unitclass.tui.widgets.line_entry import LineEntry
 
 CHOOSING = (("Enter", "take"), ("Up Down", "choose"), ("Esc", "leave"))
 TYPING = (("Enter", "keep"), ("Esc", "leave"))
+
+
+class Coverable(Protocol):
+    """A part of the screen over which a list can be shown."""
+
+    def cover(self, draw: Callable[[int, int], Sheet] | None) -> None:
+        """Show something else, until None."""
+        ...
 
 
 @dataclass(frozen=True)
@@ -64,7 +71,7 @@ class BaseScreen(Screen[str]):
         self._question: Question | None = None
         self._is_repaint_due = False
 
-    def list_area(self) -> Canvas:
+    def list_area(self) -> Coverable:
         """Return the part of the screen where a list to choose from is shown."""
         raise NotImplementedError
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import ClassVar
 
-from unitclass.tui.desk import Desk
+from unitclass.tui.desk import Desk, told
 from unitclass.tui.keys import FINISH, KeyMap
 from unitclass.tui.renderables.listing import scrolled
 from unitclass.tui.renderables.sheet import Sheet
@@ -62,15 +62,15 @@ class FinishScreen(PageScreen):
 
     def _plan(self) -> Lines:
         lines: Lines = [(f"{self.keys.shown('export')} writes:", "strong")]
-        for item in self.desk.session.export_plan():
+        failed = {file.path for file in self.desk.session.files if file.state == "failed"}
+        for item in (item for item in self.desk.session.export_plan() if item.path not in failed):
             words = f"- {item.target}: {item.n_labelled} of {item.n_entries} labelled"
             lines.append((f"{words}; NOT WRITTEN: {item.problem}" if item.problem else words,
                           "warn" if item.problem else ""))
         return lines
 
     def _failures(self) -> Lines:
-        return [(f"failed: {file.path}: {file.reason}", "warn") for file in self.desk.session.files
-                if file.state == "failed"]
+        return [(f"failed: {told(file)}", "warn") for file in self.desk.session.files if file.state == "failed"]
 
     def step(self, steps: int) -> None:
         """Scroll."""

@@ -12,16 +12,15 @@ from unitclass.errors import UnitclassError
 from unitclass.tui.desk import Desk
 from unitclass.tui.keys import REVIEW, KeyMap
 from unitclass.tui.messages import Picked
-from unitclass.tui.screens.base import BaseScreen, bindings_of
+from unitclass.tui.screens.base import BaseScreen, Coverable, bindings_of
 from unitclass.tui.theme import Theme
-from unitclass.tui.widgets.canvas import Canvas
 from unitclass.tui.widgets.head import Head
 from unitclass.tui.widgets.panels import QueueColumn, UnitPage, VerdictPanel
 
 COLUMN_FROM = 100
 BESIDE_FROM = 64
 LEAST = (30, 9)
-TOO_SMALL = "This terminal is too small:\nmake it 40 x 12 or larger."
+TOO_SMALL = "Too small to draw:\nmake it 40 x 12."
 
 
 class ReviewScreen(BaseScreen):
@@ -64,7 +63,7 @@ class ReviewScreen(BaseScreen):
             self._arrange(*event.size)
             self.repaint_soon()
 
-    def list_area(self) -> Canvas:
+    def list_area(self) -> Coverable:
         """Return where lists are shown: the verdict's place, or the picture's on a narrow terminal."""
         return self.page if self.has_class("-brief") else self.verdict
 
@@ -98,7 +97,10 @@ class ReviewScreen(BaseScreen):
         self.queue.styles.width = min(34, 22 + max(0, width - COLUMN_FROM) // 8)
         self.head.styles.height = 1 if has_column or height < 16 else 2
         self.set_class(is_brief, "-brief")
-        self.verdict.styles.width = "1fr" if is_brief else max(25, min(60, round(width * 0.3)))
+        self.verdict.display = not self._is_too_small()
+        beside = 0 if is_brief else max(25, min(60, round(width * 0.3)))
+        self.verdict.styles.width = beside or "1fr"
+        self.page.give_width(width - beside - (int(self.queue.styles.width.value) if has_column else 0))
 
     # --------------------------------------------------------------------------- moving
 
