@@ -11,6 +11,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field, replace
+from itertools import pairwise
 from math import inf
 from typing import Any, Protocol
 
@@ -578,7 +579,8 @@ class VmProfile:
 
     `mean_mv` and `sd_mv` (between cycles) on canonical phase; `reference_mv` is the cell's own
     time-weighted mean over the cycle; `swing_mv` peak minus trough. `locked` holds the onset-
-    and offset-locked means: name to (centres_ms, mean_mv).
+    and offset-locked means: name to (centres_ms, mean_mv). `covariance_mv2`, shape (n_bins, n_bins),
+    is that of the bins between cycles around each cycle's own mean: what errors of levels need.
     """
 
     mean_mv: FloatArray
@@ -590,6 +592,7 @@ class VmProfile:
     plateau_bias_mv: float
     resting_mv: float
     notes: tuple[str, ...] = ()
+    covariance_mv2: FloatArray = field(default_factory=lambda: np.empty((0, 0)))
 
 
 # ---------------------------------------------------------------------------- suggestion
