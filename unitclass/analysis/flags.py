@@ -6,7 +6,8 @@ import numpy as np
 
 from unitclass.analysis.cells import Cell
 from unitclass.phase.profiles import UnitProfile
-from unitclass.records import NOT_MODULATED, OTHER, Suggestion
+from unitclass.phase.rules import contradicts
+from unitclass.records import NOT_MODULATED, Suggestion
 from unitclass.settings import Settings
 
 HALVES_R = 0.5  # histograms of odd and even cycles that agree less than this are unsteady
@@ -36,7 +37,7 @@ def unit_flags(profile: UnitProfile, suggestion: Suggestion, cell: Cell, setting
 
 def _suggestion_flags(profile: UnitProfile, suggestion: Suggestion, settings: Settings) -> list[str]:
     f, flags = profile.features, []
-    if suggestion.rule_type and suggestion.rule_type != suggestion.type and suggestion.type != OTHER:
+    if contradicts(suggestion.rule_type, suggestion.type):
         flags.append(f"rule of thumb says {suggestion.rule_type}")
     if suggestion.probability < UNSURE:
         flags.append("unsure")

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from itertools import pairwise
 
 import numpy as np
 
@@ -13,6 +14,7 @@ from unitclass.records import (
     Condition,
     CycleEdit,
     Cycles,
+    Exclusion,
     NerveCycles,
     NerveProfile,
     Recording,
@@ -62,12 +64,18 @@ def condition_cycles(recording: Recording, condition: Condition, settings: Setti
     mine = [edit for edit in edits if edit.condition == condition.name]
     try:
         found = find_cycles(reference, others, start_s=condition.start_s + settings.cycles.settling_s,
-                            stop_s=condition.stop_s, settings=settings, exclusions=recording.exclusions, edits=mine)
+                            stop_s=condition.stop_s, settings=settings, exclusions=_exclusions(recording, condition), edits=mine)
     except SignalError as error:
         return ConditionCycles(condition, _nothing(reference.name), (), problem=str(error))
     used = found.cycles.used()
     profiles = tuple(nerve_profile(e, used, n_bins=settings.phase.n_bins) for e in found.envelopes)
     return ConditionCycles(condition, found, profiles)
+
+
+def _exclusions(recording: Recording, condition: Condition) -> tuple[Exclusion, ...]:
+    between = tuple(Exclusion(start, stop, "another condition")
+                    for (_, start), (stop, _) in pairwise(condition.spans))
+    return (*recording.exclusions, *between)
 
 
 def _nerves(recording: Recording, condition: Condition) -> tuple[Signal, tuple[Signal, ...]]:
@@ -76,7 +84,7 @@ def _nerves(recording: Recording, condition: Condition) -> tuple[Signal, tuple[S
         reference = recording.nerve(name)
     except KeyError:
         names = ", ".join(signal.name for signal in recording.nerves) or "none"
-        what = f"no nerve called {name!r}" if name else "no nerve was recognised"
+        what = f"no nerve called {name!r}" if name else recording.reference_reason or "no nerve was recognised"
         raise FileError(what, where=recording.path, remedy=f"name one with --nerve; the file has: {names}") from None
     seen = {reference.role}
     others = []

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from typing import Any
 
 import h5py
@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from unitclass.io.chunk_readers import Column, EvenChunks, UnevenChunks
 from unitclass.io.hdf5 import attribute, child_of, neurodata_type, number
 from unitclass.io.nwb_types import series_kind
-from unitclass.io.sample_blocks import column_part, scaled
+from unitclass.io.sample_blocks import scaled
 from unitclass.io.timebase import TimeBase, UnusableSeriesError, time_base
 
 _NO_UNIT = {"", "unknown", "n/a", "na", "none", "no unit", "see 'feature_units'"}
@@ -60,7 +60,8 @@ class Series:
         return UnevenChunks(source, times.timestamps, times.rate_hz, times.stretches)
 
 
-def read_series(file: h5py.File, location: str, parents: Mapping[str, str], known_times: dict[Any, TimeBase]) -> Series | None:
+def read_series(file: h5py.File, location: str, parents: Mapping[str, str],
+                known_times: dict[Any, TimeBase]) -> Series | None:
     """Return what the file says about the series at `location`; None when it is not a trace.
 
     Raises
@@ -71,9 +72,7 @@ def read_series(file: h5py.File, location: str, parents: Mapping[str, str], know
     group = file[location]
     data = child_of(group, "data")
     kind = series_kind(neurodata_type(group), parents)
-    if kind == "not a trace" or not isinstance(data, h5py.Dataset) or data.dtype.kind not in "iuf":
-        return None
-    if data.ndim not in (1, 2):
+    if kind == "not a trace" or not isinstance(data, h5py.Dataset) or not _is_trace(data):
         return None
     time_axis = _time_axis(group, data)
     n_samples = data.shape[time_axis]
@@ -82,14 +81,18 @@ def read_series(file: h5py.File, location: str, parents: Mapping[str, str], know
     n_columns = 1 if data.ndim == 1 else data.shape[1 - time_axis]
     times = time_base(group, n_samples, known_times)
     series = Series(
-        name=location.rsplit("/", 1)[-1], location=location, kind=kind, n_samples=n_samples, n_columns=n_columns,
-        unit=_unit(data), description=attribute(group, "description"), comments=attribute(group, "comments"),
+        name=location.rsplit("/", 1)[-1], location=location, kind=kind, n_samples=n_samples,
+        n_columns=n_columns, unit=_unit(data), description=attribute(group, "description"), comments=attribute(group, "comments"),
         gains=_gains(group, data, n_columns), offset=_offset(data), times=times, dataset=f"{location}/data",
         time_axis=time_axis, is_whole_numbers=data.dtype.kind in "iu",
         notes=tuple(filter(None, (times.note, _transposed_note(data, time_axis)))))
     if all(g == 0 for g in series.gains):
         raise UnusableSeriesError("has a gain (conversion) of zero")
     return series
+
+
+def _is_trace(data: h5py.Dataset) -> bool:
+    return data.dtype.kind in "iuf" and data.ndim in (1, 2)
 
 
 def _time_axis(group: h5py.Group, data: h5py.Dataset) -> int:
@@ -105,7 +108,9 @@ def _time_axis(group: h5py.Group, data: h5py.Dataset) -> int:
 
 
 def _transposed_note(data: h5py.Dataset, time_axis: int) -> str:
-    return f"stored channels × time ({data.shape[0]} × {data.shape[1]}): read along its second axis" if time_axis else ""
+    if not time_axis:
+        return ""
+    return f"stored channels × time ({data.shape[0]} × {data.shape[1]}): read along its second axis"
 
 
 def _unit(data: h5py.Dataset) -> str:
@@ -143,11 +148,6 @@ def peek(file: h5py.File, series: Series, *, seconds: float = 2.0, n_places: int
 
 
 def _peeked(data: h5py.Dataset, series: Series, first: int, stop: int) -> NDArray[Any]:
-    columns = [scaled(column_part(data, j, first, stop, time_axis=series.time_axis), series.gains[j], series.offset)
-               for j in range(series.n_columns)]
-    return np.stack(columns, axis=1)
-
-
-def with_kind(series: Series, kind: str) -> Series:
-    """Return the series as another kind, where a table or the user knows better than its type."""
-    return replace(series, kind=kind)
+    raw = data[first:stop] if series.time_axis == 0 else data[:, first:stop].T
+    columns = raw.reshape(stop - first, series.n_columns)
+    return np.stack([scaled(columns[:, j], series.gains[j], series.offset) for j in range(series.n_columns)], axis=1)

@@ -57,3 +57,19 @@ def _peak_share(f: Features) -> float:
     """Return how far into the active phase the peak lies, 0 to 1."""
     length = (f.offset_phase - f.onset_phase) % 2.0
     return ((f.peak_phase - f.onset_phase) % 2.0) / length if length else 0.0
+
+
+# Phase and course that a rule's answer and a type's name each promise. The rules know no plateau and
+# no late start, so types that are neither rising nor falling cannot contradict them.
+_TRAITS = {"pre-I": ("I", "pre"), "early-I": ("I", "falls"), "ramp-I": ("I", "rises"), "late-I": ("I", "rises"),
+           "con-I": ("I", ""), "post-I": ("E", "falls"), "dec-E": ("E", "falls"), "aug-E": ("E", "rises"),
+           "late-E": ("E", ""), "con-E": ("E", "")}
+
+
+def contradicts(rule_type: str, type_id: str) -> bool:
+    """Return whether what the rules by hand say speaks against a type; false for types they do not know."""
+    if rule_type not in _TRAITS or type_id not in _TRAITS:
+        return False
+    rule_phase, rule_course = _TRAITS[rule_type]
+    phase, course = _TRAITS[type_id]
+    return rule_phase != phase or bool(rule_course and course and rule_course != course)
