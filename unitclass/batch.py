@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
-from pathlib import Path
 
 from unitclass import __version__
 from unitclass.classify.templates import TypeLibrary
@@ -14,12 +13,10 @@ from unitclass.io.nwb_read import read_recording
 from unitclass.records import CycleEdit, Recording, SessionResult
 from unitclass.settings import Settings
 
-STORE_NAME = "unitclass.sqlite"
-
 
 @dataclass(frozen=True)
 class Plan:
-    """How every file of a run is read and judged."""
+    """How every file of a run is read and judged. `store` is an existing file of decisions, or empty."""
 
     settings: Settings
     library: TypeLibrary
@@ -62,18 +59,12 @@ def read_planned(path: str, plan: Plan) -> Recording:
 
 def edits_of(recording: Recording, plan: Plan) -> tuple[CycleEdit, ...]:
     """Return what people changed about the cycles, if their decisions are on disk."""
-    file = store_file(recording.path, plan.store)
-    if not file.is_file():
+    if not plan.store:
         return ()
     from unitclass.io.decisions import DecisionStore
 
-    with DecisionStore(file, is_read_only=True) as store:
+    with DecisionStore(plan.store, is_read_only=True) as store:
         return store.edits_for(recording.identifier, recording.object_id)
-
-
-def store_file(path: str, store: str) -> Path:
-    """Return the file of decisions for a session: the one named, else the one beside the data."""
-    return Path(store) if store else Path(path).parent / STORE_NAME
 
 
 def analyse_file(path: str, plan: Plan) -> Outcome:

@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 import argparse
+import os
 import shutil
+import sys
 from pathlib import Path
 
 FOLDER = "unitclass-demo"
@@ -13,11 +15,12 @@ SAMPLE = "quill-baseline.nwb"
 def add_arguments(parser: argparse.ArgumentParser) -> None:
     """Declare the options."""
     parser.add_argument("--out", default=FOLDER, metavar="DIR", help=f"working folder (default: {FOLDER})")
+    parser.add_argument("--no-review", action="store_true", help="print the table even where there is a terminal")
     parser.add_argument("--quiet", action="store_true", help="no progress, no notes")
 
 
 def run(args: argparse.Namespace) -> int:
-    """Copy the sample, classify it, write the labelled NWB, and say what to type next."""
+    """Copy the sample, classify it, review it where there is a terminal, write the labelled NWB."""
     from unitclass.commands.export import made_folder, write_copy
     from unitclass.commands.labels import labels_of
     from unitclass.commands.parser import parse
@@ -27,8 +30,10 @@ def run(args: argparse.Namespace) -> int:
 
     folder = Path(made_folder(args.out))
     session, table = _copied_sample(folder), folder / "units.csv"
-    quiet = ["--quiet"] if args.quiet else []
-    job = parse(["export", str(session), "--out", str(folder), "--force", *quiet])
+    if _has_terminal() and not args.no_review:
+        review = parse(["review", str(session)])
+        review.run(review)
+    job = parse(["export", str(session), "--out", str(folder), "--force", *(["--quiet"] if args.quiet else [])])
     for outcome in run_files(job):
         if outcome.result is None:
             return 1
@@ -39,6 +44,10 @@ def run(args: argparse.Namespace) -> int:
         target = write_copy(outcome, job)
     _say_what_next(session, table, target)
     return 0
+
+
+def _has_terminal() -> bool:
+    return sys.stdin.isatty() and sys.stdout.isatty() and os.environ.get("TERM", "dumb") != "dumb"
 
 
 def _copied_sample(folder: Path) -> Path:
@@ -59,5 +68,5 @@ def _say_what_next(session: Path, table: Path, target: str) -> None:
     print(f"  {target}  the labelled NWB")
     print("next:")
     print(f"  unitclass inventory {session}")
-    print(f"  unitclass cycles {session}")
+    print(f"  unitclass review {session}")
     print("  unitclass classify YOUR_FILE.nwb --table units.csv")

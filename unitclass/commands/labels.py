@@ -11,10 +11,10 @@ if TYPE_CHECKING:
 
 def labels_of(result: SessionResult, args: argparse.Namespace) -> Labels:
     """Return what people decided of this session's units; empty when there is no store."""
-    from unitclass.batch import store_file
+    from unitclass.io.store_place import existing_store
 
-    file = store_file(result.path, args.store)
-    if not file.is_file():
+    file = existing_store(args.paths, args.store)
+    if file is None:
         return {}
     from unitclass.io.decisions import DecisionStore
 

@@ -55,8 +55,10 @@ def plan_from(args: argparse.Namespace) -> Plan:
     """Return how every file of this run is read and judged."""
     from unitclass.batch import Plan
     from unitclass.io.condition_table import read_condition_table
+    from unitclass.io.store_place import existing_store
     from unitclass.io.template_files import read_library
 
+    store = existing_store(args.paths, args.store)
     return Plan(settings=settings_from(args), library=read_library(args.templates), nerve=args.nerve,
-                condition_column=args.condition_column, only=args.only, store=args.store,
+                condition_column=args.condition_column, only=args.only, store=str(store or ""),
                 condition_table=read_condition_table(args.conditions) if args.conditions else None)

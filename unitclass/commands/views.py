@@ -5,7 +5,7 @@ from __future__ import annotations
 import os
 import shutil
 import sys
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING, TextIO
 
 from unitclass.io.safe_text import safe_text
@@ -87,7 +87,31 @@ def print_cycles(result: SessionResult, file: TextIO = sys.stdout) -> None:
             print(f"  {safe_text(line)}", file=file)
         if condition.problem:
             print(f"  {safe_text(condition.problem)}", file=file)
-        summary = [(name, f"{value:.4g}") for name, value in condition.nerve_cycles.summary.items()]
+        summary = condition.nerve_cycles.summary
         if summary:
-            print_table(("measure", "value"), summary, file)
+            print_table(("measure", "cycles in use", "all cycles"), _summary_rows(summary), file)
+            print("  " + _tag_words(summary), file=file)
         print(file=file)
+
+
+MEASURES = (("rate_per_min", "rate", "/min"), ("ttot_s", "TTOT", "s"), ("ti_s", "TI", "s"), ("te_s", "TE", "s"),
+            ("duty", "duty (TI/TTOT)", ""), ("cv_ttot", "CV of TTOT", ""), ("cv_ti", "CV of TI", ""),
+            ("cv_te", "CV of TE", ""), ("cv_peak", "CV of burst height", ""))
+
+
+def _summary_rows(summary: Mapping[str, float]) -> list[tuple[str, str, str]]:
+    return [(words, _with_unit(summary.get(name), unit), _with_unit(summary.get(f"{name}_all"), unit))
+            for name, words, unit in MEASURES if name in summary]
+
+
+def _with_unit(value: float | None, unit: str) -> str:
+    return "" if value is None or value != value else f"{value:.3g} {unit}".rstrip()
+
+
+def _tag_words(summary: Mapping[str, float]) -> str:
+    counts = [f"{int(value)} {name.removeprefix('n_').replace('_', ' ')}" for name, value in summary.items()
+              if name.startswith("n_") and name not in ("n_cycles", "n_used") and value > 0]
+    rest = [f"{name.replace('_', ' ')} {value:.3g}" for name, value in summary.items()
+            if not name.startswith("n_") and name.removesuffix("_all") not in {m[0] for m in MEASURES} and value == value]
+    found = f"{int(summary.get('n_cycles', 0))} cycles found, {int(summary.get('n_used', 0))} in use"
+    return "; ".join([found, *counts, *rest])

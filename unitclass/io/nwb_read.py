@@ -171,3 +171,17 @@ def _missing(reference: str, reason: str, units: tuple[Unit, ...], found: FoundM
     if not animal:
         lines.append("animal: no subject_id; --conditions FILE.csv can give it")
     return lines
+
+
+def read_identity(path: str) -> tuple[str, str]:
+    """Return a session's NWB identifier and object id, without reading anything else.
+
+    Raises
+    ------
+    FileError
+        As `read_recording`.
+    """
+    with opened(path) as file:
+        checked_version(file, path)
+        head = _head(file)
+    return head["identifier"], head["object_id"]

@@ -1,0 +1,147 @@
+"""`unitclass review`: label the units in the terminal."""
+
+from __future__ import annotations
+
+import argparse
+from dataclasses import dataclass
+from functools import partial
+from typing import TYPE_CHECKING, Any
+
+from unitclass.commands.options import add_paths, add_session_options
+
+if TYPE_CHECKING:
+    from unitclass.batch import Plan
+    from unitclass.io.result_cache import CacheKey, ResultCache
+    from unitclass.records import Labels, SessionResult
+
+
+def add_arguments(parser: argparse.ArgumentParser) -> None:
+    """Declare the options."""
+    add_paths(parser)
+    parser.add_argument("--reviewer", default="", metavar="NAME", help="who labels (default: the login name)")
+    parser.add_argument("--blind", action="store_true", help="hide each suggestion until a label is given")
+    add_session_options(parser)
+
+
+def run(args: argparse.Namespace) -> int:
+    """Open the review on what is known already; analyse the rest behind it."""
+    from unitclass.commands.options import settings_from
+    from unitclass.io.paths import find_files
+    from unitclass.io.result_cache import ResultCache
+    from unitclass.io.store_place import cache_path, open_store, store_path
+    from unitclass.review.reviewer import reviewer_name
+    from unitclass.review.session import ReviewSession
+    from unitclass.tui.terminal import check_terminal
+
+    check_terminal()
+    settings = settings_from(args)
+    place = store_path(args.paths, args.store)
+    store = open_store(place)
+    args.store = str(place.path)
+    work = _Work(args, ResultCache(cache_path()), settings_digest=settings.digest())
+    session = ReviewSession(store, reviewer_name(args.reviewer, settings.review.reviewer),
+                            sure_probability=settings.classify.sure_probability, is_blind=args.blind)
+    pending = []
+    for path in find_files(args.paths):
+        known = work.cache.find(path, work.key, edits_digest_of=store.edits_digest)
+        if known is None:
+            session.expect([path])
+            pending.append(path)
+        else:
+            session.add_session(known)
+    from unitclass.tui.app import ReviewApp, run_review
+
+    app = ReviewApp(session, analyse=partial(analysed, args), take=partial(_taken, work, store), pending=pending,
+                    export=partial(exported, args), settings=settings, library=work.library)
+    code = run_review(app, mouse=settings.review.mouse)
+    if place.message:
+        print(place.message)
+    print(f"decisions are kept in {place.path}")
+    return code
+
+
+@dataclass
+class _Work:
+    """What the review needs of the analysis; the template files are read when first wanted."""
+
+    args: argparse.Namespace
+    cache: ResultCache
+    settings_digest: str
+
+    def library(self) -> Any:
+        from unitclass.io.template_files import read_library
+
+        return read_library(self.args.templates)
+
+    @property
+    def key(self) -> CacheKey:
+        return cache_key(self.args, self.settings_digest, self.library().digest())
+
+
+def cache_key(args: argparse.Namespace, settings_digest: str, template_digest: str) -> CacheKey:
+    """Return what besides the file shapes its results."""
+    from pathlib import Path
+
+    from unitclass.io.result_cache import CacheKey
+
+    table = Path(args.conditions).read_text("utf-8-sig") if args.conditions else ""
+    options = repr((args.nerve, args.condition_column, args.only, table))
+    return CacheKey(settings_digest, template_digest, options)
+
+
+def analysed(args: argparse.Namespace, path: str) -> SessionResult | None:
+    """Analyse one file and leave the result in the cache; runs in a process of its own.
+
+    Returns the result itself only where the cache cannot be written.
+
+    Raises
+    ------
+    FileError
+        When the file cannot be used.
+    """
+    from unitclass.batch import analyse_file
+    from unitclass.commands.options import plan_from
+    from unitclass.errors import FileError
+    from unitclass.io.decisions import DecisionStore
+    from unitclass.io.result_cache import FileStamp, ResultCache
+    from unitclass.io.store_place import cache_path
+
+    plan: Plan = plan_from(args)
+    try:
+        stamp = FileStamp.of(path)
+    except OSError as error:
+        raise FileError("cannot be read", where=path, remedy=error.strerror or str(error)) from error
+    outcome = analyse_file(path, plan)
+    if outcome.result is None:
+        raise FileError(outcome.problem)
+    result = outcome.result
+    with DecisionStore(args.store, is_read_only=True) as store:
+        edits = store.edits_digest(result.identifier, result.object_id)
+    key = cache_key(args, plan.settings.digest(), plan.library.digest())
+    is_kept = ResultCache(cache_path()).put(result, stamp, key, edits_digest=edits)
+    return None if is_kept else result
+
+
+def _taken(work: _Work, store: Any, path: str, result: SessionResult | None) -> Any:
+    from unitclass.io.session_view import MemorySession
+
+    if result is not None:
+        return MemorySession(result)
+    known = work.cache.find(path, work.key, edits_digest_of=store.edits_digest)
+    if known is None:
+        from unitclass.errors import FileError
+
+        raise FileError("its results were lost from the cache", where=path, remedy="open the review again")
+    return known
+
+
+def exported(args: argparse.Namespace, path: str, result: SessionResult, labels: Labels, target: str,
+             is_replacing: bool) -> str:
+    """Write one labelled copy and return its path; runs in a process of its own."""
+    from unitclass.batch import read_planned
+    from unitclass.commands.options import plan_from
+    from unitclass.io.nwb_write import write_labelled
+
+    write_labelled(path, target, read_planned(path, plan_from(args)), result, labels, only=args.only,
+                   force=is_replacing)
+    return target
