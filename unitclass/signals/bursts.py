@@ -70,6 +70,11 @@ class Bursts:
         np.add.at(flags, self.last, -1)
         return np.cumsum(flags[:-1]) > 0
 
+    def near_burst(self, rate_hz: float) -> BoolArray:
+        """Return whether each sample lies in a burst or within a tenth of the usual gap of one."""
+        gap = float(np.median(self.first[1:] - self.last[:-1])) if self.n_bursts > 1 else 0.0
+        return widened(self.in_burst(), round(max(0.1 * gap, self.width_s * rate_hz)))
+
 
 def find_bursts(fine: Activity, settings: CycleSettings, *, threshold_scale: float = 1.0) -> Bursts:
     """Return the bursts of a stretch.

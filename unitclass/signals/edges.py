@@ -1,10 +1,8 @@
 """Onset and offset of every burst, finer than the smoother that found it and without its lag.
 
-The moment a burst passes a tenth of its peak drowns in noise when the signal is weak, but the
-moment it passes half of it does not. So each burst is anchored where it is steep, the bursts are
-averaged on their anchors, and the average, nearly free of noise, tells how long before the anchor
-a tenth of the peak was passed. Each burst's own crossing then corrects that, as far as its noise
-allows.
+The moment a burst passes a tenth of its peak drowns in noise when the signal is weak. So the
+bursts are fitted to their own average (`align`), and the average, nearly free of noise, tells where
+a tenth of the peak lies.
 """
 
 from __future__ import annotations
@@ -14,15 +12,14 @@ from dataclasses import dataclass
 import numpy as np
 
 from unitclass.records import FloatArray
+from unitclass.signals.align import aligned, field_of
 from unitclass.signals.bursts import Bursts
+from unitclass.signals.flanks import crossed, edge_inward
 from unitclass.signals.levels import excess
 from unitclass.signals.neurogram import Activity
-from unitclass.signals.smoothing import filled, smooth
+from unitclass.signals.smoothing import filled
 
-ANCHOR = 0.45
-EDGE = 0.1
-SHELF = 0.3
-KNEE = 2.5
+ANCHOR = 0.4
 
 
 @dataclass(frozen=True)
@@ -34,9 +31,7 @@ class Edges:
 
     onset: FloatArray
     offset: FloatArray
-    peak: FloatArray
     knee: bool
-    template: FloatArray
 
 
 def find_edges(fine: Activity, found: Bursts) -> Edges:
@@ -46,61 +41,33 @@ def find_edges(fine: Activity, found: Bursts) -> Edges:
     a tenth, or, when it falls steeply and then lingers below a third (an after-discharge), the
     end of the steep fall.
     """
-    light = smooth(fine.values, max(1.0, _light_width_s(found, fine) * fine.rate_hz))
-    over = filled(excess(light, found.floor, fine.is_power))
     rough = filled(excess(found.trace, found.floor, fine.is_power))
-    rise = _anchors(rough, found, forward=True)
-    fall = _anchors(rough, found, forward=False)
-    onset = _edge(over, rise, fall, found)
-    last = over.size - 1
-    mirrored = _edge(over[::-1], last - fall, last - rise, found)
-    return Edges(onset, last - mirrored, found.peak, False, np.empty(0))
+    rise, fall = _anchors(rough, found)
+    typical = _typical(found, rise, fall)
+    field = field_of(fine.values, found.floor, ~found.near_burst(fine.rate_hz), is_power=fine.is_power)
+    onset, offset = aligned(field, rise, fall, typical)
+    before = edge_inward(field, onset, offset, typical, allow_knee=False)
+    end = field.strength.size - 1
+    after = edge_inward(field.mirrored(), (end - offset)[::-1], (end - onset)[::-1], typical[::-1], allow_knee=True)
+    return Edges(onset + before.inward, offset - after.inward[::-1], after.is_knee)
 
 
-def _light_width_s(found: Bursts, fine: Activity) -> float:
-    length_s = float(np.median(found.last - found.first)) / fine.rate_hz
-    return float(np.clip(0.03 * length_s, 0.006, 0.03))
+def _typical(found: Bursts, rise: FloatArray, fall: FloatArray) -> np.ndarray:
+    """Return the bursts of about the usual height and length."""
+    length = fall - rise
+    ratio = found.peak / np.median(found.peak)
+    stretch = length / np.median(length)
+    typical = (ratio > 0.5) & (ratio < 1.5) & (stretch > 0.5) & (stretch < 2)
+    return typical if typical.any() else np.ones(found.n_bursts, bool)
 
 
-def _anchors(rough: FloatArray, found: Bursts, *, forward: bool) -> FloatArray:
-    """Return where each burst passes ANCHOR of its own peak, seen from outside, in samples."""
-    out = np.empty(found.n_bursts)
+def _anchors(rough: FloatArray, found: Bursts) -> tuple[FloatArray, FloatArray]:
+    """Return where each burst first and last passes ANCHOR of its own peak, in samples."""
+    rise, fall = np.empty(found.n_bursts), np.empty(found.n_bursts)
     for i, (first, last, peak) in enumerate(zip(found.first, found.last, found.peak, strict=True)):
-        part = rough[first:last]
         level = ANCHOR * peak
-        above = np.flatnonzero(part >= level)
-        if not above.size:
-            out[i] = first if forward else last - 1
-        elif forward:
-            out[i] = _crossed(rough, first + above[0], level, -1)
-        else:
-            out[i] = _crossed(rough, first + above[-1], level, 1)
-    return out
-
-
-def _crossed(trace: FloatArray, at: int, level: float, step: int) -> float:
-    """Walk from a sample at or above the level outward to where the trace falls below it."""
-    i = at
-    while 0 <= i + step < trace.size and trace[i + step] >= level:
-        i += step
-    if not 0 <= i + step < trace.size:
-        return float(i)
-    inside, outside = trace[i], trace[i + step]
-    return i + step * float((inside - level) / (inside - outside))
-
-
-def _edge(over: FloatArray, near: FloatArray, far: FloatArray, found: Bursts) -> FloatArray:
-    """Return where the flank at `near` passes EDGE of the peak; `far` anchors the other flank."""
-    length = np.abs(far - near)
-    typical = float(np.median(length))
-    before, after = round(1.2 * typical) + 8, round(typical) + 8
-    offsets = np.arange(-before, after + 1)
-    at = near[:, None] + offsets[None, :]
-    rows = np.interp(at.ravel(), np.arange(over.size), over, left=np.nan, right=np.nan).reshape(at.shape)
-    rows = rows / found.peak[:, None]
-    template = np.nanmedian(rows * np.abs(rows), axis=0)
-    template = np.sign(template) * np.sqrt(np.abs(template))
-    peak = np.nanmax(template[before:])
-    crossing = _crossed(template, before, EDGE * peak, -1)
-    lag = before - crossing
-    return near - lag * np.clip(length / typical, 0.5, 2.0)
+        above = np.flatnonzero(rough[first:last] >= level)
+        inner, outer = (above[0], above[-1]) if above.size else (0, last - 1 - first)
+        rise[i] = crossed(rough, first + inner, level, -1)
+        fall[i] = max(crossed(rough, first + outer, level, 1), rise[i] + 1)
+    return rise, fall

@@ -55,6 +55,12 @@ class Detector:
         True where dV/dt is clear enough to time each spike by itself.
     usual_slope_mv_ms : float
         Median maximal dV/dt of the spikes seen so far; inf while there are none.
+    usual_size_mv : float
+        Median score of the same.
+    value_noise_mv : float
+        Standard deviation of the fast noise of single values as the lens smooths them.
+    shift_ms : float
+        Added to moments read off dV/dt: a slope over several samples sees an uneven rise too early.
     """
 
     grid: Grid
@@ -65,11 +71,20 @@ class Detector:
     kernel: Kernel | None = None
     times_by_slope: bool = True
     usual_slope_mv_ms: float = inf
+    usual_size_mv: float = inf
+    value_noise_mv: float = 0.0
+    shift_ms: float = 0.0
 
-    @property
-    def least_slope_mv_ms(self) -> float:
-        """Return the threshold of dV/dt: 2.5 deviations of its noise, at most half the cell's usual."""
-        return min(2.5 * self.slope_noise_mv_ms, 0.5 * self.usual_slope_mv_ms)
+    def least_slope_mv_ms(self, size_mv: FloatArray) -> FloatArray:
+        """Return the threshold of dV/dt for events of these sizes, same shape.
+
+        2.5 deviations of its noise, at most half of what the cell's spikes usually reach; in proportion
+        for smaller events.
+        """
+        clear = np.full(size_mv.shape, 2.5 * self.slope_noise_mv_ms)
+        if not np.isfinite(self.usual_size_mv):
+            return clear
+        return np.minimum(clear, 0.5 * self.usual_slope_mv_ms * np.clip(size_mv / self.usual_size_mv, 0.0, 1.0))
 
     def score(self, coarse: FloatArray) -> FloatArray:
         """Return the score of an event with its centre in each bin, mV; -inf near both ends."""
@@ -158,7 +173,7 @@ def _measured_events(block: Block, coarse: FloatArray, score: FloatArray, peaks:
     first = np.clip(centre - lens.before, 0, max(0, block.values.size - lens.before - lens.after))
     waves = block.values[first[:, None] + np.arange(lens.before + lens.after)]
     found = measured(waves, lens)
-    at = first + found.rise_samples
+    at = first + found.rise_samples + detector.shift_ms * 1e-3 * lens.rate_hz
     if detector.kernel is not None and not detector.times_by_slope:
         at = (peaks + 0.5 + score_vertex(score, peaks)) * k - 0.5 + detector.kernel.steep_ms * 1e-3 * lens.rate_hz
     trough = _trough_mv(coarse, (first + found.rise_samples) / k, after, grid)

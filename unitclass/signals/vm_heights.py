@@ -61,22 +61,23 @@ def sort_events(events: Events, detector: Detector, settings: MembraneSettings, 
                           float(np.sum(clear) / max(observed_s, 1e-9)))
     typical = clear & (events.size_mv >= split)
     width = float(np.median(events.half_width_ms[typical]))
-    usual = ~too_brief(events, 0.45 * width) & (events.half_width_ms <= 3.5 * width + 0.5)
+    usual = ~too_brief(events, 0.45 * width, detector) & (events.half_width_ms <= 3.5 * width + 0.5)
     passing = shaped & usual & (events.z >= least_z) & (events.height_mv >= settings.min_height_mv)
     is_spike, jumps = _follow(events, passing, dominant, split / dominant)
     is_spike = _refractory(events, is_spike, settings.refractory_ms)
     spikelet = shaped & usual & ~is_spike & (events.z > 5.5) & (events.height_mv > 2.0)
+    spikelet &= events.half_width_ms >= 0.6 * width
     spikelet &= ~_near(events.time_s, events.time_s[is_spike], 0.004)
     n_artefacts = int(np.sum((events.z > 6.0) & ~is_spike & (events.height_mv > 0.4 * dominant)
-                             & too_brief(events, max(settings.min_width_ms, 0.45 * width))))
+                             & too_brief(events, max(settings.min_width_ms, 0.45 * width), detector)))
     return Sorted(is_spike, spikelet, n_artefacts, dominant, least_z, jumps)
 
 
 def spike_shaped(events: Events, detector: Detector, settings: MembraneSettings) -> BoolArray:
     """Return which events rise steeply, last long enough, and fall again on both sides."""
-    slope = settings.min_dvdt_mv_ms or detector.least_slope_mv_ms
+    slope = settings.min_dvdt_mv_ms or detector.least_slope_mv_ms(events.size_mv)
     return ((events.max_dvdt_mv_ms >= slope) & (events.height_mv > 0.0) & _stands_out(events)
-            & ~too_brief(events, settings.min_width_ms)
+            & ~too_brief(events, settings.min_width_ms, detector)
             & (events.half_width_ms <= max(6.0, 4.0 * detector.lens.width_ms)))
 
 
@@ -90,18 +91,19 @@ def _stands_out(events: Events) -> BoolArray:
     return np.asarray(events.bump_mv >= 0.35 * usual * events.size_mv - 2.0 * noise)
 
 
-def too_brief(events: Events, least_ms: float) -> BoolArray:
-    """Return which events are pops: briefer than `least_ms`, and so with a score small for their height.
+def too_brief(events: Events, least_ms: float, detector: Detector) -> BoolArray:
+    """Return which events are pops: briefer than `least_ms`.
 
-    Noise on a small spike can make it look brief; its score, which averages over the whole shape, then
-    is still that of a spike. Without five longer events to compare with, brevity alone decides.
+    Noise can make a small spike look brief. An event below twelve deviations of the noise is a pop only
+    if its score, which averages over the whole shape, is small for its height too.
     """
     brief = events.half_width_ms < least_ms
     longer = ~brief & (events.z > 4.5) & (events.height_mv > 0.0)
     if longer.sum() < 5 or not brief.any():
         return np.asarray(brief)
     usual = float(np.median(events.size_mv[longer] / events.height_mv[longer]))
-    return np.asarray(brief & (events.size_mv < 0.65 * usual * events.height_mv))
+    fits = events.size_mv >= 0.65 * usual * events.height_mv
+    return np.asarray(brief & ~(fits & (events.height_mv < 12.0 * detector.value_noise_mv)))
 
 
 def dominant_size(sizes: FloatArray) -> tuple[float, float]:

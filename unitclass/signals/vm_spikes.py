@@ -12,9 +12,10 @@ from unitclass.settings import MembraneSettings
 from unitclass.signals.vm_bumps import Grid
 from unitclass.signals.vm_detector import Detector, Events, events_in
 from unitclass.signals.vm_heights import Sorted, sort_events
-from unitclass.signals.vm_learning import learn_detector, plan_for, sample_blocks
+from unitclass.signals.vm_learning import learn_detector
 from unitclass.signals.vm_looks import BlockLook, look_at
 from unitclass.signals.vm_quality import Verdict, inside, judge
+from unitclass.signals.vm_sample import plan_for, sample_blocks
 from unitclass.signals.vm_stream import blocks
 
 
