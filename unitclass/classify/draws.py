@@ -12,7 +12,7 @@ from unitclass.classify.shapes import FORM_SHAPES, Parameters
 from unitclass.classify.templates import COMMON, FORMS, NEEDED, Family, TypeLibrary
 from unitclass.records import BoolArray, FloatArray, IntArray
 
-FINE = 8  # points per bin on which a profile is evaluated before it is averaged into bins
+FINE = 4  # points per bin on which a profile is evaluated before it is averaged into bins
 SELDOM_LARGE = ("background", "foreign", "dip", "second_start", "wiggle")  # none, small, now and then large
 NONE_SHARE = 0.3  # of the draws have none at all of these
 STRAY_S = 0.08  # how far an edge at a transition may stray into expiration, however long that lasts

@@ -79,8 +79,10 @@ def family_evidence(log_lik: FloatArray, weight: FloatArray, drawn: DrawnFamilie
 
 
 def draw_posterior(log_lik: FloatArray, weight: float, drawn: DrawnFamilies, type_id: str) -> FloatArray:
-    """Return the posterior share of each draw of one family for one unit, shape (n_draws,)."""
-    rows = drawn.rows(type_id)
-    tempered = weight * log_lik[rows] + drawn.log_weight[rows]
+    """Return the posterior share of each draw of one family for one unit.
+
+    `log_lik` and the result have shape (n_draws,), the draws of that family alone.
+    """
+    tempered = weight * log_lik + drawn.log_weight[drawn.rows(type_id)]
     share = np.exp(tempered - tempered.max())
     return np.asarray(share / share.sum())

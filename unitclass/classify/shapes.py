@@ -21,10 +21,15 @@ def window(p: Parameters, phase: FloatArray) -> FloatArray:
     """Return one active window: rise to the peak, fall from it, an optional foot and tail.
 
     The foot is weak firing before the window (how a pre-I cell starts), the tail weak firing
-    after it. Works on the unwrapped phase, three turns laid over each other.
+    after it. Works on the unwrapped phase; turns that the window reaches into are laid over each other.
     """
-    one = _hump(p, phase)
-    return np.maximum.reduce([one, _hump(p, phase - 2.0), _hump(p, phase + 2.0)])
+    reach = 3.0 * float(p["edge_ms"].max()) / 1e3 / min(float(p["ti_s"][0, 0]), float(p["te_s"][0, 0]))
+    level = _hump(p, phase)
+    if min(float(p["onset"].min()), float(p["foot_onset"].min()) if p["foot"].any() else 2.0) < reach:
+        level = np.maximum(level, _hump(p, phase - 2.0))
+    if max(float(p["offset"].max()), float(p["tail_offset"].max()) if p["tail"].any() else 0.0) > 2.0 - reach:
+        level = np.maximum(level, _hump(p, phase + 2.0))
+    return level
 
 
 def _hump(p: Parameters, phase: FloatArray) -> FloatArray:
@@ -33,12 +38,20 @@ def _hump(p: Parameters, phase: FloatArray) -> FloatArray:
     body = _rise_and_fall(phase, onset, peak, p["offset"], p["start_level"], p["end_level"],
                           p["curve_up"], p["curve_down"])
     body = body * _gate(p, phase, onset, p["offset"])
+    if p["foot"].any():
+        body = body + _foot(p, phase, onset)
+    return body + _tail(p, phase) if p["tail"].any() else body
+
+
+def _foot(p: Parameters, phase: FloatArray, onset: FloatArray) -> FloatArray:
     foot_onset = np.minimum(p["foot_onset"], onset - 0.01)
     foot = p["foot"] * _ramp(phase, foot_onset, onset) * _gate(p, phase, foot_onset, onset)
+    return foot * (1 - _gate(p, phase, onset, onset + 9.0))
+
+
+def _tail(p: Parameters, phase: FloatArray) -> FloatArray:
     tail_offset = np.maximum(p["tail_offset"], p["offset"] + 0.01)
-    tail = p["tail"] * _ramp(-phase, -tail_offset, -p["offset"])
-    tail = tail * _gate(p, phase, p["offset"], tail_offset)
-    return body + foot * (1 - _gate(p, phase, onset, onset + 9.0)) + tail
+    return p["tail"] * _ramp(-phase, -tail_offset, -p["offset"]) * _gate(p, phase, p["offset"], tail_offset)
 
 
 def _rise_and_fall(phase: FloatArray, onset: FloatArray, peak: FloatArray, offset: FloatArray,
@@ -62,10 +75,10 @@ def _gate(p: Parameters, phase: FloatArray, onset: FloatArray, offset: FloatArra
 
 def _local_s(p: Parameters, phase: FloatArray) -> FloatArray:
     """Return seconds from the onset of inspiration, for unwrapped phase."""
+    ti_s, te_s = float(p["ti_s"][0, 0]), float(p["te_s"][0, 0])  # one rhythm for all draws
     turn = np.floor(phase / 2.0)
     within = phase - 2.0 * turn
-    seconds = np.where(within < 1.0, within * p["ti_s"], p["ti_s"] + (within - 1.0) * p["te_s"])
-    return turn * (p["ti_s"] + p["te_s"]) + seconds
+    return turn * (ti_s + te_s) + np.where(within < 1.0, within * ti_s, ti_s + (within - 1.0) * te_s)
 
 
 def two_humps(p: Parameters, phase: FloatArray) -> FloatArray:

@@ -148,7 +148,7 @@ def _fit(unit: UnitCounts, type_id: str, drawn: DrawnFamilies,
     if type_id == OTHER or not unit.n_spikes[0]:
         return NOTHING, NOTHING, NOTHING
     rate = drawn.rate[drawn.rows(type_id)]
-    log_lik = log_likelihood(unit.counts, unit.exposure_s, drawn.rate)[0]
+    log_lik = log_likelihood(unit.counts, unit.exposure_s, rate)[0]
     weight = float(evidence_weight(unit.n_spikes, unit.dispersion, settings.classify.concentration)[0])
     share = draw_posterior(log_lik, weight, drawn, type_id)
     scaled = rate * (unit.n_spikes[0] / (rate @ unit.exposure_s[0]))[:, None]

@@ -1,0 +1,104 @@
+from __future__ import annotations
+
+import numpy as np
+import pytest
+from scipy.stats import multinomial
+
+from tests.classify.families import TIMING, in_and_ex
+from unitclass.classify.draws import draw_families
+from unitclass.classify.likelihood import draw_posterior, evidence_weight, family_evidence, log_likelihood
+from unitclass.classify.posterior import probabilities, type_log_prior
+
+
+def some_units(seed: int = 0) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    rng = np.random.default_rng(seed)
+    return rng.poisson(3.0, (5, 8)).astype(float), rng.uniform(0.5, 2, (5, 8)), rng.uniform(0.2, 3, (4, 8))
+
+
+def test_differences_between_profiles_equal_scipys_multinomial():
+    """SciPy's multinomial distribution as an independent oracle."""
+    counts, exposure, rate = some_units()
+    ours = log_likelihood(counts, exposure, rate)
+    for u in range(5):
+        theirs = [multinomial.logpmf(counts[u], int(counts[u].sum()), r * exposure[u] / (r @ exposure[u])) for r in rate]
+        np.testing.assert_allclose(np.diff(ours[u]), np.diff(theirs), rtol=1e-9)
+
+
+def test_differences_equal_independent_poisson_counts_at_the_fitted_gain():
+    """Poisson counts at their best gain and a multinomial given the total are one likelihood (statsmodels)."""
+    families = pytest.importorskip("statsmodels.genmod.families")
+    counts, exposure, rate = some_units(1)
+    ours = log_likelihood(counts, exposure, rate)
+    for u in range(5):
+        gain = counts[u].sum() / (rate @ exposure[u])
+        theirs = [families.Poisson().loglike(counts[u], g * r * exposure[u]) for g, r in zip(gain, rate, strict=True)]
+        np.testing.assert_allclose(np.diff(ours[u]), np.diff(theirs), rtol=1e-9)
+
+
+def test_a_bin_never_observed_says_nothing():
+    counts, exposure, rate = some_units()
+    counts[:, 2], exposure[:, 2] = 0.0, 0.0
+    changed = rate.copy()
+    changed[:, 2] *= 7
+    np.testing.assert_allclose(log_likelihood(counts, exposure, rate), log_likelihood(counts, exposure, changed))
+
+
+def test_the_units_of_time_do_not_matter():
+    counts, exposure, rate = some_units()
+    ms = log_likelihood(counts, exposure * 1e3, rate)
+    np.testing.assert_allclose(np.diff(ms, axis=1), np.diff(log_likelihood(counts, exposure, rate), axis=1))
+
+
+def test_family_evidence_is_the_mean_likelihood_over_draws_by_brute_force():
+    counts, exposure, _ = some_units()
+    drawn = draw_families(in_and_ex(), TIMING, n_bins=8, n_draws=6)
+    log_lik, weight = log_likelihood(counts, exposure, drawn.rate), np.full(5, 0.5)
+    evidence = family_evidence(log_lik, weight, drawn)
+    for t, type_id in enumerate(drawn.types):
+        brute = np.log(np.mean(np.exp(0.5 * log_lik[:, drawn.rows(type_id)]), axis=1))
+        np.testing.assert_allclose(evidence[:, t], brute, rtol=1e-9)
+
+
+def test_two_types_without_freedom_have_the_posterior_of_bayes_rule():
+    """With one curve each, the posterior is known in closed form."""
+    drawn = draw_families(in_and_ex(), TIMING, n_bins=8, n_draws=3)
+    counts, exposure = np.array([[2.0, 1, 0, 1, 0, 0, 1, 0]]), np.array([[0.25] * 4 + [0.5] * 4])
+    log_lik = log_likelihood(counts, exposure, drawn.rate)
+    prior = type_log_prior(in_and_ex(), {"three-phase": 1.0}, 1e-12)
+    ours = probabilities(np.c_[family_evidence(log_lik, np.ones(1), drawn), [-1e9]], prior, 1.0)[0]
+    p_in, p_ex = (np.prod((drawn.rate[drawn.rows(t)][0] * exposure[0]
+                           / (drawn.rate[drawn.rows(t)][0] @ exposure[0])) ** counts[0]) for t in drawn.types)
+    assert ours[0] == pytest.approx(p_in / (p_in + p_ex), rel=1e-9)
+    assert ours.sum() == pytest.approx(1.0)
+
+
+def test_the_mean_over_draws_agrees_with_dense_quadrature_on_a_family_of_one_parameter():
+    """Importance sampling by a Latin hypercube against a fine grid over the only free parameter."""
+    from unitclass.classify.draws import draw_profiles
+    from unitclass.classify.templates import TypeLibrary, family_from_mapping
+
+    fixed = {"wiggle": [0, 0], "foreign": [0, 0], "harmonic": [0, 0], "step": [0.9, 0.9], "at": [0.5, 0.5]}
+    family = family_from_mapping({"id": "x", "form": "cosine", "ranges": {**fixed, "depth": [0.1, 0.9]}}, where="")
+    counts, exposure = np.array([[9.0, 8, 3, 2]]), np.ones((1, 4))
+    drawn = draw_families(TypeLibrary("one", (family,)), TIMING, n_bins=4, n_draws=400)
+    ours = family_evidence(log_likelihood(counts, exposure, drawn.rate), np.ones(1), drawn)[0, 0]
+    grid = []
+    for depth in np.linspace(0.1, 0.9, 801):
+        one = family_from_mapping({"id": "x", "form": "cosine", "ranges": {**fixed, "depth": [depth, depth]}}, where="")
+        grid.append(log_likelihood(counts, exposure, draw_profiles(one, TIMING, n_bins=4, n_draws=1))[0, 0])
+    assert ours == pytest.approx(np.log(np.mean(np.exp(grid))), abs=0.01)
+
+
+def test_evidence_saturates_at_the_concentration_and_bursty_trains_count_less():
+    n = np.array([10.0, 1e6])
+    effective = n * evidence_weight(n, np.ones(2), 300.0)
+    assert effective[0] == pytest.approx(10, rel=0.05)
+    assert effective[1] == pytest.approx(300, rel=0.01)
+    assert evidence_weight(n, np.full(2, 3.0), 300.0)[0] < 0.4
+
+
+def test_draw_shares_sum_to_one_and_favour_the_likelier_draw():
+    drawn = draw_families(in_and_ex(), TIMING, n_bins=8, n_draws=4)
+    share = draw_posterior(np.arange(4.0), 1.0, drawn, "ex")
+    assert share.sum() == pytest.approx(1.0)
+    assert share.argmax() == 3
