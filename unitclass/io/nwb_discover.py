@@ -72,8 +72,7 @@ def _visit(file: h5py.File, location: str, depth: int, seen: set[tuple[int, str]
         found[kind].append(f"/{location}")
         return
     for name in names:
-        if group.get(name, getclass=True, getlink=False) is h5py.Group:
-            _visit(file, f"{location}/{name}", depth + 1, seen, found)
+        _visit(file, f"{location}/{name}", depth + 1, seen, found)
 
 
 def _kind(group: h5py.Group, names: list[str], broken: list[BrokenLink]) -> str:
