@@ -43,7 +43,7 @@ class Terminal:
         """Send keys, by name or as they are."""
         for key in keys:
             os.write(self._fd, KEYS.get(key, key).encode())
-            self.settle(0.05)
+            self.settle(0.03)
 
     def settle(self, quiet_s: float = 0.15, longest_s: float = 5.0) -> None:
         """Read until nothing has come for a while."""
@@ -57,7 +57,7 @@ class Terminal:
         while words not in self.text:
             if time.monotonic() > end or (not self._read(0.1) and self.has_ended):
                 raise AssertionError(f"{words!r} never came; the screen shows\n{self.text}")
-        self.settle(0.05)
+        self.settle(0.04)
         return self.text
 
     def wait_until_ended(self, timeout_s: float = 10.0) -> int:

@@ -172,7 +172,7 @@ def test_an_idle_program_sends_nothing(tmp_path):
         wait(terminal)
         terminal.settle(0.5)
         before = len(terminal.raw)
-        terminal.settle(1.5)
+        terminal.settle(1.0)
         assert len(terminal.raw) == before
 
 
@@ -183,5 +183,5 @@ def test_a_step_sends_less_than_three_kibibytes(tmp_path):
         for _ in range(8):
             before = len(terminal.raw)
             terminal.press("Down")
-            terminal.settle(0.1)
+            terminal.settle(0.06)
             assert 0 < len(terminal.raw) - before <= 3 * 1024

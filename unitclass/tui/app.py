@@ -9,11 +9,12 @@ gc.disable()  # until the first unit is painted: collecting while importing cost
 os.environ.setdefault("TEXTUAL_FPS", "250")  # read once by the toolkit: a repaint waits 4 ms, not 16
 
 from collections.abc import Callable, Iterator, Mapping, Sequence  # noqa: E402
-from typing import Any, ClassVar  # noqa: E402
+from typing import Any  # noqa: E402
 
 from textual.app import App  # noqa: E402
 from textual.screen import Screen  # noqa: E402
 
+from unitclass.errors import UnitclassError  # noqa: E402
 from unitclass.review.session import ReviewSession  # noqa: E402
 from unitclass.settings import Settings  # noqa: E402
 from unitclass.tui.desk import Desk  # noqa: E402
@@ -55,7 +56,6 @@ class ReviewApp(App[int], inherit_bindings=False):
     """
 
     ENABLE_COMMAND_PALETTE = False
-    BINDINGS: ClassVar = []
 
     def __init__(self, session: ReviewSession, *, analyse: Callable[[str], Any] | None = None,
                  pending: Sequence[str] = (), relearn: Callable[..., Mapping[Any, Any]] | None = None,
@@ -68,7 +68,6 @@ class ReviewApp(App[int], inherit_bindings=False):
         self.animation_level = "none"
         review = (settings or Settings()).review
         self.keys = KeyMap.of(review.keys)
-        self.set_keymap(dict(self.keys.changed))
         self.desk = Desk(session, library)
         self.inks = Theme(look_of_terminal(), background_of_terminal(review.background))
         self._analyse, self._take, self._relearn, self._export = analyse, take, relearn, export
@@ -92,6 +91,8 @@ class ReviewApp(App[int], inherit_bindings=False):
         """Begin with what can wait until the first unit is on the screen."""
         gc.freeze()
         gc.enable()
+        if self.desk.library is not None:
+            self.screen_stack[0].repaint_soon()  # type: ignore[attr-defined]
         self._start_analysis()
 
     def on_unmount(self) -> None:
@@ -161,16 +162,20 @@ class ReviewApp(App[int], inherit_bindings=False):
                 screen.repaint_soon()  # type: ignore[attr-defined]
 
     def _take_analysis(self, done: Done) -> None:
-        session = self.desk.session
-        if done.problem:
-            session.add_failure(done.name, done.problem)
-        elif self._take is not None:
-            session.add_session(self._take(done.name, done.result))
-        else:
-            session.add_result(done.result)
+        session, problem = self.desk.session, done.problem
+        try:
+            if not problem and self._take is not None:
+                session.add_session(self._take(done.name, done.result))
+            elif not problem:
+                session.add_result(done.result)
+        except UnitclassError as error:
+            problem = str(error)
+        if problem:
+            session.add_failure(done.name, problem)
+            return
         self.desk.forget()
         for screen in self.screen_stack:
-            if not done.problem and hasattr(screen, "results_changed"):
+            if hasattr(screen, "results_changed"):
                 screen.results_changed(done.name)
 
     def _show_export(self, done: Done | None) -> None:

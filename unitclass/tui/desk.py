@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING, Any
 
 from unitclass.records import NOT_ONE_CELL, OTHER, SILENT, UNDETERMINED, NerveProfile, UnitResult
 from unitclass.review.entry import STATES, QueueEntry
+from unitclass.review.family_check import conflicts
 from unitclass.review.filters import Filter
 from unitclass.review.misfit import contradictions, misfit
 from unitclass.review.ordering import INFORMATIVE, SORTS
@@ -22,7 +23,7 @@ from unitclass.tui.renderables.verdict import Verdict
 from unitclass.tui.widgets.panels import UnitView
 
 if TYPE_CHECKING:
-    from unitclass.classify.templates import TypeLibrary
+    from unitclass.classify.templates import Family, TypeLibrary
 
 OWN_WORDS = {"viewed": "looking at it", "blind": "blind", "batch": "in a batch", "settled": "settled"}
 
@@ -51,6 +52,7 @@ class Desk:
         self.session = session
         self._read_library = library
         self._library: TypeLibrary | None = None
+        self._families: Mapping[str, Family] = {}
         self._conditions: dict[tuple[str, str], ConditionFacts] = {}
         self._counted: tuple[Sequence[QueueEntry], int, bool] = ((), 0, False)
 
@@ -90,7 +92,11 @@ class Desk:
             return None
         unit, condition = self.session.unit_result(entry), self.condition(entry)
         return UnitView(unit, condition.nerves, condition.ti_s, condition.te_s, family_shown(entry, unit),
-                        verdict_of(entry, unit, condition))
+                        self.verdict(entry, unit))
+
+    def verdict(self, entry: QueueEntry, unit: UnitResult) -> Verdict:
+        """Return the verdict on a unit in words."""
+        return verdict_of(entry, unit, self.condition(entry), self._families.get(entry.suggested_type))
 
     def condition(self, entry: QueueEntry) -> ConditionFacts:
         """Return what is needed of an entry's condition."""
@@ -232,6 +238,7 @@ class Desk:
         """Return the type library, read when first asked for; None when there is none."""
         if self._library is None and self._read_library is not None:
             self._library = self._read_library()
+            self._families = {family.id: family for family in self._library.families}
         return self._library
 
     def type_ids(self) -> list[str]:
@@ -242,11 +249,11 @@ class Desk:
 
     def type_options(self) -> list[Option]:
         """Return every type that can be named, with its words."""
-        families = {f.id: f for f in self.library.families} if self.library is not None else {}
+        names, families = self.type_ids(), self._families
         words = {OTHER: "modulated, but like none of these", NOT_ONE_CELL: "two cells in one train, or an artefact",
                  SILENT: "hardly fires here", UNDETERMINED: "too little data to say"}
         options = []
-        for name in self.type_ids():
+        for name in names:
             family = families.get(name)
             detail = family.words if family is not None else words.get(name, "")
             options.append(Option(name, name, detail, " ".join(family.also) if family is not None else ""))
@@ -263,8 +270,9 @@ def family_shown(entry: QueueEntry, unit: UnitResult) -> str:
     return "" if entry.is_hidden or not unit.suggestion.fitted_rate_hz.size else unit.suggestion.type
 
 
-def verdict_of(entry: QueueEntry, unit: UnitResult, condition: ConditionFacts) -> Verdict:
-    """Return the verdict on a unit in words."""
+def verdict_of(entry: QueueEntry, unit: UnitResult, condition: ConditionFacts,
+               family: Family | None = None) -> Verdict:
+    """Return the verdict on a unit in words; `family` is that of the suggested type, where it is known."""
     suggestion = unit.suggestion
     verdict = Verdict(entry.suggested_type, entry.probability, entry.ranked, flags=flags_of(entry),
                       decided=standing_words(entry), change=entry.change, note=entry.note,
@@ -273,8 +281,8 @@ def verdict_of(entry: QueueEntry, unit: UnitResult, condition: ConditionFacts) -
         return verdict
     worst = misfit(unit)
     fit = "" if worst is None or worst.is_contradiction else worst.words(suggestion.type)
-    return replace(verdict, against=contradictions(unit), fit=fit, rule=rule_words(unit),
-                   reasons=suggestion.reasons)
+    against = contradictions(unit) + (conflicts(unit, family) if family is not None else ())
+    return replace(verdict, against=against, fit=fit, rule=rule_words(unit), reasons=suggestion.reasons)
 
 
 def rule_words(unit: UnitResult) -> str:

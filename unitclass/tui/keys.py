@@ -20,6 +20,10 @@ LISTS = (POPULATION, BATCH, DISCUSS)
 OTHERS = (POPULATION, CONDITIONS, CYCLES, TYPES, HELP, BATCH, DISCUSS, FINISH, ACCOUNT)
 
 
+Action = tuple[str, tuple[int, ...]]
+"""A screen's method and its arguments."""
+
+
 @dataclass(frozen=True)
 class Key:
     """One action on one key.
@@ -38,10 +42,10 @@ class Key:
     pair: str = ""
 
     @property
-    def method(self) -> str:
-        """Return the action as the toolkit calls it."""
+    def action(self) -> Action:
+        """Return the name of the screen's method, without "action_", and its arguments."""
         stem, _, number = self.id.partition("-")
-        return f"{stem}({number})" if number else stem
+        return stem, (int(number),) if number else ()
 
 
 DECLARED: tuple[Key, ...] = (
@@ -109,6 +113,7 @@ class KeyMap:
     """The keys in force: what is declared, with the user's own keys laid over."""
 
     changed: Mapping[str, str] = field(default_factory=dict)
+    _by_screen: dict[str, Mapping[str, Action]] = field(default_factory=dict, repr=False, compare=False)
 
     @staticmethod
     def of(wanted: Mapping[str, str]) -> KeyMap:
@@ -135,6 +140,15 @@ class KeyMap:
     def shown(self, action: str) -> str:
         """Return the key of an action as a person reads it."""
         return readable(self.key(action))
+
+    def action(self, screen: str, key: str) -> Action | None:
+        """Return what a key does on a screen; None for nothing."""
+        return self._actions(screen).get(key)
+
+    def _actions(self, screen: str) -> Mapping[str, Action]:
+        if screen not in self._by_screen:
+            self._by_screen[screen] = {key: d.action for d in self.on(screen) for key in self.key(d.id).split(",")}
+        return self._by_screen[screen]
 
     def on(self, screen: str) -> Iterator[Key]:
         """Yield what is declared for a screen, in order."""

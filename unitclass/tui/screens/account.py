@@ -2,16 +2,13 @@
 
 from __future__ import annotations
 
-from typing import ClassVar
-
 from unitclass.review.unit_facts import facts
-from unitclass.tui.desk import Desk, verdict_of
+from unitclass.tui.desk import Desk
 from unitclass.tui.keys import ACCOUNT, KeyMap
 from unitclass.tui.renderables.listing import scrolled
 from unitclass.tui.renderables.sheet import Sheet
 from unitclass.tui.renderables.verdict import Lines, verdict_lines
 from unitclass.tui.renderables.words import shortened
-from unitclass.tui.screens.base import bindings_of
 from unitclass.tui.screens.page import PageScreen
 from unitclass.tui.theme import Theme
 
@@ -20,7 +17,6 @@ class AccountScreen(PageScreen):
     """The whole account of the current unit."""
 
     KEYS = ACCOUNT
-    BINDINGS: ClassVar = bindings_of(ACCOUNT)
 
     def __init__(self, desk: Desk, theme: Theme, keys: KeyMap) -> None:
         super().__init__(desk, theme, keys)
@@ -42,7 +38,7 @@ class AccountScreen(PageScreen):
         if entry is None:
             return []
         unit, look = self.desk.session.unit_result(entry), self.inks.look
-        lines = verdict_lines(verdict_of(entry, unit, self.desk.condition(entry)), width, look)
+        lines = verdict_lines(self.desk.verdict(entry, unit), width, look)
         if unit.suggestion.evidence:
             lines += [("", ""), ("evidence for the first type over the second, in log units", "title")]
             lines += [(f"  {name:<28} {value:+.1f}", "") for name, value in unit.suggestion.evidence.items()]

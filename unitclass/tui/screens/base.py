@@ -7,11 +7,10 @@ from dataclasses import dataclass, field, replace
 from typing import ClassVar, Protocol
 
 from textual import events
-from textual.binding import Binding
 from textual.screen import Screen
 
 from unitclass.tui.choice import Option, matching
-from unitclass.tui.keys import DECLARED, KeyMap
+from unitclass.tui.keys import KeyMap
 from unitclass.tui.renderables.choice_rows import choice_rows
 from unitclass.tui.renderables.sheet import Sheet
 from unitclass.tui.theme import Theme
@@ -49,12 +48,6 @@ class Question:
     def found(self) -> list[Option]:
         """Return the options that the typed letters find."""
         return matching(self.options, self.entry.text)
-
-
-def bindings_of(screen: str) -> list[Binding | tuple[str, str] | tuple[str, str, str]]:
-    """Return the bindings of a screen, made from the one declaration of keys."""
-    return [Binding(d.key, d.method, d.footer or d.help, show=False, id=d.id)
-            for d in DECLARED if screen in d.screens]
 
 
 class BaseScreen(Screen[str]):
@@ -102,12 +95,20 @@ class BaseScreen(Screen[str]):
         self._show_question()
 
     def on_key(self, event: events.Key) -> None:
-        """While something is being asked, keys go to the entry and nowhere else."""
-        if self._question is None:
-            return
+        """Act on a key at once, before the next one is looked at.
+
+        While something is being asked, keys go to the entry. The toolkit's own way, by bindings,
+        acts a few messages later: of "t" and "p" in one packet, the "p" would be a key of its own.
+        """
         event.stop()
         event.prevent_default()
-        self._answer(event.key, event.character)
+        if self.app.screen is not self:  # a key before this one has opened another screen
+            self.app.screen.post_message(events.Key(event.key, event.character))
+        elif self._question is not None:
+            self._answer(event.key, event.character)
+        elif action := self.keys.action(self.KEYS, event.key):
+            name, argument = action
+            getattr(self, f"action_{name}")(*argument)
 
     def on_paste(self, event: events.Paste) -> None:
         """Paste into the entry; anywhere else a paste is not a row of keys."""

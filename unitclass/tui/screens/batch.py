@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from typing import ClassVar
-
 from unitclass.errors import UnitclassError
 from unitclass.review.entry import EntryKey, QueueEntry
 from unitclass.tui.desk import Desk
@@ -13,7 +11,6 @@ from unitclass.tui.renderables.bars import in_words
 from unitclass.tui.renderables.listing import table_rows
 from unitclass.tui.renderables.queue_rows import page_start
 from unitclass.tui.renderables.sheet import Sheet
-from unitclass.tui.screens.base import bindings_of
 from unitclass.tui.screens.page import PageScreen
 from unitclass.tui.theme import Theme
 
@@ -22,7 +19,6 @@ class BatchScreen(PageScreen):
     """The sure suggestions in view, before they are accepted together."""
 
     KEYS = BATCH
-    BINDINGS: ClassVar = bindings_of(BATCH)
 
     def __init__(self, desk: Desk, theme: Theme, keys: KeyMap) -> None:
         super().__init__(desk, theme, keys)

@@ -2,15 +2,12 @@
 
 from __future__ import annotations
 
-from typing import ClassVar
-
 from unitclass.review.entry import QueueEntry
 from unitclass.tui.desk import Desk, family_shown, standing_words
 from unitclass.tui.keys import CONDITIONS, KeyMap
 from unitclass.tui.renderables.bars import in_words
 from unitclass.tui.renderables.condition_rows import ConditionView, condition_rows
 from unitclass.tui.renderables.sheet import Sheet
-from unitclass.tui.screens.base import bindings_of
 from unitclass.tui.screens.page import PageScreen
 from unitclass.tui.theme import Theme
 
@@ -19,7 +16,6 @@ class ConditionsScreen(PageScreen):
     """The current unit in all conditions of its file."""
 
     KEYS = CONDITIONS
-    BINDINGS: ClassVar = bindings_of(CONDITIONS)
 
     def __init__(self, desk: Desk, theme: Theme, keys: KeyMap) -> None:
         super().__init__(desk, theme, keys)

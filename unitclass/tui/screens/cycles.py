@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from typing import ClassVar
-
 from unitclass.errors import UnitclassError
 from unitclass.records import ConditionResult
 from unitclass.review.cycle_draft import CycleDraft
@@ -16,7 +14,6 @@ from unitclass.tui.renderables.cycle_rows import GUTTER, CyclesView, cycle_rows,
 from unitclass.tui.renderables.sheet import Sheet
 from unitclass.tui.renderables.trace import Burst, TraceWindow
 from unitclass.tui.renderables.unit_picture import unit_picture
-from unitclass.tui.screens.base import bindings_of
 from unitclass.tui.screens.page import PageScreen
 from unitclass.tui.theme import Theme
 
@@ -27,7 +24,6 @@ class CyclesScreen(PageScreen):
     """The nerve of the current unit's condition, and changes to its cycles."""
 
     KEYS = CYCLES
-    BINDINGS: ClassVar = bindings_of(CYCLES)
 
     def __init__(self, desk: Desk, theme: Theme, keys: KeyMap) -> None:
         super().__init__(desk, theme, keys)

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from typing import ClassVar
-
 from unitclass.errors import UnitclassError
 from unitclass.records import Decision
 from unitclass.review.entry import EntryKey
@@ -11,7 +9,6 @@ from unitclass.tui.desk import Desk
 from unitclass.tui.keys import DISCUSS, KeyMap
 from unitclass.tui.renderables.listing import table_rows
 from unitclass.tui.renderables.sheet import Sheet
-from unitclass.tui.screens.base import bindings_of
 from unitclass.tui.screens.page import PageScreen
 from unitclass.tui.theme import Theme
 
@@ -20,7 +17,6 @@ class DiscussScreen(PageScreen):
     """The list of units to discuss."""
 
     KEYS = DISCUSS
-    BINDINGS: ClassVar = bindings_of(DISCUSS)
 
     def __init__(self, desk: Desk, theme: Theme, keys: KeyMap) -> None:
         super().__init__(desk, theme, keys)

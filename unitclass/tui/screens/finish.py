@@ -2,14 +2,11 @@
 
 from __future__ import annotations
 
-from typing import ClassVar
-
 from unitclass.tui.desk import Desk, told
 from unitclass.tui.keys import FINISH, KeyMap
 from unitclass.tui.renderables.listing import scrolled
 from unitclass.tui.renderables.sheet import Sheet
 from unitclass.tui.renderables.words import wrapped
-from unitclass.tui.screens.base import bindings_of
 from unitclass.tui.screens.page import PageScreen
 from unitclass.tui.theme import Theme
 from unitclass.tui.workers import Done
@@ -21,7 +18,6 @@ class FinishScreen(PageScreen):
     """Where a review ends."""
 
     KEYS = FINISH
-    BINDINGS: ClassVar = bindings_of(FINISH)
 
     def __init__(self, desk: Desk, theme: Theme, keys: KeyMap) -> None:
         super().__init__(desk, theme, keys)

@@ -2,15 +2,12 @@
 
 from __future__ import annotations
 
-from typing import ClassVar
-
 from unitclass.tui.desk import Desk
 from unitclass.tui.keys import HELP, REVIEW, KeyMap
 from unitclass.tui.renderables.listing import scrolled
 from unitclass.tui.renderables.queue_rows import MARKS
 from unitclass.tui.renderables.sheet import Sheet
 from unitclass.tui.renderables.words import wrapped
-from unitclass.tui.screens.base import bindings_of
 from unitclass.tui.screens.page import PageScreen
 from unitclass.tui.theme import Theme
 
@@ -23,7 +20,6 @@ class HelpScreen(PageScreen):
     """Help for the screen it was called from."""
 
     KEYS = HELP
-    BINDINGS: ClassVar = bindings_of(HELP)
 
     def __init__(self, desk: Desk, theme: Theme, keys: KeyMap, *, about: str = REVIEW) -> None:
         super().__init__(desk, theme, keys)

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from typing import ClassVar
-
 from unitclass.review.unit_facts import by_phase, grouped
 from unitclass.tui.desk import Desk
 from unitclass.tui.keys import POPULATION, KeyMap
@@ -11,7 +9,6 @@ from unitclass.tui.messages import Picked
 from unitclass.tui.renderables.population_rows import HeatEntry, population_lines, population_rows
 from unitclass.tui.renderables.queue_rows import page_start, type_of
 from unitclass.tui.renderables.sheet import Sheet
-from unitclass.tui.screens.base import bindings_of
 from unitclass.tui.screens.page import PageScreen
 from unitclass.tui.theme import Theme
 
@@ -22,7 +19,6 @@ class PopulationScreen(PageScreen):
     """All units of the queue at a glance."""
 
     KEYS = POPULATION
-    BINDINGS: ClassVar = bindings_of(POPULATION)
 
     def __init__(self, desk: Desk, theme: Theme, keys: KeyMap) -> None:
         super().__init__(desk, theme, keys)

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from typing import ClassVar
 
 from textual import events
 from textual.app import ComposeResult
@@ -11,8 +10,8 @@ from textual.app import ComposeResult
 from unitclass.errors import UnitclassError
 from unitclass.tui.desk import Desk
 from unitclass.tui.keys import REVIEW, KeyMap
-from unitclass.tui.messages import Picked
-from unitclass.tui.screens.base import BaseScreen, Coverable, bindings_of
+from unitclass.tui.messages import Picked, Stepped
+from unitclass.tui.screens.base import BaseScreen, Coverable
 from unitclass.tui.theme import Theme
 from unitclass.tui.widgets.head import Head
 from unitclass.tui.widgets.panels import QueueColumn, UnitPage, VerdictPanel
@@ -27,7 +26,6 @@ class ReviewScreen(BaseScreen):
     """Where nearly all the work is done."""
 
     KEYS = REVIEW
-    BINDINGS: ClassVar = bindings_of(REVIEW)
     DEFAULT_CSS = """
     ReviewScreen QueueColumn { width: 20; display: none; }
     ReviewScreen VerdictPanel { width: 26; }
@@ -140,6 +138,11 @@ class ReviewScreen(BaseScreen):
         """Go to the unit that was clicked."""
         message.stop()
         self._go(message.index)
+
+    def on_stepped(self, message: Stepped) -> None:
+        """Step with the wheel."""
+        message.stop()
+        self._go(self.desk.here + message.steps)
 
     # ------------------------------------------------------------------------- deciding
 

@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from typing import ClassVar
-
 from unitclass.review.entry import QueueEntry
 from unitclass.review.unit_facts import family_band
 from unitclass.tui.desk import Desk
@@ -13,7 +11,6 @@ from unitclass.tui.renderables.family_picture import family_picture
 from unitclass.tui.renderables.queue_rows import type_of
 from unitclass.tui.renderables.sheet import Sheet
 from unitclass.tui.renderables.words import shortened, wrapped
-from unitclass.tui.screens.base import bindings_of
 from unitclass.tui.screens.page import PageScreen
 from unitclass.tui.theme import Theme
 
@@ -25,7 +22,6 @@ class TypesScreen(PageScreen):
     """The families behind the suggestions."""
 
     KEYS = TYPES
-    BINDINGS: ClassVar = bindings_of(TYPES)
 
     def __init__(self, desk: Desk, theme: Theme, keys: KeyMap) -> None:
         super().__init__(desk, theme, keys)

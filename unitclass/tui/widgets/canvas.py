@@ -10,6 +10,7 @@ from textual.geometry import Region
 from textual.strip import Strip
 from textual.widget import Widget
 
+from unitclass.tui.messages import Stepped
 from unitclass.tui.renderables.sheet import Sheet
 from unitclass.tui.theme import Theme
 
@@ -62,6 +63,16 @@ class Canvas(Widget):
         style = self.inks.style
         segments = [Segment(text, style(ink)) for text, ink in self.sheet.runs(y) if text]
         return Strip(segments, self.sheet.width)
+
+    def on_mouse_scroll_down(self, event: events.MouseScrollDown) -> None:
+        """Ask for the next unit."""
+        event.stop()
+        self.post_message(Stepped(1))
+
+    def on_mouse_scroll_up(self, event: events.MouseScrollUp) -> None:
+        """Ask for the unit before."""
+        event.stop()
+        self.post_message(Stepped(-1))
 
     @property
     def allow_select(self) -> bool:

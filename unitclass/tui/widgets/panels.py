@@ -81,6 +81,7 @@ class UnitPage(Widget):
         self.words = ""
         self.labels = Part(theme, self)
         self.picture = Part(theme, self, self.labels)
+        self._drawn_view: UnitView | None = None
         self._drawn: tuple[object, ...] = ()
         self._sheet = Sheet(0, 0, theme.look)
 
@@ -106,9 +107,10 @@ class UnitPage(Widget):
     def sheet(self, height: int) -> Sheet:
         """Return the whole, drawn once for both parts."""
         width = self.labels.size.width + self.picture.size.width
-        wanted = (self.view, self.words, width, height)
-        if wanted != self._drawn:
-            self._drawn, self._sheet = wanted, self._draw(width, height)
+        wanted = (self.words, width, height)
+        if self.view is not self._drawn_view or wanted != self._drawn:
+            self._drawn_view, self._drawn = self.view, wanted
+            self._sheet = self._draw(width, height)
         return self._sheet
 
     def _draw(self, width: int, height: int) -> Sheet:
