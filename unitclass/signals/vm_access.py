@@ -6,44 +6,59 @@ from dataclasses import dataclass
 from itertools import pairwise
 
 import numpy as np
+from numpy.lib.stride_tricks import sliding_window_view
 
 from unitclass.records import Exclusion, FloatArray
 from unitclass.signals.vm_looks import Seconds
 from unitclass.signals.vm_stream import runs_of
 
+LEAST_S = 20
+SIDE = 8
+"""A moment is judged by so many pieces (of a second) before it against as many after it."""
+
+LEVEL_MV, NOISE_RATIO, SIZE_RATIO = 10.0, 2.0, 1.6
+"""Two such differences at once are a changed access; one alone is a bias current, a state, a rhythm."""
+
+ALONE_NOISE_RATIO, ALONE_SIZE_RATIO = 4.0, 2.5
+LEAST_NOISE_MV = 0.02
+
 
 @dataclass(frozen=True)
 class _Look:
-    """Level, noise and spike size of one side of a moment; NaN where not told."""
+    """Level, noise and spike size, any one shape; NaN where not told."""
 
-    level_mv: float
-    noise_mv: float
-    size_mv: float
+    level_mv: FloatArray
+    noise_mv: FloatArray
+    size_mv: FloatArray
 
 
 def access_changes(seconds: Seconds, spike_s: FloatArray, size_mv: FloatArray,
                    known: list[Exclusion]) -> list[Exclusion]:
     """Find stretches recorded through a changed electrode: two of level, noise and spike size jump at once.
 
-    The longest stretch between jumps is taken for the good one.
+    The longest stretch between jumps is taken for the good one, weighed by its spikes' size and its noise.
+
+    Parameters
+    ----------
+    seconds : Seconds
+        In time order.
+    spike_s, size_mv : ndarray, shape (n_spikes,)
+        Spikes, ascending, and their size.
+    known : list of Exclusion
+        Time that is left out already.
     """
-    free = ~np.any([(seconds.start_s < p.stop_s) & (seconds.stop_s > p.start_s) for p in known], axis=0) \
-        if known else np.ones(seconds.start_s.size, bool)
-    rows = np.flatnonzero(free)
-    if rows.size < 20:
+    rows = np.flatnonzero(seconds.free_of(known))
+    if rows.size < LEAST_S:
         return []
-    sizes = _sizes(seconds, spike_s, size_mv)
-    edges = [0, *_jumps(seconds, sizes, rows), rows.size]
-    parts = [rows[a:b] for a, b in pairwise(edges)]
-    good = max(parts, key=len)
-    usual = _look(seconds, sizes, good)
-    problems = []
-    for part in parts:
-        words = _difference(usual, _look(seconds, sizes, part))
-        if part is not good and words:
-            problems.append(Exclusion(float(seconds.start_s[part[0]]), float(seconds.stop_s[part[-1]]),
-                                      f"access changed: {words}"))
-    return problems
+    pieces = _Look(seconds.level_mv[rows], np.maximum(seconds.noise_mv[rows], LEAST_NOISE_MV),
+                   _sizes(seconds, spike_s, size_mv)[rows])
+    edges = [0, *_jumps(pieces), rows.size]
+    parts = [_median_look(pieces, a, b) for a, b in pairwise(edges)]
+    length = [b - a for a, b in pairwise(edges)]
+    usual = parts[int(np.argmax([n * _worth(part, parts) for n, part in zip(length, parts, strict=True)]))]
+    return [Exclusion(float(seconds.start_s[rows[a]]), float(seconds.stop_s[rows[b - 1]]),
+                      f"access changed: {_words(usual, part)}")
+            for (a, b), part in zip(pairwise(edges), parts, strict=True) if _strength(usual, part) > 0.0]
 
 
 def _sizes(seconds: Seconds, spike_s: FloatArray, size_mv: FloatArray) -> FloatArray:
@@ -54,50 +69,66 @@ def _sizes(seconds: Seconds, spike_s: FloatArray, size_mv: FloatArray) -> FloatA
     return out
 
 
-def _look(seconds: Seconds, sizes: FloatArray, rows: np.ndarray) -> _Look:
-    told = sizes[rows][np.isfinite(sizes[rows])]
-    return _Look(float(np.median(seconds.level_mv[rows])), float(np.median(seconds.noise_mv[rows])),
-                 float(np.median(told)) if told.size >= 2 else float("nan"))
-
-
-def _jumps(seconds: Seconds, sizes: FloatArray, rows: np.ndarray, *, side: int = 8) -> list[int]:
-    """Return the positions in `rows` at which the looks before and after differ most."""
+def _jumps(pieces: _Look) -> list[int]:
+    """Return the positions at which the pieces before and after differ most."""
+    sides = [_sliding_medians(of) for of in (pieces.level_mv, pieces.noise_mv, pieces.size_mv)]
+    strength = _strength(_Look(*(before for before, _ in sides)), _Look(*(after for _, after in sides)))
+    strength[:4] = strength[-4:] = 0.0
     found: list[int] = []
-    strength = np.zeros(rows.size)
-    for i in range(4, rows.size - 4):
-        before = _look(seconds, sizes, rows[max(0, i - side) : i])
-        after = _look(seconds, sizes, rows[i : i + side])
-        strength[i] = _strength(before, after)
     for a, b in runs_of(strength > 0.0):
-        found.append(a + int(np.argmax(strength[a:b])))
+        found.append(a + int(np.median(np.flatnonzero(strength[a:b] >= 0.9 * strength[a:b].max()))))
     return found
 
 
-def _ratios(one: _Look, other: _Look) -> tuple[float, float, float]:
-    """Return |level difference|, noise ratio and size ratio, both at least 1."""
-    noise = max(other.noise_mv, 0.02) / max(one.noise_mv, 0.02)
-    size = other.size_mv / one.size_mv if one.size_mv > 0 and other.size_mv > 0 else 1.0
-    return abs(other.level_mv - one.level_mv), max(noise, 1 / noise), max(size, 1 / size)
+def _sliding_medians(values: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Return the medians of the SIDE values before each position, and of those from it on."""
+    windows = sliding_window_view(np.pad(values, SIDE, mode="edge"), SIDE)
+    middle = _median(windows)
+    return middle[: values.size], middle[SIDE : SIDE + values.size]
 
 
-def _strength(one: _Look, other: _Look) -> float:
+def _median(values: FloatArray) -> FloatArray:
+    """Return the median of what is told along the last axis; NaN where fewer than two are."""
+    n_told = np.isfinite(values).sum(axis=-1)
+    ordered = np.sort(values, axis=-1)  # NaN comes last
+    low = np.take_along_axis(ordered, (np.maximum(n_told - 1, 0) // 2)[..., None], axis=-1)[..., 0]
+    high = np.take_along_axis(ordered, np.minimum(n_told // 2, values.shape[-1] - 1)[..., None], axis=-1)[..., 0]
+    return np.where(n_told >= 2, 0.5 * (low + np.where(n_told % 2, low, high)), np.nan)
+
+
+def _median_look(pieces: _Look, first: int, stop: int) -> _Look:
+    return _Look(*(_median(of[first:stop]) for of in (pieces.level_mv, pieces.noise_mv, pieces.size_mv)))
+
+
+def _worth(one: _Look, others: list[_Look]) -> float:
+    """Return how good a stretch looks, at most 1: large spikes and little noise."""
+    largest = np.fmax.reduce([o.size_mv for o in others])
+    size = float(one.size_mv / largest) if one.size_mv > 0 else 0.5
+    return size * float(min(o.noise_mv for o in others) / one.noise_mv)
+
+
+def _ratios(one: _Look, other: _Look) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Return |level difference|, noise ratio and size ratio, both at least 1 (1 where not told)."""
+    noise = np.abs(np.log2(other.noise_mv / one.noise_mv))
+    size = np.abs(np.log2(other.size_mv / one.size_mv))
+    return np.abs(other.level_mv - one.level_mv), 2.0 ** np.nan_to_num(noise), 2.0 ** np.nan_to_num(size)
+
+
+def _strength(one: _Look, other: _Look) -> FloatArray:
     """Return 0 where access is unchanged, else how clearly it changed."""
     level, noise, size = _ratios(one, other)
-    votes = (level >= 10.0) + (noise >= 2.0) + (size >= 1.6)
-    if votes < 2 and noise < 4.0 and size < 2.5:
-        return 0.0
-    return float(level / 10.0 + np.log2(noise) + np.log2(size) / np.log2(1.6))
+    votes = (level >= LEVEL_MV).astype(int) + (noise >= NOISE_RATIO) + (size >= SIZE_RATIO)
+    changed = (votes >= 2) | (noise >= ALONE_NOISE_RATIO) | (size >= ALONE_SIZE_RATIO)
+    return np.where(changed, level / LEVEL_MV + np.log2(noise) + np.log2(size) / np.log2(SIZE_RATIO), 0.0)
 
 
-def _difference(usual: _Look, part: _Look) -> str:
-    if _strength(usual, part) == 0.0:
-        return ""
+def _words(usual: _Look, part: _Look) -> str:
     level, noise, size = _ratios(usual, part)
     words = []
-    if level >= 5.0:
-        words.append(f"level {part.level_mv - usual.level_mv:+.0f} mV")
+    if level >= 0.5 * LEVEL_MV:
+        words.append(f"level {float(part.level_mv - usual.level_mv):+.0f} mV")
     if noise >= 1.5:
-        words.append(f"noise x {max(part.noise_mv, 0.02) / max(usual.noise_mv, 0.02):.1f}")
+        words.append(f"noise x {float(part.noise_mv / usual.noise_mv):.1f}")
     if size >= 1.3:
-        words.append(f"spikes x {part.size_mv / usual.size_mv:.1f}")
+        words.append(f"spikes x {float(part.size_mv / usual.size_mv):.1f}")
     return ", ".join(words)

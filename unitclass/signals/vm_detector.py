@@ -113,6 +113,7 @@ class Events:
     threshold_mv: FloatArray
     height_mv: FloatArray
     half_width_ms: FloatArray
+    base_width_ms: FloatArray
     max_dvdt_mv_ms: FloatArray
     ahp_mv: FloatArray
 
@@ -180,7 +181,8 @@ def _measured_events(block: Block, coarse: FloatArray, score: FloatArray, peaks:
     return Events(time_s=block.start_s + at / lens.rate_hz, size_mv=score[peaks], z=score[peaks] / noise,
                   bump_mv=_bump_near(coarse, peaks, detector), threshold_mv=found.threshold_mv,
                   height_mv=found.height_mv, half_width_ms=found.half_width_ms,
-                  max_dvdt_mv_ms=found.max_dvdt_mv_ms, ahp_mv=found.threshold_mv - trough)
+                  base_width_ms=found.base_width_ms, max_dvdt_mv_ms=found.max_dvdt_mv_ms,
+                  ahp_mv=found.threshold_mv - trough)
 
 
 def score_vertex(score: FloatArray, peaks: IntArray) -> FloatArray:

@@ -56,12 +56,12 @@ def sort_events(events: Events, detector: Detector, settings: MembraneSettings, 
     clear = shaped & (events.z > 4.5)
     dominant, split = dominant_size(events.size_mv[clear])
     if not _is_tall_enough(events, clear, split, settings):
-        return _no_spikes(events, clear, dominant)
+        return _no_spikes(events, clear, dominant, too_brief(events, settings, detector))
     least_z = threshold_z(float(np.median(events.z[clear & (events.size_mv >= split)])),
                           float(np.sum(clear) / max(observed_s, 1e-9)))
     typical = clear & (events.size_mv >= split)
     width = float(np.median(events.half_width_ms[typical]))
-    usual = ~too_brief(events, 0.45 * width, detector) & (events.half_width_ms <= 3.5 * width + 0.5)
+    usual = ~too_brief(events, settings, detector, usual_ms=width) & (events.half_width_ms <= 3.5 * width + 0.5)
     passing = shaped & usual & (events.z >= least_z) & (events.height_mv >= settings.min_height_mv)
     is_spike, jumps = _follow(events, passing, dominant, split / dominant)
     is_spike = _refractory(events, is_spike, settings.refractory_ms)
@@ -69,7 +69,7 @@ def sort_events(events: Events, detector: Detector, settings: MembraneSettings, 
     spikelet &= events.half_width_ms >= 0.6 * width
     spikelet &= ~_near(events.time_s, events.time_s[is_spike], 0.004)
     n_artefacts = int(np.sum((events.z > 6.0) & ~is_spike & (events.height_mv > 0.4 * dominant)
-                             & too_brief(events, max(settings.min_width_ms, 0.45 * width), detector)))
+                             & too_brief(events, settings, detector, usual_ms=width)))
     return Sorted(is_spike, spikelet, n_artefacts, dominant, least_z, jumps)
 
 
@@ -77,7 +77,7 @@ def spike_shaped(events: Events, detector: Detector, settings: MembraneSettings)
     """Return which events rise steeply, last long enough, and fall again on both sides."""
     slope = settings.min_dvdt_mv_ms or detector.least_slope_mv_ms(events.size_mv)
     return ((events.max_dvdt_mv_ms >= slope) & (events.height_mv > 0.0) & _stands_out(events)
-            & ~too_brief(events, settings.min_width_ms, detector)
+            & ~too_brief(events, settings, detector)
             & (events.half_width_ms <= max(6.0, 4.0 * detector.lens.width_ms)))
 
 
@@ -91,13 +91,22 @@ def _stands_out(events: Events) -> BoolArray:
     return np.asarray(events.bump_mv >= 0.35 * usual * events.size_mv - 2.0 * noise)
 
 
-def too_brief(events: Events, least_ms: float, detector: Detector) -> BoolArray:
-    """Return which events are pops: briefer than `least_ms`.
+def too_brief(events: Events, settings: MembraneSettings, detector: Detector, *,
+              usual_ms: float = 0.0) -> BoolArray:
+    """Return which events are pops: they rise and fall within `min_width_ms`, or far faster than the cell's.
 
-    Noise can make a small spike look brief. An event below twelve deviations of the noise is a pop only
-    if its score, which averages over the whole shape, is small for its height too.
+    A single sample cannot look briefer than 1.6 of its intervals, and smoothing lengthens it. Noise can
+    make a small spike look brief: an event below twelve deviations of the noise is a pop only if its
+    score, which averages over the whole shape, is small for its height too.
+
+    Parameters
+    ----------
+    usual_ms : float
+        Usual half-width of the cell's spikes; 0 while it is not known.
     """
-    brief = events.half_width_ms < least_ms
+    sample_ms = 1e3 / detector.lens.rate_hz
+    least_ms = max(settings.min_width_ms, 1.7 * sample_ms) + 0.6 * (detector.lens.smooth_samples - 1) * sample_ms
+    brief = (events.base_width_ms < least_ms) | (events.half_width_ms < 0.45 * usual_ms)
     longer = ~brief & (events.z > 4.5) & (events.height_mv > 0.0)
     if longer.sum() < 5 or not brief.any():
         return np.asarray(brief)
@@ -171,9 +180,10 @@ def _is_tall_enough(events: Events, clear: BoolArray, split: float, settings: Me
     return bool(tall.size and np.median(tall) >= (settings.min_height_mv or LEAST_HEIGHT_MV))
 
 
-def _no_spikes(events: Events, clear: BoolArray, dominant: float) -> Sorted:
+def _no_spikes(events: Events, clear: BoolArray, dominant: float, brief: BoolArray) -> Sorted:
     none = np.zeros(events.time_s.size, bool)
-    return Sorted(none, clear & (events.z > 5.5) & (events.height_mv > 2.0), 0, dominant, 5.5)
+    n_artefacts = int(np.sum(brief & (events.z > 6.0) & (events.height_mv > LEAST_HEIGHT_MV)))
+    return Sorted(none, clear & (events.z > 5.5) & (events.height_mv > 2.0), n_artefacts, dominant, 5.5)
 
 
 def _follow(events: Events, passing: BoolArray, dominant: float, least: float) -> tuple[BoolArray, tuple[float, ...]]:

@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, fields
 from itertools import pairwise
 
 import numpy as np
 
-from unitclass.records import FloatArray
+from unitclass.records import BoolArray, Exclusion, FloatArray
 from unitclass.signals.vm_bumps import Grid
 from unitclass.signals.vm_stream import Block, runs_of
 
@@ -23,6 +23,13 @@ class Seconds:
     stop_s: FloatArray
     level_mv: FloatArray
     noise_mv: FloatArray
+
+    def free_of(self, problems: Sequence[Exclusion]) -> BoolArray:
+        """Return which pieces no problem touches, shape (n_pieces,)."""
+        free = np.ones(self.start_s.size, bool)
+        for p in problems:
+            free &= (self.start_s >= p.stop_s) | (self.stop_s <= p.start_s)
+        return free
 
     @staticmethod
     def joined(parts: Iterable[Seconds]) -> Seconds:
@@ -52,7 +59,7 @@ class BlockLook:
     span_s: tuple[float, float]
     low_mv: float
     high_mv: float
-    n_at_high: int
+    n_flat: int
 
 
 def look_at(block: Block, coarse: FloatArray, grid: Grid) -> BlockLook:
@@ -66,7 +73,13 @@ def look_at(block: Block, coarse: FloatArray, grid: Grid) -> BlockLook:
     high = float(own.max())
     return BlockLook(_seconds(own, start_s, stop_s, bin_s), tuple(_stuck_runs(own, start_s, bin_s)),
                      block.missing_s, (start_s, stop_s), float(own.min()), high,
-                     int(np.count_nonzero(own >= high - 1e-9 * (1.0 + abs(high)))))
+                     _flat_tops(own, high))
+
+
+def _flat_tops(own: FloatArray, high: float) -> int:
+    """Count the bins at the highest value whose next bin is there too."""
+    at_high = own >= high - 1e-9 * (1.0 + abs(high))
+    return int(np.count_nonzero(at_high[1:] & at_high[:-1]))
 
 
 def _seconds(own: FloatArray, start_s: float, stop_s: float, bin_s: float) -> Seconds:

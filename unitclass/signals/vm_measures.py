@@ -6,7 +6,8 @@ Definitions (those of common practice; other programs differ in the numbers):
   distance: with one sample the plain difference, with more a fit that noise disturbs less.
 - threshold: the potential where dV/dt, going back from the steepest rise, falls below 10 mV/ms
   (or 15 % of its own maximum where that is less: small and filtered spikes never reach 10).
-- height: peak minus threshold. Half-width: duration above threshold + height / 2.
+- height: peak minus threshold. Half-width: duration above threshold + height / 2; base width: above
+  threshold + height / 5, which is what a pop lasts from rise to fall.
 """
 
 from __future__ import annotations
@@ -52,7 +53,7 @@ class Lens:
 class Measures:
     """Per event, shape (n_events,): `rise_samples` is the steepest rise from the window's start.
 
-    `half_width_ms` is inf where the potential does not fall below half height inside the window.
+    Widths are inf where the potential does not fall below their level inside the window.
     """
 
     rise_samples: FloatArray
@@ -60,6 +61,7 @@ class Measures:
     threshold_mv: FloatArray
     height_mv: FloatArray
     half_width_ms: FloatArray
+    base_width_ms: FloatArray
 
 
 def measured(waves: FloatArray, lens: Lens) -> Measures:
@@ -79,10 +81,12 @@ def measured(waves: FloatArray, lens: Lens) -> Measures:
     threshold = _threshold_mv(smooth, slope, rise, top_slope, lens)
     peak = _peak(smooth, rise, lens)
     peak_mv = smooth[np.arange(rise.size), peak]
-    half = 0.5 * (threshold + peak_mv)
+    height = peak_mv - threshold
+    half, base = (_width_samples(smooth, peak, threshold + share * height) for share in (0.5, 0.2))
+    sample_ms = 1e3 / lens.rate_hz
     return Measures(rise_samples=rise + 0.5 + _vertex(slope, rise), max_dvdt_mv_ms=top_slope,
-                    threshold_mv=threshold, height_mv=peak_mv - threshold,
-                    half_width_ms=_width_samples(smooth, peak, half) * 1e3 / lens.rate_hz)
+                    threshold_mv=threshold, height_mv=height, half_width_ms=half * sample_ms,
+                    base_width_ms=base * sample_ms)
 
 
 def smoothed(waves: FloatArray, n: int) -> FloatArray:
@@ -158,18 +162,18 @@ def _peak(smooth: FloatArray, rise: IntArray, lens: Lens) -> IntArray:
     return rise + np.argmax(np.take_along_axis(smooth, ahead, axis=1), axis=1)
 
 
-def _width_samples(smooth: FloatArray, peak: IntArray, half: FloatArray) -> FloatArray:
-    """Return the samples between the crossings of `half` on both sides of the peak."""
+def _width_samples(smooth: FloatArray, peak: IntArray, level: FloatArray) -> FloatArray:
+    """Return the samples between the crossings of `level` on both sides of the peak."""
     n = smooth.shape[1]
     columns = np.arange(n)
-    below = smooth < half[:, None]
+    below = smooth < level[:, None]
     rows = np.arange(peak.size)
     left = np.where(below & (columns < peak[:, None]), columns, -1).max(axis=1)
     right = np.where(below & (columns > peak[:, None]), columns, n).min(axis=1)
     known = (left >= 0) & (right < n)
     a, b = np.maximum(left, 0), np.minimum(right, n - 1)
-    rising = a + _crossing(smooth[rows, a], smooth[rows, np.minimum(a + 1, n - 1)], half)
-    falling = b - 1 + _crossing(smooth[rows, b - 1], smooth[rows, b], half)
+    rising = a + _crossing(smooth[rows, a], smooth[rows, np.minimum(a + 1, n - 1)], level)
+    falling = b - 1 + _crossing(smooth[rows, b - 1], smooth[rows, b], level)
     return np.where(known, falling - rising, np.inf)
 
 

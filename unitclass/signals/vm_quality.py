@@ -16,6 +16,7 @@ CONSTANT_S = 1.0
 LOST_MV = -25.0
 DEEPEST_MV = -120.0
 LOST_S = 2.0
+SHORT_S = 0.005
 
 
 # --------------------------------------------------------------------- scale of the values
@@ -101,7 +102,9 @@ def judge(looks: list[BlockLook], spike_s: FloatArray, size_mv: FloatArray) -> V
     """
     seconds = Seconds.joined(look.seconds for look in looks)
     notes: list[str] = []
-    problems = [*_missing(looks), *_stuck_problems(looks), *_lost(seconds, spike_s, notes)]
+    problems = _missing(looks)
+    problems += [p for p in _stuck_problems(looks) if not _meets(p, problems)]
+    problems += _lost(seconds, spike_s, problems, notes)
     problems += access_changes(seconds, spike_s, size_mv, problems)
     problems = _merged(problems)
     notes += _clipped_tops(looks)
@@ -119,7 +122,12 @@ def inside(times_s: FloatArray, intervals_s: FloatArray) -> BoolArray:
 
 
 def _missing(looks: list[BlockLook]) -> list[Exclusion]:
-    return [Exclusion(a, b, "no finite values") for look in looks for a, b in look.missing_s]
+    """Name what is not finite for over SHORT_S; a sample or two are bridged by the value before."""
+    return [Exclusion(a, b, "no finite values") for look in looks for a, b in look.missing_s if b - a > SHORT_S]
+
+
+def _meets(one: Exclusion, others: list[Exclusion]) -> bool:
+    return any(one.start_s < other.stop_s and other.start_s < one.stop_s for other in others)
 
 
 def _stuck_problems(looks: list[BlockLook]) -> list[Exclusion]:
@@ -151,7 +159,7 @@ def _joined_runs(runs: list[Stuck]) -> list[Stuck]:
     return joined
 
 
-def _lost(seconds: Seconds, spike_s: FloatArray, notes: list[str]) -> list[Exclusion]:
+def _lost(seconds: Seconds, spike_s: FloatArray, known: list[Exclusion], notes: list[str]) -> list[Exclusion]:
     """Find where the potential is not a cell's: near 0 mV (or absurdly low) and without its spikes."""
     counts = _counts(seconds, spike_s)
     with_spikes = counts > 0
@@ -166,7 +174,7 @@ def _lost(seconds: Seconds, spike_s: FloatArray, notes: list[str]) -> list[Exclu
         limits = (usual - 60.0, usual + 30.0)
     else:
         limits = (DEEPEST_MV, max(LOST_MV, usual + 25.0))
-    out = (seconds.level_mv > limits[1]) | (seconds.level_mv < limits[0])
+    out = ((seconds.level_mv > limits[1]) | (seconds.level_mv < limits[0])) & seconds.free_of(known)
     problems = []
     for a, b in runs_of(_bridged(out, 2)):
         lasts = seconds.stop_s[b - 1] - seconds.start_s[a]
@@ -207,8 +215,7 @@ def _clipped_tops(looks: list[BlockLook]) -> list[str]:
     """Say when spikes are cut off at the amplifier's or converter's highest value."""
     high = max(look.high_mv for look in looks)
     at_high = [look for look in looks if look.high_mv >= high - 1e-6]
-    n_bins = sum(look.n_at_high for look in at_high)
-    if n_bins >= 20 and n_bins >= 3 * len(at_high):
+    if sum(look.n_flat for look in at_high) >= 20:
         return [f"spikes are cut off at {high:.1f} mV: their heights are lower limits"]
     return []
 

@@ -130,7 +130,8 @@ def _detection_notes(kinds: Sorted, detector: Detector, n_left_out: int) -> tupl
     notes = [f"spikes found by a filter {how}, dV/dt over {1e3 * m / detector.lens.rate_hz:.2f} ms (noise "
              f"{detector.slope_noise_mv_ms:.1f} mV/ms), at {kinds.least_z:.1f} times the noise"]
     if kinds.n_artefacts:
-        notes.append(f"{kinds.n_artefacts} events too brief for spikes were taken for artefacts")
+        remedy = "" if kinds.is_spike.any() else "; if they are spikes, lower membrane.min_width_ms"
+        notes.append(f"{kinds.n_artefacts} events too brief for spikes were taken for artefacts{remedy}")
     if n_left_out:
         notes.append(f"{n_left_out} spikes in stretches that are left out")
     notes += [f"the spikes' height changed for good at {t:.1f} s" for t in kinds.new_heights_s]
