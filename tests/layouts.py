@@ -30,12 +30,12 @@ class Session:
 
 
 def simulated(regime: str = "three-phase", *, n_per_type: int = 1, n_cycles: int = 45, seed: int = 5,
-              types: tuple[str, ...] | None = None) -> Session:
+              trouble: tuple[str, ...] = ("hum", "heart"), types: tuple[str, ...] | None = None) -> Session:
     """Return a clean session of firing types that nobody confuses."""
     rng = np.random.default_rng(seed)
     wanted = types or ("early-I", "ramp-I", "post-I", "aug-E", "pre-I", "NRM")
     recording, units = whole("rates", regime, n_per_type, n_cycles=n_cycles, rng=rng, raw_rate_hz=2500.0,
-                             hardness=0.2, peak_hz=(20.0, 80.0), types=wanted, with_other=False)
+                             hardness=0.2, trouble=trouble, peak_hz=(20.0, 80.0), types=wanted, with_other=False)
     return Session({s.name: _trace(s) for s in recording.nerves}, {s.name: s.rate_hz for s in recording.nerves},
                    tuple(units.trains), tuple(units.types), recording.stop_s)
 
@@ -46,10 +46,11 @@ def _trace(signal: Signal) -> FloatArray:
 
 def integrated(trace: FloatArray, rate_hz: float, out_hz: float = 100.0, tau_s: float = 0.05) -> FloatArray:
     """Return a leaky-integrated neurogram, as analogue hardware writes it."""
-    from scipy.signal import lfilter
+    from scipy.signal import butter, lfilter, sosfilt
 
     a = np.exp(-1 / (tau_s * rate_hz))
-    return lfilter([1 - a], [1, -a], np.abs(trace - np.mean(trace)))[:: round(rate_hz / out_hz)]
+    passed = sosfilt(butter(2, [300, 1000], "bandpass", fs=rate_hz, output="sos"), trace)
+    return lfilter([1 - a], [1, -a], np.abs(passed))[:: round(rate_hz / out_hz)]
 
 
 def new_file(session_id: str = "lab-7"):

@@ -22,6 +22,7 @@ from unitclass.signals.smoothing import boxcar, filled
 GRID_HZ = 500.0
 ENVELOPE_HZ = 250.0
 WARM_UP_S = 0.25
+SLOW_ROLES = ("pressure", "airflow", "co2", "pump", "ecg")  # no integrator stands before these
 
 
 @dataclass(frozen=True)
@@ -89,8 +90,12 @@ def activity(signal: Signal, settings: NerveSettings, *, start_s: float, stop_s:
     if not stop_s > start_s:
         raise SignalError(f"nerve {signal.name} covers {signal.start_s:.1f} to {signal.stop_s:.1f} s, nothing of "
                           "this stretch", remedy="name another nerve with --nerve")
-    made = (_stored if signal.is_integrated else _rectified)(signal, settings, start_s, stop_s)
-    return _checked(made)
+    if not signal.is_integrated:
+        return _checked(_rectified(signal, settings, start_s, stop_s))
+    from unitclass.signals.unlag import without_lag
+
+    made = _checked(_stored(signal, settings, start_s, stop_s))
+    return without_lag(made, signal.description) if signal.role not in SLOW_ROLES else made
 
 
 def displayed(fine: Activity, settings: NerveSettings, is_integrated: bool) -> Envelope:
