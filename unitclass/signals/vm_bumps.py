@@ -76,19 +76,21 @@ class BumpFilter:
     def bumps(self, coarse: FloatArray) -> FloatArray:
         """Return how far a centre with its middle in each bin stands above both flanks, mV.
 
-        Shape as `coarse`; -inf within reach of either end.
+        Shape as `coarse`, along the last axis; -inf within reach of either end.
         """
-        out = np.full(coarse.size, -np.inf)
+        out = np.full(coarse.shape, -np.inf)
         reach = self.gap + self.flank
         span = self.centre + reach
-        n = coarse.size - span - reach + 1
+        n = coarse.shape[-1] - span - reach + 1
         if n <= 0:
             return out
-        total = np.concatenate([[0.0], np.cumsum(coarse - coarse[0])])
-        flank = np.subtract(total[self.flank :], total[: -self.flank]) / self.flank
-        centre = np.subtract(total[self.centre :], total[: -self.centre]) / self.centre
+        start = np.zeros((*coarse.shape[:-1], 1))
+        total = np.concatenate([start, np.cumsum(coarse - coarse[..., :1], axis=-1)], axis=-1)
+        flank = np.subtract(total[..., self.flank :], total[..., : -self.flank]) / self.flank
+        centre = np.subtract(total[..., self.centre :], total[..., : -self.centre]) / self.centre
         first = reach + self.centre // 2
-        out[first : first + n] = centre[reach : reach + n] - np.maximum(flank[:n], flank[span : span + n])
+        sides = np.maximum(flank[..., :n], flank[..., span : span + n])
+        out[..., first : first + n] = centre[..., reach : reach + n] - sides
         return out
 
 

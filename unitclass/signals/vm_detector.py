@@ -195,9 +195,10 @@ def score_vertex(score: FloatArray, peaks: IntArray) -> FloatArray:
 
 
 def _bump_near(coarse: FloatArray, peaks: IntArray, detector: Detector) -> FloatArray:
-    bumps = detector.bump.bumps(coarse)
-    near = np.clip(peaks[:, None] + np.arange(-2, 3), 0, bumps.size - 1)
-    return np.asarray(bumps[near].max(axis=1))
+    """Return the largest bump within two bins of each peak."""
+    half = detector.bump.half_span + 3
+    near = np.clip(peaks[:, None] + np.arange(-half, half + 1), 0, coarse.size - 1)
+    return np.asarray(detector.bump.bumps(coarse[near])[:, half - 2 : half + 3].max(axis=1))
 
 
 def _trough_mv(coarse: FloatArray, rise: FloatArray, after: IntArray, grid: Grid) -> FloatArray:

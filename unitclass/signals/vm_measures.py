@@ -46,7 +46,7 @@ class Lens:
     @property
     def after(self) -> int:
         """Return the samples of a window after its centre."""
-        return self.samples(max(5.0 * self.width_ms, 4.0)) + self.slope_samples
+        return self.samples(max(5.0 * self.width_ms, 2.5)) + self.slope_samples
 
 
 @dataclass(frozen=True)
@@ -168,10 +168,9 @@ def _width_samples(smooth: FloatArray, peak: IntArray, level: FloatArray) -> Flo
     columns = np.arange(n)
     below = smooth < level[:, None]
     rows = np.arange(peak.size)
-    left = np.where(below & (columns < peak[:, None]), columns, -1).max(axis=1)
-    right = np.where(below & (columns > peak[:, None]), columns, n).min(axis=1)
-    known = (left >= 0) & (right < n)
-    a, b = np.maximum(left, 0), np.minimum(right, n - 1)
+    before, after = below & (columns < peak[:, None]), below & (columns > peak[:, None])
+    a, b = n - 1 - np.argmax(before[:, ::-1], axis=1), np.argmax(after, axis=1)
+    known = before[rows, a] & after[rows, b]
     rising = a + _crossing(smooth[rows, a], smooth[rows, np.minimum(a + 1, n - 1)], level)
     falling = b - 1 + _crossing(smooth[rows, b - 1], smooth[rows, b], level)
     return np.where(known, falling - rising, np.inf)
