@@ -15,7 +15,7 @@ EXPECTED_NERVE = {"channels": "neurograms/0", "timestamps": "PNA", "integrated":
 
 @pytest.fixture(scope="module")
 def session():
-    return simulated()
+    return simulated(trouble=("hum",))
 
 
 @pytest.mark.parametrize("layout", LAYOUTS)
