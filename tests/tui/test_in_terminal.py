@@ -143,6 +143,15 @@ def test_leaving_gives_the_terminal_back(tmp_path, key):
     assert b"\x1b[?25h" in terminal.raw
 
 
+def test_a_request_to_end_gives_the_terminal_back(tmp_path):
+    with review(tmp_path) as terminal:
+        wait(terminal)
+        terminal.signal(signal.SIGTERM)
+        assert terminal.wait_until_ended() == 143
+        terminal.settle()
+    assert b"\x1b[?1049l" in terminal.raw
+
+
 def test_files_come_in_while_one_reviews_and_a_failed_one_is_told(tmp_path):
     with review(tmp_path, "pending") as terminal:
         wait(terminal)

@@ -7,6 +7,7 @@ import pytest
 
 from tests.results import session_result, vm_result
 from tests.tui.apps import app_on, labels, press, result_of, session_in, shown
+from unitclass.errors import FileError
 from unitclass.records import Decision
 from unitclass.tui.keys import DECLARED, OTHERS, REVIEW
 
@@ -277,6 +278,21 @@ async def test_silent_and_undetermined_units_show_no_family_and_no_probability(t
             text = await press(app, pilot, "slash", *name, "enter")
             assert "as fitted" not in text
             assert "nan" not in text
+
+
+async def test_results_that_cannot_be_read_any_more_are_told_and_the_review_goes_on(tmp_path, monkeypatch):
+    session = session_in(tmp_path)
+    app = app_on(session)
+
+    def lost(entry, **given):
+        raise FileError("its results cannot be read", where="cache.sqlite", remedy="open the review again")
+
+    async with app.run_test(size=(80, 24)) as pilot:
+        monkeypatch.setattr(session, "unit_result", lost)
+        assert "its results cannot be read" in await press(app, pilot, "down")
+        assert "its results cannot be read" in await press(app, pilot, "s")
+        monkeypatch.undo()
+        assert "suggested:" in await press(app, pilot, "down")
 
 
 async def test_a_click_in_the_queue_goes_to_that_unit_and_the_wheel_steps(tmp_path):

@@ -8,7 +8,10 @@ import os
 gc.disable()  # until the first unit is painted: collecting while importing costs a tenth of a second
 os.environ.setdefault("TEXTUAL_FPS", "250")  # read once by the toolkit: a repaint waits 4 ms, not 16
 
+import asyncio  # noqa: E402
+import signal  # noqa: E402
 from collections.abc import Callable, Iterator, Mapping, Sequence  # noqa: E402
+from contextlib import suppress  # noqa: E402
 from typing import Any  # noqa: E402
 
 from textual.app import App  # noqa: E402
@@ -79,6 +82,12 @@ class ReviewApp(App[int], inherit_bindings=False):
         """Return the review screen."""
         return ReviewScreen(self.desk, self.inks, self.keys)
 
+    @property
+    def _review_screen(self) -> ReviewScreen:
+        screen = self.screen_stack[0]
+        assert isinstance(screen, ReviewScreen)
+        return screen
+
     def other_screen(self, name: str) -> BaseScreen:
         """Return another screen; its module is imported when it is first wanted."""
         from importlib import import_module
@@ -91,9 +100,15 @@ class ReviewApp(App[int], inherit_bindings=False):
         """Begin with what can wait until the first unit is on the screen."""
         gc.freeze()
         gc.enable()
+        self._leave_on_request()
         if self.desk.library is not None:
-            self.screen_stack[0].repaint_soon()  # type: ignore[attr-defined]
+            self._review_screen.repaint_soon()
         self._start_analysis()
+
+    def _leave_on_request(self) -> None:
+        """Give the terminal back when the program is asked to end."""
+        with suppress(NotImplementedError, ValueError, RuntimeError):  # not the main thread, or Windows
+            asyncio.get_running_loop().add_signal_handler(signal.SIGTERM, self.exit, 143, 143)
 
     def on_unmount(self) -> None:
         """End the processes with the program."""
@@ -158,8 +173,8 @@ class ReviewApp(App[int], inherit_bindings=False):
         if message.task == EXPORT:
             self._show_export(message.done)
         for screen in self.screen_stack:
-            if isinstance(screen, ReviewScreen) or (screen is self.screen and message.task == ANALYSIS):
-                screen.repaint_soon()  # type: ignore[attr-defined]
+            if isinstance(screen, BaseScreen) and (screen is self._review_screen or message.task == ANALYSIS):
+                screen.repaint_soon()
 
     def _take_analysis(self, done: Done) -> None:
         session, problem = self.desk.session, done.problem
@@ -186,10 +201,8 @@ class ReviewApp(App[int], inherit_bindings=False):
                 screen.show_written(done)
                 return
         if done is not None:
-            review = self.screen_stack[0]
-            assert isinstance(review, ReviewScreen)
-            review.say(f"not written: {done.problem}" if done.problem else f"written: {done.result}",
-                       "warn" if done.problem else "")
+            self._review_screen.say(f"not written: {done.problem}" if done.problem else f"written: {done.result}",
+                                    "warn" if done.problem else "")
 
 
 def run_review(app: ReviewApp, *, mouse: bool = True) -> int:

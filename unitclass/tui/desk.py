@@ -212,7 +212,8 @@ class Desk:
         elif name in YES_NO:
             chosen = replace(self.session.filter, **NAMED_FILTERS[name])
         else:
-            chosen = replace(self.session.filter, **{name: (value,)})
+            given: dict[str, Any] = {name: (value,)}
+            chosen = replace(self.session.filter, **given)
         self.session.show(chosen)
         return f"{len(self.entries)} of {len(self.session.all_entries)} units in view"
 

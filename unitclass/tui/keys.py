@@ -58,7 +58,8 @@ DECLARED: tuple[Key, ...] = (
     Key("undo", "u", "take back the last decision", (REVIEW, BATCH, DISCUSS), "undo", 5),
     Key("redo", "r", "give the decision again that was taken back", (REVIEW,), "redo", 18),
     Key("batch", "a", "accept all sure suggestions: shows exactly which first", (REVIEW,), "all sure", 4),
-    Key("next", "down", "next unit", (REVIEW, *LISTS, TYPES, CONDITIONS, HELP, ACCOUNT, FINISH)),
+    Key("next", "down", "next unit", (REVIEW, *LISTS, TYPES, CONDITIONS, HELP, ACCOUNT, FINISH), "unit", 4,
+        "previous"),
     Key("previous", "up", "previous unit", (REVIEW, *LISTS, TYPES, CONDITIONS, HELP, ACCOUNT, FINISH)),
     Key("forward", "pagedown", "a page of units on", (REVIEW, *LISTS, CYCLES, HELP, ACCOUNT, FINISH)),
     Key("back", "pageup", "a page of units back", (REVIEW, *LISTS, CYCLES, HELP, ACCOUNT, FINISH)),
@@ -157,7 +158,7 @@ class KeyMap:
     def footer(self, screen: str) -> list[tuple[str, str]]:
         """Return (key, word) for the footer, most needed first."""
         named = sorted((d for d in self.on(screen) if d.footer), key=lambda d: d.rank)
-        return [(" ".join(self.shown(i) for i in (d.pair, d.id) if i), d.footer) for d in named]
+        return [(" ".join(self.shown(i) for i in (d.pair, d.id) if i), _word(d, screen)) for d in named]
 
     def help(self, screen: str) -> list[tuple[str, str]]:
         """Return (key, sentence) for the help screen; the digits make one line."""
@@ -175,6 +176,16 @@ class KeyMap:
             if other != declared.id:
                 raise UsageError(f"key {readable(key)!r} is asked for both {other!r} and {declared.id!r}",
                                  where="settings [review.keys]", remedy="give one of them another key")
+
+
+SCROLLED = (HELP, ACCOUNT, FINISH)
+
+
+def _word(declared: Key, screen: str) -> str:
+    """Return the footer's word; stepping is named after what it does on the screen."""
+    if declared.id == "next" and screen != REVIEW:
+        return "scroll" if screen in SCROLLED else "choose"
+    return declared.footer
 
 
 def readable(key: str) -> str:

@@ -10,10 +10,14 @@ from unitclass.tui.renderables.glyphs import COLOUR, Look
 from unitclass.tui.renderables.histogram import put_level
 from unitclass.tui.renderables.sheet import Sheet
 
+Band = tuple[FloatArray, FloatArray, FloatArray]
+"""Lower edge, middle and upper edge of a family, shares of the peak, shape (n_bins,) each."""
 
-def family_picture(low: FloatArray, middle: FloatArray, high: FloatArray, ti_s: float, te_s: float,
-                   width: int, height: int, *, look: Look = COLOUR) -> Sheet:
-    """Draw a family's band from `low` to `high` and its middle, shares of the peak, shape (n_bins,)."""
+
+def family_picture(band: Band, ti_s: float, te_s: float, width: int, height: int, *,
+                   look: Look = COLOUR) -> Sheet:
+    """Draw a family's band and its middle."""
+    low, middle, high = band
     sheet = Sheet(width, height, look)
     gutter = 6
     axis = CycleAxis.for_durations(width - gutter, ti_s, te_s)

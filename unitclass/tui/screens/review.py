@@ -14,7 +14,7 @@ from unitclass.tui.messages import Picked, Stepped
 from unitclass.tui.screens.base import BaseScreen, Coverable
 from unitclass.tui.theme import Theme
 from unitclass.tui.widgets.head import Head
-from unitclass.tui.widgets.panels import QueueColumn, UnitPage, VerdictPanel
+from unitclass.tui.widgets.panels import QueueColumn, UnitPage, UnitView, VerdictPanel
 
 COLUMN_FROM = 100
 BESIDE_FROM = 64
@@ -68,7 +68,7 @@ class ReviewScreen(BaseScreen):
     def repaint(self) -> None:
         """Show the unit the queue stands at."""
         desk = self.desk
-        view = desk.view()
+        view, words = self._view()
         entries, here = desk.entries, desk.here
         title, where, right = desk.head()
         has_column = self.queue.display
@@ -77,11 +77,19 @@ class ReviewScreen(BaseScreen):
         if has_column:
             self.queue.show(entries, here, several)
         if view is None or self._is_too_small():
-            self.page.show(None, desk.why_empty() if view is None else TOO_SMALL)
+            self.page.show(None, words if view is None else TOO_SMALL)
             self.verdict.show(None, "")
             return
         self.page.show(view)
         self.verdict.show(view.verdict, f"{self.keys.shown('account')}: all of it")
+
+    def _view(self) -> tuple[UnitView | None, str]:
+        """Return the unit to show, or words why there is none."""
+        try:
+            view = self.desk.view()
+        except UnitclassError as error:  # e.g. its results cannot be read any more
+            return None, str(error)
+        return view, "" if view is not None else self.desk.why_empty()
 
     def _is_too_small(self) -> bool:
         width, height = self._arranged_for
@@ -92,13 +100,14 @@ class ReviewScreen(BaseScreen):
         has_column = width >= COLUMN_FROM and height >= 16
         is_brief = width < BESIDE_FROM
         self.queue.display = has_column
-        self.queue.styles.width = min(34, 22 + max(0, width - COLUMN_FROM) // 8)
+        column = min(34, 22 + max(0, width - COLUMN_FROM) // 8) if has_column else 0
+        self.queue.styles.width = column
         self.head.styles.height = 1 if has_column or height < 16 else 2
         self.set_class(is_brief, "-brief")
         self.verdict.display = not self._is_too_small()
         beside = 0 if is_brief else max(25, min(60, round(width * 0.3)))
         self.verdict.styles.width = beside or "1fr"
-        self.page.give_width(width - beside - (int(self.queue.styles.width.value) if has_column else 0))
+        self.page.give_width(width - beside - column)
 
     # --------------------------------------------------------------------------- moving
 
@@ -270,7 +279,12 @@ class ReviewScreen(BaseScreen):
         if self.desk.session.current is None and screen not in ("help", "finish"):
             self.say("there is no unit to show")
             return
-        self.app.push_screen(self.app.other_screen(screen), self._returned)  # type: ignore[attr-defined]
+        try:
+            other = self.app.other_screen(screen)  # type: ignore[attr-defined]
+        except UnitclassError as error:
+            self.say(str(error), "warn")
+            return
+        self.app.push_screen(other, self._returned)
 
     def _returned(self, message: str | None) -> None:
         self.say(message or "")

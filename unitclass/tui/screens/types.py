@@ -7,7 +7,7 @@ from unitclass.review.unit_facts import family_band
 from unitclass.tui.desk import Desk
 from unitclass.tui.keys import TYPES, KeyMap
 from unitclass.tui.messages import Picked
-from unitclass.tui.renderables.family_picture import family_picture
+from unitclass.tui.renderables.family_picture import Band, family_picture
 from unitclass.tui.renderables.queue_rows import type_of
 from unitclass.tui.renderables.sheet import Sheet
 from unitclass.tui.renderables.words import shortened, wrapped
@@ -63,7 +63,7 @@ class TypesScreen(PageScreen):
         if band is not None and current is not None and height - n_words >= 6:
             facts = self.desk.condition(current)
             rows = min(24, height - n_words - 1)
-            picture = family_picture(*band, facts.ti_s, facts.te_s, width, rows, look=look)
+            picture = family_picture(band, facts.ti_s, facts.te_s, width, rows, look=look)
             sheet.paste(picture, 0, n_words + 1)
         return sheet
 
@@ -82,7 +82,7 @@ class TypesScreen(PageScreen):
                                                  look)]
         return [(shortened(text, width, look), ink) for text, ink in lines]
 
-    def _band(self, name: str) -> tuple | None:
+    def _band(self, name: str) -> Band | None:
         library, current = self.desk.library, self.desk.session.current
         if library is None or current is None or name not in {f.id for f in library.families}:
             return None

@@ -25,7 +25,7 @@ class Canvas(Widget):
         super().__init__(id=id)
         self.inks = theme
         self.sheet = Sheet(0, 0, theme.look)
-        self._cover: Callable[[int, int], Sheet] | None = None
+        self._shown_instead: Callable[[int, int], Sheet] | None = None
 
     def draw(self, width: int, height: int) -> Sheet:
         """Return what to show at this size; subclasses say what."""
@@ -33,7 +33,7 @@ class Canvas(Widget):
 
     def cover(self, draw: Callable[[int, int], Sheet] | None) -> None:
         """Show something else in this place until it is uncovered with None."""
-        self._cover = draw
+        self._shown_instead = draw
         self.redraw()
 
     def redraw(self) -> None:
@@ -41,7 +41,7 @@ class Canvas(Widget):
         width, height = self.size
         if not width or not height:
             return
-        old, self.sheet = self.sheet, (self._cover or self.draw)(width, height)
+        old, self.sheet = self.sheet, (self._shown_instead or self.draw)(width, height)
         if (old.width, old.height) != (width, height):
             self.refresh()
             return
@@ -57,7 +57,7 @@ class Canvas(Widget):
     def render_line(self, y: int) -> Strip:
         """Return row `y` as the toolkit wants it; the first paint draws the sheet."""
         if (self.sheet.width, self.sheet.height) != tuple(self.size):
-            self.sheet = (self._cover or self.draw)(*self.size)
+            self.sheet = (self._shown_instead or self.draw)(*self.size)
         if y >= self.sheet.height:
             return Strip.blank(self.size.width)
         style = self.inks.style
