@@ -45,6 +45,10 @@ class Terminal:
             os.write(self._fd, KEYS.get(key, key).encode())
             self.settle(0.03)
 
+    def write(self, keys: str) -> None:
+        """Send keys without looking at what comes of them."""
+        os.write(self._fd, keys.encode())
+
     def settle(self, quiet_s: float = 0.15, longest_s: float = 5.0) -> None:
         """Read until nothing has come for a while."""
         end = time.monotonic() + longest_s

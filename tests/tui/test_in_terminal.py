@@ -6,6 +6,7 @@ import signal
 import pytest
 
 from tests.tui.terminal import Terminal
+from unitclass.io.decisions import DecisionStore
 
 
 def review(folder, *options, **terminal):
@@ -119,6 +120,22 @@ def test_a_decision_stands_after_the_process_is_killed(tmp_path):
         terminal.wait_until_ended()
     with review(tmp_path) as terminal:
         assert "1 labelled" in wait(terminal)
+
+
+@pytest.mark.parametrize("moment_s", [0.02, 0.11, 0.19, 0.33])
+def test_killed_in_the_middle_of_a_run_of_decisions_all_that_was_shown_is_there_once(tmp_path, moment_s):
+    with review(tmp_path) as terminal:
+        wait(terminal)
+        for _ in range(40):
+            terminal.write("\r")
+        terminal.settle(0.005, moment_s)
+        terminal.signal(signal.SIGKILL)
+        terminal.wait_until_ended()
+        shown = int(re.search(r"(\d+) labelled", terminal.text).group(1))
+    with DecisionStore(tmp_path / "decisions.sqlite") as store:
+        told = store.history("heron-04-identifier", "0b7e7f0e-3b51-4c38-9a3c-6d2f4d6d1a11")
+    assert len(told) >= shown
+    assert len({(d.unit, d.condition) for d in told}) == len(told)
 
 
 def test_a_hang_up_ends_the_program_and_keeps_what_was_decided(tmp_path):

@@ -1,41 +1,27 @@
 """Between the review session and the screens: what they show, and words for what was done.
 
-Holds no decision of its own; the session does. Nothing is computed here, only chosen and worded.
+Holds no decision of its own; the session does. Nothing is computed here, only chosen.
 """
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Mapping, Sequence
-from dataclasses import dataclass, replace
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import replace
 from typing import TYPE_CHECKING, Any
 
-from unitclass.records import NOT_ONE_CELL, OTHER, SILENT, UNDETERMINED, NerveProfile, UnitResult
-from unitclass.review.entry import STATES, QueueEntry
-from unitclass.review.family_check import conflicts
+from unitclass.records import NOT_ONE_CELL, OTHER, SILENT, UNDETERMINED, UnitResult
+from unitclass.review.entry import QueueEntry
 from unitclass.review.filters import Filter
-from unitclass.review.misfit import contradictions, misfit
 from unitclass.review.ordering import INFORMATIVE, SORTS
 from unitclass.review.session import ReviewSession
-from unitclass.review.shelf import FileState
 from unitclass.review.unit_facts import mean_durations
 from unitclass.tui.choice import Option
 from unitclass.tui.renderables.verdict import Verdict
 from unitclass.tui.widgets.panels import UnitView
+from unitclass.tui.wording import ConditionFacts, decided_words, family_shown, told, verdict_of
 
 if TYPE_CHECKING:
     from unitclass.classify.templates import Family, TypeLibrary
-
-OWN_WORDS = {"viewed": "looking at it", "blind": "blind", "batch": "in a batch", "settled": "settled"}
-
-
-@dataclass(frozen=True)
-class ConditionFacts:
-    """What the unit page needs of a condition, kept while results stay the same."""
-
-    nerves: tuple[NerveProfile, ...]
-    ti_s: float
-    te_s: float
-    regime: str
 
 
 class Desk:
@@ -209,7 +195,11 @@ class Desk:
         name, _, value = wanted.partition("=")
         if wanted == "all":
             chosen = Filter()
-        elif name in YES_NO:
+        elif name == "sure":
+            chosen = replace(self.session.filter, low=self.session.sure_probability, high=1.0)
+        elif name == "unsure":
+            chosen = replace(self.session.filter, low=0.0, high=self.session.sure_probability)
+        elif name in NAMED_FILTERS:
             chosen = replace(self.session.filter, **NAMED_FILTERS[name])
         else:
             given: dict[str, Any] = {name: (value,)}
@@ -261,80 +251,11 @@ class Desk:
         return options
 
 
-def told(file: FileState) -> str:
-    """Return why a file failed, its name once."""
-    return file.reason if file.path in file.reason else f"{file.path}: {file.reason}"
-
-
-def family_shown(entry: QueueEntry, unit: UnitResult) -> str:
-    """Return the type whose fitted family is drawn: none while hidden, and none for a state."""
-    return "" if entry.is_hidden or not unit.suggestion.fitted_rate_hz.size else unit.suggestion.type
-
-
-def verdict_of(entry: QueueEntry, unit: UnitResult, condition: ConditionFacts,
-               family: Family | None = None) -> Verdict:
-    """Return the verdict on a unit in words; `family` is that of the suggested type, where it is known."""
-    suggestion = unit.suggestion
-    verdict = Verdict(entry.suggested_type, entry.probability, entry.ranked, flags=flags_of(entry),
-                      decided=standing_words(entry), change=entry.change, note=entry.note,
-                      facts=tuple(_short_facts(entry, unit, condition)), is_blind=entry.is_hidden)
-    if entry.is_hidden:
-        return verdict
-    worst = misfit(unit)
-    fit = "" if worst is None or worst.is_contradiction else worst.words(suggestion.type)
-    against = contradictions(unit) + (conflicts(unit, family) if family is not None else ())
-    return replace(verdict, against=against, fit=fit, rule=rule_words(unit), reasons=suggestion.reasons)
-
-
-def rule_words(unit: UnitResult) -> str:
-    """Return the rule of thumb as a cross-check, when it agrees (if not, it speaks against)."""
-    rule = unit.suggestion.rule_type
-    if not rule or unit.suggestion.type in STATES:
-        return ""
-    return f"rule of thumb: {rule}" + (", the same" if rule == unit.suggestion.type else "")
-
-
-def flags_of(entry: QueueEntry) -> tuple[str, ...]:
-    """Return the flags of the data; those of the label are in `standing_words`."""
-    return tuple(entry.flags)
-
-
-def standing_words(entry: QueueEntry) -> str:
-    """Return what has been decided on a unit, by whom and how."""
-    words = []
-    if entry.own_type:
-        words.append(f"you: {entry.own_type} ({OWN_WORDS.get(entry.own_how, entry.own_how)})")
-    if entry.label is not None and entry.label.type and (not entry.own_type or entry.label.type != entry.own_type
-                                                        or ";" in entry.label.reviewer):
-        words.append(f"stands: {entry.label.type}, {entry.label.reviewer}")
-    words += [LABEL_FLAGS.get(flag, flag) for flag in entry.label_flags]
-    if entry.is_later and not entry.own_type:
-        words.append("left for later")
-    return "; ".join(words)
-
-
 YES_NO: Mapping[str, str] = {"open": "without my label", "labelled": "with my label", "later": "left for later",
                              "changed": "suggestion changed", "sure": "sure suggestions",
                              "unsure": "unsure suggestions"}
 NAMED_FILTERS: Mapping[str, Mapping[str, Any]] = {
     "open": {"is_reviewed": False}, "labelled": {"is_reviewed": True}, "later": {"is_later": True},
-    "changed": {"is_changed": True}, "sure": {"low": 0.95, "high": 1.0}, "unsure": {"low": 0.0, "high": 0.95}}
+    "changed": {"is_changed": True}}
 FACETS: Mapping[str, str] = {"types": "type", "files": "file", "conditions": "condition", "regions": "region",
                              "flags": "flag", "shape_groups": "shape group", "states": "state"}
-LABEL_FLAGS: Mapping[str, str] = {
-    "disagreement": "reviewers differ", "stale": "label is older than a change of the cycles: look again",
-    "asks again": "the spike train is not the one that was labelled: label it again"}
-
-
-def _short_facts(entry: QueueEntry, unit: UnitResult, condition: ConditionFacts) -> Iterable[tuple[str, str]]:
-    yield "spikes", f"{unit.n_spikes} in {unit.n_cycles} cycles"
-    yield "rhythm", condition.regime
-    if entry.shape_group:
-        yield "shape group", entry.shape_group
-    for name, value in entry.columns.items():
-        yield str(name), str(value)
-
-
-def decided_words(entry: QueueEntry) -> str:
-    """Return what was just decided."""
-    return f"{entry.unit}: {entry.own_type}"

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from unitclass.review.entry import QueueEntry
-from unitclass.tui.desk import Desk, family_shown, standing_words
+from unitclass.tui.desk import Desk
 from unitclass.tui.keys import CONDITIONS, KeyMap
 from unitclass.tui.renderables.bars import in_words
 from unitclass.tui.renderables.condition_rows import ConditionView, condition_rows
 from unitclass.tui.renderables.sheet import Sheet
 from unitclass.tui.screens.page import PageScreen
 from unitclass.tui.theme import Theme
+from unitclass.tui.wording import family_shown, standing_words
 
 
 class ConditionsScreen(PageScreen):

@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from unitclass.tui.desk import Desk, told
+from unitclass.tui.desk import Desk
 from unitclass.tui.keys import FINISH, KeyMap
 from unitclass.tui.renderables.listing import scrolled
 from unitclass.tui.renderables.sheet import Sheet
 from unitclass.tui.renderables.words import wrapped
 from unitclass.tui.screens.page import PageScreen
 from unitclass.tui.theme import Theme
+from unitclass.tui.wording import told
 from unitclass.tui.workers import Done
 
 Lines = list[tuple[str, str]]
