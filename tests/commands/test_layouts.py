@@ -9,7 +9,7 @@ from tests.layouts import LAYOUTS, simulated
 
 EXPECTED_CONDITIONS = {"channels": ["baseline", "high CO2"], "timestamps": ["baseline"], "integrated": [""],
                        "columns": ["5 % CO2"]}
-EXPECTED_NERVE = {"channels": "neurograms/0", "timestamps": "PNA", "integrated": "intPNA",
+EXPECTED_NERVE = {"channels": "neurograms/right phrenic", "timestamps": "PNA", "integrated": "intPNA",
                   "columns": "physiology/PND"}
 
 

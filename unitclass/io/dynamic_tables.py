@@ -46,13 +46,19 @@ def column_text(table: h5py.Group, name: str, rows: int) -> list[str] | None:
         return [", ".join(words[a:b]) for a, b in zip(starts, stops, strict=True)]
     if data.ndim != 1 or data.shape[0] != rows:
         return None
-    values = data[()]
-    if neurodata_type(data) == "EnumData":
-        elements = child_of(table, f"{name}_elements")
-        if isinstance(elements, h5py.Dataset):
-            words = [text(v) for v in elements[()]]
-            return [words[int(v)] if 0 <= int(v) < len(words) else "" for v in values]
-    return [_shown(v) for v in values]
+    elements = _elements(table, name, data)
+    if elements:
+        return [elements[int(v)] if 0 <= int(v) < len(elements) else "" for v in data[()]]
+    return [_shown(v) for v in data[()]]
+
+
+def _elements(table: h5py.Group, name: str, data: h5py.Dataset) -> list[str]:
+    """Return the words that the codes of an EnumData column stand for."""
+    if neurodata_type(data) != "EnumData":
+        return []
+    reference = data.attrs.get("elements")
+    found = table.file[reference] if isinstance(reference, h5py.Reference) else child_of(table, f"{name}_elements")
+    return [text(v) for v in found[()]] if isinstance(found, h5py.Dataset) else []
 
 
 def number_column(table: h5py.Group, name: str, rows: int) -> FloatArray:
@@ -84,10 +90,11 @@ def joined_cells(columns: Mapping[str, list[str]], rows: Sequence[int]) -> dict[
 def _column_names(table: h5py.Group) -> list[str]:
     stored = table.attrs.get("colnames")
     listed = [text(v) for v in np.asarray(stored).reshape(-1)] if stored is not None else []
-    return listed or [n for n in table if not n.endswith("_index")]
+    others = [n for n in table if n not in listed and not n.endswith(("_index", "_elements")) and n != "id"]
+    return listed + others
 
 
 def _shown(value: object) -> str:
     if isinstance(value, float | np.floating):
-        return "" if np.isnan(value) else f"{value:g}"
+        return "" if np.isnan(value) else f"{value:.10g}"
     return text(value)

@@ -2,31 +2,43 @@
 
 from __future__ import annotations
 
-import re
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from itertools import pairwise
 
 import h5py
 import numpy as np
 
 from unitclass.io.chunk_readers import JoinedChunks
-from unitclass.io.hdf5 import child_of, scalar_number, scalar_text
+from unitclass.io.electrodes import bias_currents_pa, electrode_of
+from unitclass.io.hdf5 import child_of, scalar_text
 from unitclass.io.roles import voltage_factor_mv
 from unitclass.io.series import Series, peek
+from unitclass.io.sweeps import stem
 from unitclass.records import Electrode, Finding, Membrane, Signal
 from unitclass.signals.vm_quality import scale_problem
 
-_FILL = re.compile(r"[^.;,]*\b(?:acetate|KAc|gluconate|methylsul\w+|KCl|CsCl|NaCl|chloride|citrate|sulfate|sulphate)\b[^.;,]*",
-                   re.I)
-_JUNCTION = re.compile(r"[^.;]*\b(?:junction|LJP)\b[^.;]*", re.I)
+CLIPPED_SHARE = 0.001  # of the samples looked at, on the largest or smallest value
 
 
 @dataclass(frozen=True)
 class Sweep:
-    """One series of one electrode."""
+    """One series (or one column of one) of one electrode, and why it is a membrane potential."""
 
     series: Series
     reason: str
+    index: int = 0
+    name: str = ""
+
+    @property
+    def label(self) -> str:
+        """Return the name a user sees."""
+        return self.name or self.series.name
+
+    @property
+    def factor_mv(self) -> float:
+        """Return what turns the series' unit into mV; a current clamp without a unit is in volts (NWB)."""
+        return voltage_factor_mv(self.series.unit) or (1e3 if self.series.kind == "current clamp" else 1.0)
 
 
 @dataclass(frozen=True)
@@ -38,47 +50,84 @@ class FoundMembranes:
     missing: tuple[str, ...] = ()
 
 
-def membranes_of(file: h5py.File, path: str, sweeps: Sequence[Sweep], cell: str = "") -> FoundMembranes:
-    """Return one membrane potential per electrode, its sweeps in time order.
+def membranes_of(file: h5py.File, path: str, sweeps: Sequence[Sweep], cell: str = "", *, fill: str = "") -> FoundMembranes:
+    """Return one membrane potential per cell, its sweeps in time order.
+
+    Sweeps belong to one cell by the electrode's `cell_id`, else by the electrode itself.
 
     Parameters
     ----------
     cell : str
-        Cell name from a plain table, where the file gives none.
+        Cell name from a plain table, where the file gives none and holds one cell.
+    fill : str
+        Electrode fill from the settings, where the file does not tell.
     """
     grouped: dict[str, list[Sweep]] = {}
+    missing = []
     for sweep in sweeps:
-        problem = _problem(file, sweep.series)
-        key = "" if problem else _electrode_name(file, sweep.series)
+        problem = _problem(file, sweep)
         if problem:
-            grouped.setdefault(f"!{sweep.series.name}: {problem}", [])
+            missing.append(f"{sweep.label} [{sweep.series.location}]: {problem}")
         else:
-            grouped.setdefault(key, []).append(sweep)
-    missing = tuple(key[1:] for key in grouped if key.startswith("!"))
-    made = [_joined(file, path, name, parts, cell) for name, parts in grouped.items() if parts]
-    return FoundMembranes(tuple(m for m, _ in made), tuple(f for _, f in made), missing)
+            grouped.setdefault(_cell_key(file, sweep), []).append(sweep)
+    cells = [part for key, group in grouped.items() for part in _apart(key, group)]
+    made = [_joined(file, path, parts, cell if len(cells) == 1 else "", fill) for parts in cells]
+    return FoundMembranes(tuple(m for m, _ in made), tuple(f for _, f in made), tuple(missing))
 
 
-def _problem(file: h5py.File, series: Series) -> str:
-    factor = voltage_factor_mv(series.unit) or 1.0
-    values = np.concatenate([part.ravel() for part in peek(file, series)]) * factor
-    return scale_problem(values, series.unit)
+def _problem(file: h5py.File, sweep: Sweep) -> str:
+    if sweep.series.gains[sweep.index] == 0:
+        return "has a gain (conversion) of zero"
+    return scale_problem(_looked_at(file, sweep), sweep.series.unit)
 
 
-def _joined(file: h5py.File, path: str, name: str, sweeps: list[Sweep], cell: str) -> tuple[Membrane, Finding]:
+def _looked_at(file: h5py.File, sweep: Sweep) -> np.ndarray:
+    """Return some samples from several places, mV."""
+    return np.concatenate([part[:, sweep.index] for part in peek(file, sweep.series, n_places=5)]) * sweep.factor_mv
+
+
+def _joined(file: h5py.File, path: str, sweeps: list[Sweep], cell: str, fill: str) -> tuple[Membrane, Finding]:
     ordered, notes = _without_overlap(sorted(sweeps, key=lambda s: s.series.times.start_s))
     first = ordered[0].series
-    readers = tuple(s.series.reader(path, 0, factor=voltage_factor_mv(s.series.unit) or 1.0) for s in ordered)
+    readers = tuple(s.series.reader(path, s.index, factor=s.factor_mv) for s in ordered)
+    electrode = _electrode(file, ordered, cell, fill)
     signal = Signal(
-        name=name, role="membrane", unit="mV", rate_hz=first.times.rate_hz, start_s=first.times.start_s,
-        stop_s=max(s.series.times.stop_s for s in ordered), reader=readers[0] if len(readers) == 1 else JoinedChunks(readers),
-        reason=ordered[0].reason, description=first.words, location=first.location)
-    electrode = _electrode(file, name, ordered)
-    if cell and not electrode.cell_id:
-        electrode = replace(electrode, cell_id=cell)
+        name=electrode.name, role="membrane", unit="mV", rate_hz=first.times.rate_hz, start_s=first.times.start_s,
+        stop_s=max(s.series.times.stop_s for s in ordered),
+        reader=readers[0] if len(readers) == 1 else JoinedChunks(readers), reason=ordered[0].reason,
+        description=first.words, location=first.location)
+    notes = (*notes, *_odd(file, ordered))
     joined = f"; {len(ordered)} sweeps joined in time" if len(ordered) > 1 else ""
-    finding = Finding("membrane potential", electrode.cell, first.location, f"{ordered[0].reason}{joined}")
+    said = "".join(f"; {note}" for note in (*first.notes, *notes))
+    finding = Finding("membrane potential", electrode.cell, first.location, f"{ordered[0].reason}{joined}{said}")
     return Membrane(signal, electrode, notes), finding
+
+
+def _electrode(file: h5py.File, sweeps: list[Sweep], cell: str, fill: str) -> Electrode:
+    electrode = electrode_of(file, _electrode_name(file, sweeps), [s.series.location for s in sweeps])
+    return replace(electrode, cell_id=electrode.cell_id or cell, fill=electrode.fill or fill)
+
+
+def _odd(file: h5py.File, sweeps: list[Sweep]) -> tuple[str, ...]:
+    """Return what a user should know about the trace, in words."""
+    values = _looked_at(file, sweeps[0])
+    values = values[np.isfinite(values)]
+    notes = []
+    if values.size and np.ptp(values) == 0:
+        notes.append(f"constant at {values[0]:.4g} mV wherever it was looked at")
+    else:
+        notes += [f"looks clipped at {edge:.4g} mV" for edge in (values.min(), values.max()) if _is_clipped(values, edge)]
+    bias = bias_currents_pa(file, [s.series.location for s in sweeps])
+    if bias and max(bias) - min(bias) > 1.0:
+        notes.append(f"bias current differs between sweeps ({min(bias):.0f} to {max(bias):.0f} pA)")
+    return tuple(notes)
+
+
+def _is_clipped(values: np.ndarray, edge: float) -> bool:
+    """Tell whether a trace rests on its extreme value: many samples there, several in a row."""
+    at_edge = values == edge
+    in_a_row = at_edge[:-2] & at_edge[1:-1] & at_edge[2:]
+    return bool(at_edge.mean() > CLIPPED_SHARE and np.count_nonzero(in_a_row) > 3)
 
 
 def _without_overlap(ordered: list[Sweep]) -> tuple[list[Sweep], tuple[str, ...]]:
@@ -87,44 +136,32 @@ def _without_overlap(ordered: list[Sweep]) -> tuple[list[Sweep], tuple[str, ...]
     for sweep in ordered[1:]:
         before, now = kept[-1].series.times, sweep.series.times
         if abs(now.rate_hz - before.rate_hz) > 1e-6 * before.rate_hz:
-            notes.append(f"sweep {sweep.series.name} left out: {now.rate_hz:g} Hz, the others {before.rate_hz:g} Hz")
+            notes.append(f"sweep {sweep.label} left out: {now.rate_hz:g} Hz, the others {before.rate_hz:g} Hz")
         elif now.start_s < before.stop_s - 1.0 / before.rate_hz:
-            notes.append(f"sweep {sweep.series.name} left out: it overlaps {kept[-1].series.name}")
+            notes.append(f"sweep {sweep.label} left out: it overlaps {kept[-1].label} in time")
         else:
             kept.append(sweep)
     return kept, tuple(notes)
 
 
-def _electrode_name(file: h5py.File, series: Series) -> str:
-    group = child_of(file[series.location], "electrode")
-    return str(group.name).rsplit("/", 1)[-1] if isinstance(group, h5py.Group) else series.name
-
-
-def _electrode(file: h5py.File, name: str, sweeps: list[Sweep]) -> Electrode:
-    series = file[sweeps[0].series.location]
-    group = child_of(series, "electrode")
-    words = sweeps[0].series.words
+def _cell_key(file: h5py.File, sweep: Sweep) -> str:
+    group = child_of(file[sweep.series.location], "electrode")
     if not isinstance(group, h5py.Group):
-        return Electrode(name, fill=_said(_FILL, words), junction_potential=_said(_JUNCTION, words),
-                         bias_current_pa=_bias_pa(file, sweeps))
-    about = " ".join(filter(None, (scalar_text(group, "description"), scalar_text(group, "filtering"), words)))
-    stated = next((t for key in ("filling", "fill", "filling_solution", "solution") if (t := scalar_text(group, key))), "")
-    columns = {key: value for key in ("location", "slice") if (value := scalar_text(group, key))}
-    resistance = scalar_number(series, "whole_cell_series_resistance_comp")
-    return Electrode(
-        name, cell_id=scalar_text(group, "cell_id"), fill=stated or _said(_FILL, about),
-        description=scalar_text(group, "description"), bias_current_pa=_bias_pa(file, sweeps),
-        bridge_balance_mohm=scalar_number(series, "bridge_balance") / 1e6, access_mohm=resistance / 1e6,
-        junction_potential=_said(_JUNCTION, about), columns=columns)
+        return f"series {stem(sweep.label)}"
+    cell = scalar_text(group, "cell_id")
+    return f"cell {cell}" if cell else f"electrode {group.name}"
 
 
-def _bias_pa(file: h5py.File, sweeps: list[Sweep]) -> float:
-    """Return the largest bias current (by size) of the sweeps, pA; NaN when none says."""
-    said = [scalar_number(file[s.series.location], "bias_current") * 1e12 for s in sweeps]
-    known = [value for value in said if np.isfinite(value)]
-    return max(known, key=abs) if known else float("nan")
+def _apart(key: str, sweeps: list[Sweep]) -> list[list[Sweep]]:
+    """Return numbered series without an electrode as one cell, unless they were recorded together."""
+    ordered = sorted(sweeps, key=lambda s: s.series.times.start_s)
+    together = any(b.series.times.start_s < a.series.times.stop_s - 1.0 / a.series.times.rate_hz
+                   for a, b in pairwise(ordered))
+    return [[s] for s in sweeps] if key.startswith("series ") and together else [sweeps]
 
 
-def _said(pattern: re.Pattern[str], words: str) -> str:
-    found = pattern.search(words)
-    return found.group(0).strip() if found else ""
+def _electrode_name(file: h5py.File, sweeps: list[Sweep]) -> str:
+    group = child_of(file[sweeps[0].series.location], "electrode")
+    if isinstance(group, h5py.Group):
+        return str(group.name).rsplit("/", 1)[-1]
+    return sweeps[0].label if len(sweeps) == 1 else stem(sweeps[0].label)

@@ -15,10 +15,10 @@ import h5py
 
 from unitclass.errors import FileError
 from unitclass.io.hdf5 import attribute, child_of, identity, text
+from unitclass.io.provenance import is_own as described_as_own
 
 _ROOTS = ("units", "intervals", "acquisition", "processing", "stimulus/presentation", "analysis", "scratch")
 _MAX_DEPTH = 8
-OWN_MARK = "unitclass"
 
 
 @dataclass(frozen=True)
@@ -87,8 +87,8 @@ def _kind(group: h5py.Group, names: list[str], broken: list[BrokenLink]) -> str:
 
 
 def is_own(group: Any) -> bool:
-    """Tell whether this program made a group: its description says so."""
-    return attribute(group, "description").lower().startswith(OWN_MARK)
+    """Tell whether this program made a group or a column: its description says so."""
+    return described_as_own(attribute(group, "description"))
 
 
 def _broken_links(group: h5py.Group, location: str, names: list[str]) -> Iterator[BrokenLink]:

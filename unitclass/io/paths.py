@@ -29,7 +29,8 @@ def find_files(paths: Sequence[str]) -> tuple[str, ...]:
     for path in paths:
         matches = list(_matches(path))
         if not matches:
-            raise UsageError("no NWB file there", where=path, remedy="name a .nwb file, a folder that holds some, or a glob")
+            raise UsageError("no NWB file there", where=path,
+                             remedy="name a .nwb file, a folder that holds some, or a glob")
         found.update(dict.fromkeys(matches))
     return tuple(found)
 

@@ -7,6 +7,7 @@ so that "aux" holds no X and "open" no PN. Names are common practice of the trad
 from __future__ import annotations
 
 import re
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 
@@ -91,14 +92,14 @@ class Guess:
     label: str = ""
 
 
-def role_of(name: str, fields: dict[str, str], description: str, unit: str) -> Guess:
+def role_of(name: str, fields: Mapping[str, str], description: str, unit: str) -> Guess:
     """Return the best guess at what a signal is.
 
     Parameters
     ----------
     name : str
         The series' name, or the column's own name where it has one.
-    fields : dict
+    fields : Mapping
         Words that belong to this very channel (electrode label, location, group), by field name.
     description : str
         Description and comments of the series; the first nerve it mentions counts.

@@ -2,123 +2,131 @@
 
 from __future__ import annotations
 
-import re
-from collections.abc import Mapping
-from dataclasses import dataclass
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from typing import Any
 
 import h5py
-import numpy as np
+from numpy.typing import NDArray
 
-from unitclass.io.dynamic_tables import text_columns
+from unitclass.io.column_names import column_names, electrode_words
 from unitclass.io.forms import form_of
-from unitclass.io.hdf5 import child_of, text
 from unitclass.io.roles import Guess, is_membrane, role_of
 from unitclass.io.series import Series, peek
 from unitclass.records import Finding, Signal
 from unitclass.settings import RigSettings
 
-_LISTED = re.compile(r"(?:columns?|channels?|order)\b[^:=]{0,30}[:=]\s*(.+)", re.I | re.S)
-_SEPARATOR = re.compile(r"\s*[,;|]\s*|\s+and\s+")
-_NAMING_CHILDREN = ("channel_names", "column_names", "columns", "channels", "labels", "names")
-_TELLING = ("label", "channel_name", "nerve", "name", "location", "group_name", "electrode_label")
+WIDE = 16  # more columns than this without a nerve among them are a probe's
+
+
+@dataclass(frozen=True)
+class ColumnOf:
+    """One column of a series, its name as the user sees it, and what it is taken for."""
+
+    series: Series
+    index: int
+    name: str
+    own_name: str
+    guess: Guess
 
 
 @dataclass(frozen=True)
 class FoundSignals:
-    """The signals of one series, and the lines of the inventory about them."""
+    """The signals of one series, the lines of the inventory about them, and the columns that are cells."""
 
-    signals: tuple[Signal, ...]
-    findings: tuple[Finding, ...]
+    signals: tuple[Signal, ...] = ()
+    findings: tuple[Finding, ...] = ()
+    membranes: tuple[ColumnOf, ...] = ()
+    strengths: Mapping[str, int] = field(default_factory=dict)
+    missing: tuple[str, ...] = ()
 
 
 def signals_of(file: h5py.File, path: str, series: Series, rig: RigSettings) -> FoundSignals:
-    """Return every column of a series as a signal with its role and its form, and why."""
-    names = column_names(file[series.location], series)
-    words = _electrode_words(file, series)
-    samples = peek(file, series)
-    signals, findings = [], []
+    """Return every column of a series as a signal with its role and its form, and why.
+
+    Columns that are a membrane potential come back as `membranes`, those with a gain of zero as
+    lines in `missing`. A wide series without a single nerve's name is one line: a probe.
+    """
+    columns = _columns(file, series, rig)
+    if len(columns) > WIDE and all(c.guess.role == "unknown" for c in columns):
+        return FoundSignals(findings=(Finding(
+            "left out", series.name, series.location, f"{len(columns)} channels and none named after a nerve: "
+            "a probe; name a nerve's channel under [rig] roles to use it"),))
+    cells = tuple(c for c in columns if c.guess.role == "membrane")
+    dead = [c for c in columns if c.guess.role != "membrane" and series.gains[c.index] == 0]
+    left = [c for c in columns if c not in cells and c not in dead]
+    samples = peek(file, series) if left else []
+    signals = [_signal(path, c, [s[:, c.index] for s in samples], rig) for c in left]
+    findings = [_finding(c, s) for c, s in zip(left, signals, strict=True)]
+    return FoundSignals(tuple(signals), tuple(findings), cells, {c.name: c.guess.strength for c in left},
+                        tuple(f"{c.name} [{series.location}] has a gain of zero" for c in dead))
+
+
+def _columns(file: h5py.File, series: Series, rig: RigSettings) -> list[ColumnOf]:
+    words = electrode_words(file, series)
+    own = column_names(file, series, words)
+    found = []
     for j in range(series.n_columns):
-        name = series.name if series.n_columns == 1 else f"{series.name}/{names[j] or j}"
-        guess = _role(series, names[j], words[j], rig, name)
-        form = _form(series, name, names[j], guess.role, [s[:, j] for s in samples], rig)
-        notes = "".join(f"; {note}" for note in series.notes)
-        signals.append(Signal(
-            name=name, role=guess.role, unit=series.unit or "unknown unit", rate_hz=series.times.rate_hz,
-            start_s=series.times.start_s, stop_s=series.times.stop_s, reader=series.reader(path, j),
-            is_integrated=form[0], reason=guess.reason, form_reason=form[1], description=series.words,
-            location=series.location))
-        times = f"; {series.times.note}" if series.times.note else ""
-        findings.append(Finding(guess.label or guess.role, name, series.location,
-                                f"{guess.reason}; {form[1]}{times}{notes}"))
-    return FoundSignals(tuple(signals), tuple(findings))
+        name = series.name if series.n_columns == 1 else f"{series.name}/{own[j] or j}"
+        found.append(ColumnOf(series, j, name, own[j], _guess(series, name, own[j], words[j], rig)))
+    return found
 
 
-def column_names(group: h5py.Group, series: Series) -> list[str]:
-    """Return the columns' own names where the file gives them; empty text where not."""
-    n = series.n_columns
-    if n == 1:
-        return [""]
-    for name in _NAMING_CHILDREN:
-        child = child_of(group, name)
-        if isinstance(child, h5py.Dataset) and child.shape == (n,) and child.dtype.kind in "OSU":
-            return [text(v) for v in child[()]]
-        stored = group["data"].attrs.get(name, group.attrs.get(name))
-        if stored is not None and np.size(stored) == n:
-            return [text(v) for v in np.asarray(stored).reshape(-1)]
-    return _names_in_words(series.words, n) or [""] * n
-
-
-def _names_in_words(words: str, n: int) -> list[str]:
-    """Return the names a description lists ("columns: PNA, VNA, HNA"), when there are as many as columns."""
-    listed = _LISTED.search(words)
-    for candidate in ([listed.group(1)] if listed else []) + [words]:
-        first_sentence = re.split(r"\.(?:\s|$)|\n", candidate.strip())[0]
-        parts = [re.sub(r"^(?:ch(?:annel)?\s*)?\d+\s*[=:)]\s*", "", p).strip() for p in _SEPARATOR.split(first_sentence)]
-        parts = [p for p in parts if p]
-        if len(parts) == n and all(len(p) <= 40 for p in parts):
-            return parts
-    return []
-
-
-def _role(series: Series, column: str, words: Mapping[str, str], rig: RigSettings, name: str) -> Guess:
-    for key in (name, series.name if series.n_columns == 1 else "", column):
+def _guess(series: Series, name: str, own_name: str, words: Mapping[str, str], rig: RigSettings) -> Guess:
+    for key in (name, series.name, own_name, series.location):
         if key and key in rig.roles:
-            return Guess(rig.roles[key], "named in the settings (rig.roles)", 3)
-    if series.kind in ("stimulus", "voltage clamp"):
-        return Guess("stimulus", f"a {series.kind} series", 3)
-    many = series.n_columns > 1
-    fields = ({"series": series.name} | dict(words)) if column else dict(words)
-    guess = role_of(column or ("" if many and words else series.name), fields,
-                    "" if many and (column or words) else series.words, series.unit)
-    if guess.strength == 0 and many:
-        return role_of(series.name, {}, series.words, series.unit)
-    return guess
-
-
-def _form(series: Series, name: str, column: str, role: str, samples: list[np.ndarray],
-          rig: RigSettings) -> tuple[bool, str]:
-    for key in (name, series.name):
-        if key in rig.forms:
-            return rig.forms[key] == "integrated", f"{rig.forms[key]}: named in the settings (rig.forms)"
-    said = f"{series.name} {column}".strip()
-    return form_of(said, series.words, role, series.times.rate_hz, samples)
-
-
-def _electrode_words(file: h5py.File, series: Series) -> list[dict[str, str]]:
-    """Return what the electrodes table says of each column's electrode."""
-    region = child_of(file[series.location], "electrodes")
-    table = child_of(file, "general/extracellular_ephys/electrodes")
-    nothing: list[dict[str, str]] = [{} for _ in range(series.n_columns)]
-    if not isinstance(region, h5py.Dataset) or not isinstance(table, h5py.Group) or region.shape != (series.n_columns,):
-        return nothing
-    columns = {name: values for name, values in text_columns(table).items() if name.lower() in _TELLING}
-    rows = [int(v) for v in region[()]]
-    return [{f"electrode {name}": values[row] for name, values in columns.items()
-             if row < len(values) and values[row] and values[row].lower() != "unknown"} for row in rows]
-
-
-def membrane_reason(series: Series) -> str:
-    """Return why a series is a membrane potential; empty when it is not one."""
+            return Guess(rig.roles[key], "named in the settings (rig.roles)", 4)
     if series.kind == "current clamp":
-        return "a current-clamp series"
-    return is_membrane(series.name, series.words, series.unit) if series.kind == "plain" and series.n_columns == 1 else ""
+        return Guess("membrane", "a current-clamp series", 3)
+    if series.kind == "stimulus":
+        return Guess("stimulus", "a stimulus series", 3)
+    is_one = series.n_columns == 1
+    if series.kind == "plain":
+        cell = is_membrane(own_name or series.name, series.words if is_one else "", series.unit)
+        if cell:
+            return Guess("membrane", cell, 3)
+    return _role(series, own_name, words)
+
+
+def _role(series: Series, own_name: str, words: Mapping[str, str]) -> Guess:
+    """Return the role by the column's own name, its electrode, the series' name, then the description."""
+    tries: list[tuple[str, Mapping[str, str], str, str]] = [(own_name, {}, "", "")] if own_name else []
+    if series.n_columns > 1 and words:
+        tries.append(("", {f"electrode {k}": v for k, v in words.items()}, "", ""))
+        tries.append((series.name, {}, "", ""))
+    else:
+        tries.append((series.name, {f"electrode {k}": v for k, v in words.items()}, "", ""))
+    described = "" if series.n_columns > 1 and (own_name or words) else series.words
+    tries.append(("", {}, described, series.unit))
+    guesses = [role_of(*t) for t in tries]
+    return next((g for g in guesses if g.strength), guesses[-1])
+
+
+def _signal(path: str, column: ColumnOf, samples: Sequence[NDArray[Any]], rig: RigSettings) -> Signal:
+    series, times = column.series, column.series.times
+    is_integrated, why = _form(column, samples, rig)
+    return Signal(
+        name=column.name, role=column.guess.role, unit=series.unit or "unknown unit", rate_hz=times.rate_hz,
+        start_s=times.start_s, stop_s=times.stop_s, reader=series.reader(path, column.index),
+        is_integrated=is_integrated, reason=column.guess.reason, form_reason=why, description=series.words,
+        location=series.location)
+
+
+def _form(column: ColumnOf, samples: Sequence[NDArray[Any]], rig: RigSettings) -> tuple[bool, str]:
+    for key in (column.name, column.series.name, column.own_name):
+        if key and key in rig.forms:
+            return rig.forms[key] == "integrated", f"{rig.forms[key]}: named in the settings (rig.forms)"
+    name = f"{column.series.name} {column.own_name}".strip()
+    words = f"{column.series.words} {_module(column.series.location)}"
+    return form_of(name, words, column.guess.role, column.series.times.rate_hz, samples)
+
+
+def _module(location: str) -> str:
+    """Return the words of the groups a series lies in, such as the processing module "integrated"."""
+    return " ".join(location.split("/")[2:-1]).replace("_", " ")
+
+
+def _finding(column: ColumnOf, signal: Signal) -> Finding:
+    notes = "".join(f"; {note}" for note in column.series.notes)
+    return Finding(column.guess.label or column.guess.role, signal.name, signal.location,
+                   f"{signal.reason}; {signal.form_reason}{notes}")
