@@ -196,9 +196,9 @@ def test_mouse_reporting_can_be_turned_off(tmp_path):
 def test_an_idle_program_sends_nothing(tmp_path):
     with review(tmp_path) as terminal:
         wait(terminal)
-        terminal.settle(0.5)
+        terminal.settle(0.3)
         before = len(terminal.raw)
-        terminal.settle(1.0)
+        terminal.settle(0.8)
         assert len(terminal.raw) == before
 
 

@@ -33,13 +33,13 @@ async def _saved(app: ReviewApp, folder: Path, size: tuple[int, int]) -> list[Pa
         await pilot.pause()
         for name, actions in SCREENS.items():
             _press(app, [app.keys.key(action) for action in actions])
-            await pilot.pause(0.2)
+            await pilot.pause()
             written.append(folder / f"{name}.svg")
             drawn = app.export_screenshot(title=f"unitclass: {name}")
             written[-1].write_text(drawn.replace(*BRIGHT), encoding="utf-8")
             if actions:
                 _press(app, ["escape"])
-                await pilot.pause(0.2)
+                await pilot.pause()
     return written
 
 
