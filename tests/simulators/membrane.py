@@ -214,3 +214,64 @@ def _stimuli(recipe: Recipe, n: int, rng: np.random.Generator, events: Array) ->
             first = round(t * recipe.rate_hz)
             out[first : first + round(recipe.step_s * recipe.rate_hz)] += recipe.step_mv * rng.choice([-1.0, 1.0])
     return out
+
+
+# ------------------------------------------------------------------------- two model cells
+
+def hodgkin_huxley(rate_hz: float, duration_s: float, current: float, *, from_s: float = 0.1, sub: int = 4) -> Array:
+    """Return the potential of the squid axon under a step of current, mV at `rate_hz`.
+
+    Hodgkin & Huxley, J Physiol 1952;117:500, in the modern sign convention (rest at -65 mV);
+    `current` in microamperes per square centimetre. Forward Euler at `sub` steps a sample.
+    """
+    dt = 1e3 / rate_hz / sub
+    v, m, h, n = -65.0, 0.0529, 0.5961, 0.3177
+    out = np.empty(round(duration_s * rate_hz))
+    exp = np.exp
+    for i in range(out.size * sub):
+        opening_n = 0.01 * (v + 55) / (1 - exp(-(v + 55) / 10)) if abs(v + 55) > 1e-7 else 0.1
+        opening_m = 0.1 * (v + 40) / (1 - exp(-(v + 40) / 10)) if abs(v + 40) > 1e-7 else 1.0
+        m += dt * (opening_m * (1 - m) - 4 * exp(-(v + 65) / 18) * m)
+        h += dt * (0.07 * exp(-(v + 65) / 20) * (1 - h) - h / (1 + exp(-(v + 35) / 10)))
+        n += dt * (opening_n * (1 - n) - 0.125 * exp(-(v + 65) / 80) * n)
+        into = current if i * dt >= 1e3 * from_s else 0.0
+        v += dt * (into - 120 * m**3 * h * (v - 50) - 36 * n**4 * (v + 77) - 0.3 * (v + 54.387))
+        if i % sub == 0:
+            out[i // sub] = v
+    return out
+
+
+@dataclass(frozen=True)
+class LeakyCell:
+    """A leaky integrate-and-fire cell under constant current, solved in closed form.
+
+    It fires every tau ln(drive / (drive - threshold)) + refractory, where drive is R times I and
+    both are above the resting potential to which the cell is reset.
+    """
+
+    tau_ms: float = 20.0
+    drive_mv: float = 25.0
+    threshold_mv: float = 15.0
+    rest_mv: float = -65.0
+    refractory_ms: float = 3.0
+
+    @property
+    def interval_s(self) -> float:
+        """Return the closed-form interval."""
+        return 1e-3 * (self.tau_ms * np.log(self.drive_mv / (self.drive_mv - self.threshold_mv)) + self.refractory_ms)
+
+    def trace(self, rate_hz: float, duration_s: float) -> tuple[Array, Array]:
+        """Return the potential in mV, and the moments at which it meets the threshold.
+
+        From threshold it rises in a straight line for 0.4 ms to 85 mV above rest and falls back
+        to rest within the refractory period.
+        """
+        t = np.arange(round(duration_s * rate_hz)) / rate_hz
+        climb_s = self.interval_s - 1e-3 * self.refractory_ms
+        since = np.where(t < climb_s, t + 1e-3 * self.refractory_ms, (t - climb_s) % self.interval_s)
+        ms = 1e3 * since
+        climbing = self.drive_mv * (1 - np.exp(-(ms - self.refractory_ms) / self.tau_ms))
+        rising = self.threshold_mv + (85.0 - self.threshold_mv) * ms / 0.4
+        falling = 85.0 * np.maximum(0.0, 1 - (ms - 0.4) / 1.2)
+        above = np.where(ms < 0.4, rising, np.where(ms < self.refractory_ms, falling, climbing))
+        return self.rest_mv + above, np.arange(climb_s, duration_s, self.interval_s)

@@ -20,7 +20,7 @@ LEVEL_MV, NOISE_RATIO, SIZE_RATIO = 10.0, 2.0, 1.6
 """Two such differences at once are a changed access; one alone is a bias current, a state, a rhythm."""
 
 ALONE_NOISE_RATIO, ALONE_SIZE_RATIO = 4.0, 2.5
-LEAST_NOISE_MV = 0.02
+LEAST_NOISE_MV = 0.05
 
 
 @dataclass(frozen=True)

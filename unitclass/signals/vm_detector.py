@@ -23,6 +23,9 @@ from unitclass.signals.vm_stream import Block
 LEAST_Z = 3.3
 """Events below so many standard deviations of the score are not looked at."""
 
+LEAST_NOISE_MV = 0.15
+"""A trace without noise (a model cell) still has a smallest event worth a look: half a millivolt."""
+
 AHP_MS = 10.0
 """The after-hyperpolarisation is sought for so long after the steepest rise."""
 
@@ -155,12 +158,11 @@ def _peaks(score: FloatArray, detector: Detector) -> tuple[IntArray, float]:
     grid = detector.grid
     apart = grid.bins(1.2)
     rough = noise_sd(score, at_most=2000)
-    start = min(rough, detector.noise_mv) or max(rough, detector.noise_mv)
+    start = max(min(rough, detector.noise_mv), LEAST_NOISE_MV)
     peaks = peaks_above(score, LEAST_Z * start, apart)
     quiet = quiet_mask(score.size, peaks[score[peaks] > 5.0 * start], grid.bins(4.0), grid.bins(8.0))
     noise = noise_sd(score[quiet], at_most=2000) if quiet.mean() > 0.2 else rough
-    # A trace without noise (a model cell) still has a smallest event worth a look.
-    noise = max(noise, 1e-3)
+    noise = max(noise, LEAST_NOISE_MV)
     return peaks[score[peaks] > LEAST_Z * noise], noise
 
 

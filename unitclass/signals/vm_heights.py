@@ -76,7 +76,7 @@ def sort_events(events: Events, detector: Detector, settings: MembraneSettings, 
 def spike_shaped(events: Events, detector: Detector, settings: MembraneSettings) -> BoolArray:
     """Return which events rise steeply, last long enough, and fall again on both sides."""
     slope = settings.min_dvdt_mv_ms or detector.least_slope_mv_ms(events.size_mv)
-    return ((events.max_dvdt_mv_ms >= slope) & (events.height_mv > 0.0) & _stands_out(events)
+    return ((events.max_dvdt_mv_ms >= slope) & _stands_out(events) & _is_as_high_as_it_scores(events, detector)
             & ~too_brief(events, settings, detector)
             & (events.half_width_ms <= max(6.0, 4.0 * detector.lens.width_ms)))
 
@@ -89,6 +89,14 @@ def _stands_out(events: Events) -> BoolArray:
     usual = min(float(np.median(ratio[clear])), 1.0) if clear.any() else 1.0
     noise = events.size_mv / np.maximum(events.z, 1e-9)
     return np.asarray(events.bump_mv >= 0.35 * usual * events.size_mv - 2.0 * noise)
+
+
+def _is_as_high_as_it_scores(events: Events, detector: Detector) -> BoolArray:
+    """Return which events rise by about what their score says: not the echo of a pop in the filter."""
+    clear = (events.z > 4.5) & (events.height_mv > 0.0)
+    usual = float(np.median(events.height_mv[clear] / events.size_mv[clear])) if clear.any() else 1.0
+    least = 0.65 * usual * events.size_mv - 0.5 * detector.value_noise_mv
+    return np.asarray((events.height_mv > 0.0) & (events.height_mv >= least))
 
 
 def too_brief(events: Events, settings: MembraneSettings, detector: Detector, *,

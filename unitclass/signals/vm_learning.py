@@ -9,7 +9,7 @@ import numpy as np
 from unitclass.records import BoolArray, FloatArray, IntArray
 from unitclass.settings import MembraneSettings
 from unitclass.signals.vm_bumps import BumpFilter, Grid, peaks_above, quiet_noise_sd
-from unitclass.signals.vm_detector import Detector, Events, Kernel, events_in
+from unitclass.signals.vm_detector import LEAST_NOISE_MV, Detector, Events, Kernel, events_in
 from unitclass.signals.vm_heights import dominant_size, spike_shaped
 from unitclass.signals.vm_kernel import matched_taps
 from unitclass.signals.vm_measures import Lens
@@ -53,7 +53,7 @@ def _bump_detector(sample: Sample, grid: Grid, width_ms: float) -> Detector:
     lens = Lens(grid.rate_hz, width_ms, slope_samples=max(1, round(0.15e-3 * grid.rate_hz)))
     bump = BumpFilter(grid, width_ms)
     noise = quiet_noise_sd(np.concatenate([bump.bumps(c) for c in sample.coarse]), 2 * bump.half_span)
-    return Detector(grid, bump, lens, max(noise, 1e-3), slope_noise(sample, lens),
+    return Detector(grid, bump, lens, max(noise, LEAST_NOISE_MV), slope_noise(sample, lens),
                     value_noise_mv=value_noise(sample, lens))
 
 
@@ -78,7 +78,7 @@ def _matched_detector(sample: Sample, detector: Detector, events: Events) -> Det
     taps, before = matched_taps(sample, detector.grid, _centres(sample, detector, events), width)
     bare = replace(detector, bump=bump, kernel=Kernel(taps, before, 0.0))
     scores = [bare.score(c) for c in sample.coarse]
-    noise = max(quiet_noise_sd(np.concatenate(scores), 2 * taps.size), 1e-3)
+    noise = max(quiet_noise_sd(np.concatenate(scores), 2 * taps.size), LEAST_NOISE_MV)
     bare = replace(bare, noise_mv=noise)
     timing = choose_timing(sample, bare, _centres(sample, bare, events), scores, width)
     return replace(bare, lens=timing.lens, slope_noise_mv_ms=slope_noise(sample, timing.lens),

@@ -90,7 +90,13 @@ def _seconds(own: FloatArray, start_s: float, stop_s: float, bin_s: float) -> Se
     change = np.abs(rows[:, 1::stride] - rows[:, :-1:stride]) if size > 1 else np.zeros((n, 1))
     times = start_s + np.arange(n + 1) * (size * bin_s)
     times[-1] = stop_s
-    return Seconds(times[:-1], times[1:], np.median(rows[:, ::stride], axis=1), np.median(change, axis=1))
+    return Seconds(times[:-1], times[1:], np.median(rows[:, ::stride], axis=1), _lower_mean(change))
+
+
+def _lower_mean(changes: FloatArray) -> FloatArray:
+    """Return the mean of the smaller four fifths of each row: spikes left out, coarse steps averaged."""
+    n = max(1, round(0.8 * changes.shape[1]))
+    return np.asarray(np.sort(changes, axis=1)[:, :n].mean(axis=1))
 
 
 def _stuck_runs(own: FloatArray, start_s: float, bin_s: float) -> Iterable[Stuck]:
