@@ -89,7 +89,8 @@ class BumpFilter:
         flank = np.subtract(total[..., self.flank :], total[..., : -self.flank]) / self.flank
         centre = np.subtract(total[..., self.centre :], total[..., : -self.centre]) / self.centre
         first = reach + self.centre // 2
-        sides = np.maximum(flank[..., :n], flank[..., span : span + n])
+        later = span + self.gap
+        sides = np.maximum(flank[..., :n], flank[..., later : later + n])
         out[..., first : first + n] = centre[..., reach : reach + n] - sides
         return out
 
