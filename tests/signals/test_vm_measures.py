@@ -87,7 +87,8 @@ def efel_features() -> dict[str, FloatArray]:
     efel.set_setting("DerivativeThreshold", 10.0)
     efel.set_setting("interp_step", 0.005)
     trace = {"T": np.arange(values.size) * 1e3 / RATE, "V": values, "stim_start": [0.0], "stim_end": [1000.0]}
-    names = ["peak_time", "AP_begin_voltage", "AP_amplitude", "AP_duration_half_width", "min_AHP_values", "AP_peak_upstroke"]
+    names = ["peak_time", "AP_begin_voltage", "AP_amplitude", "AP_duration_half_width", "min_AHP_values",
+             "AP_peak_upstroke"]
     return {name: np.asarray(found) for name, found in efel.get_feature_values([trace], names)[0].items()}
 
 

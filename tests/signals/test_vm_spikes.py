@@ -53,7 +53,7 @@ def test_twelve_mv_over_two_mv_of_noise_are_nearly_all_found(rate_hz: float, low
     {"synaptic_mv": 3.0},
     {"quantum_mv": 0.5, "noise_mv": 0.1},
     {"noise_mv": 0.0, "synaptic_mv": 0.0},
-], ids=["drift", "shrinking", "fast", "spikelets", "pops", "steps", "synaptic", "coarse steps of the converter", "noise-free"])
+], ids=["drift", "shrinking", "fast", "spikelets", "pops", "steps", "synaptic", "coarse converter", "noise-free"])
 def test_what_real_recordings_hold_costs_no_spikes(change: dict[str, float]) -> None:
     _, _, match = found_in(replace(Recipe(duration_s=20, rate_hz=10000), **change))
     assert match.f1 >= 0.998

@@ -51,9 +51,8 @@ def scale_problem(values: ArrayLike, unit: str) -> str:
 
 
 def _can_be_mv(low: float, middle: float, high: float) -> bool:
-    span = high - low
-    is_constant = span == 0.0 and -130.0 <= middle <= -5.0
-    return bool(-150.0 <= middle <= 60.0 and low >= -250.0 and high <= 250.0 and (span >= 0.8 or is_constant))
+    is_cell_level = middle <= -5.0
+    return bool(-150.0 <= middle <= 60.0 and low >= -250.0 and high <= 250.0 and (is_cell_level or high - low >= 0.8))
 
 
 def _seeming_scale(low: float, middle: float, high: float) -> str:
@@ -71,6 +70,8 @@ def _seeming_scale(low: float, middle: float, high: float) -> str:
             return words
     if abs(middle) > 250.0 or high - low > 500.0:
         return "they look like counts of the A/D converter: the conversion is missing"
+    if 0.8e-3 <= high - low <= 0.25:
+        return "they look like volts around 0: the conversion to mV is missing"
     return "check the series' conversion and offset"
 
 
