@@ -241,3 +241,23 @@ def test_nothing_to_find_spikes_in_is_said_in_one_line(values: np.ndarray, words
 def test_a_rate_too_slow_for_spikes_is_refused() -> None:
     with pytest.raises(SignalError, match="1000 Hz, too slow"):
         find_vm_spikes(membrane_of(np.zeros(5000), 1000), MembraneSettings())
+
+
+@pytest.mark.parametrize("active", [(0.0, 0.0), (0.0, 0.4)], ids=["silent", "firing"])
+def test_large_synaptic_potentials_are_neither_spikes_nor_many_spikelets(active: tuple[float, float]) -> None:
+    rate, n_potentials = 10000, 600
+    trace = membrane_trace(Recipe(duration_s=20, rate_hz=rate, active=active), np.random.default_rng(8))
+    rng = np.random.default_rng(9)
+    values, ms = trace.values_mv.copy(), np.arange(400) * 1e3 / rate
+    for first in rng.integers(0, values.size - 400, n_potentials):
+        values[first : first + 400] += 1.4 * rng.gamma(4.0, 1.0) * (np.exp(-ms / 6.0) - np.exp(-ms / 0.8))
+    spikes = find_vm_spikes(membrane_of(values, rate), MembraneSettings())
+    assert matched(spikes.time_s, trace.spike_s).f1 >= 0.995
+    assert spikes.n_spikelets < 0.1 * n_potentials
+
+
+def test_hum_of_the_mains_hides_no_small_spikes() -> None:
+    trace = membrane_trace(Recipe(20, 10000, 2.0, shape=SMALL), np.random.default_rng(10))
+    hum = 5.0 * np.sin(2 * np.pi * 50.0 * np.arange(trace.values_mv.size) / 10000)
+    spikes = find_vm_spikes(membrane_of(trace.values_mv + hum, 10000), MembraneSettings())
+    assert matched(spikes.time_s, trace.spike_s).f1 >= 0.99

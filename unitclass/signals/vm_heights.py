@@ -22,6 +22,10 @@ from unitclass.signals.vm_detector import Detector, Events
 LEAST_HEIGHT_MV = 7.0
 """A cell whose largest events are smaller has no spikes here: remote sharp electrodes see over 10 mV."""
 
+WIDEST_SPIKELET_MS = 2.5
+GRADED_CV = 0.18
+"""Events whose sizes vary more (noise alone gives 0.05 to 0.15) are not all-or-none."""
+
 BURST_S = 0.1
 BURST_SHRINK = 0.6
 
@@ -65,8 +69,7 @@ def sort_events(events: Events, detector: Detector, settings: MembraneSettings, 
     passing = shaped & usual & (events.z >= least_z) & (events.height_mv >= settings.min_height_mv)
     is_spike, jumps = _follow(events, passing, dominant, split / dominant)
     is_spike = _refractory(events, is_spike, settings.refractory_ms)
-    spikelet = shaped & usual & ~is_spike & (events.z > 5.5) & (events.height_mv > 2.0)
-    spikelet &= events.half_width_ms >= 0.6 * width
+    spikelet = shaped & usual & ~is_spike & _sharp(events) & (events.half_width_ms >= 0.6 * width)
     spikelet &= ~_near(events.time_s, events.time_s[is_spike], 0.004)
     n_artefacts = int(np.sum((events.z > 6.0) & ~is_spike & (events.height_mv > 0.4 * dominant)
                              & too_brief(events, settings, detector, usual_ms=width)))
@@ -188,10 +191,19 @@ def _is_tall_enough(events: Events, clear: BoolArray, split: float, settings: Me
     return bool(tall.size and np.median(tall) >= (settings.min_height_mv or LEAST_HEIGHT_MV))
 
 
+def _sharp(events: Events) -> BoolArray:
+    """Return which events are clear and as sharp as an action current: synaptic potentials fall slowly."""
+    return np.asarray((events.z > 5.5) & (events.height_mv > 2.0) & (events.bump_mv >= 0.3 * events.height_mv))
+
+
 def _no_spikes(events: Events, clear: BoolArray, dominant: float, brief: BoolArray) -> Sorted:
-    none = np.zeros(events.time_s.size, bool)
+    """Return the verdict on a cell without spikes: all-or-none events of one size are spikelets."""
+    spikelet = clear & _sharp(events) & (events.half_width_ms < WIDEST_SPIKELET_MS)
+    sizes = events.size_mv[spikelet]
+    if sizes.size >= 10 and 1.4826 * np.median(np.abs(sizes - np.median(sizes))) > GRADED_CV * np.median(sizes):
+        spikelet = np.zeros(spikelet.size, bool)  # graded: synaptic
     n_artefacts = int(np.sum(brief & (events.z > 6.0) & (events.height_mv > LEAST_HEIGHT_MV)))
-    return Sorted(none, clear & (events.z > 5.5) & (events.height_mv > 2.0), n_artefacts, dominant, 5.5)
+    return Sorted(np.zeros(events.time_s.size, bool), spikelet, n_artefacts, dominant, 5.5)
 
 
 def _follow(events: Events, passing: BoolArray, dominant: float, least: float) -> tuple[BoolArray, tuple[float, ...]]:
