@@ -152,7 +152,9 @@ def _fit(unit: UnitCounts, type_id: str, drawn: DrawnFamilies,
     weight = float(evidence_weight(unit.n_spikes, unit.dispersion, settings.classify.concentration)[0])
     share = draw_posterior(log_lik, weight, drawn, type_id)
     scaled = rate * (unit.n_spikes[0] / (rate @ unit.exposure_s[0]))[:, None]
-    return share @ scaled, *_weighted_quantiles(scaled, share)
+    mean = share @ scaled
+    low, high = _weighted_quantiles(scaled, share)
+    return mean, np.minimum(low, mean), np.maximum(high, mean)  # a few strong draws can pull the mean out
 
 
 def _weighted_quantiles(values: FloatArray, share: FloatArray) -> tuple[FloatArray, FloatArray]:
