@@ -6,6 +6,7 @@ read back (extensions, old namespaces, broken links) and that must stay as it is
 
 from __future__ import annotations
 
+import re
 import uuid
 from typing import Any
 
@@ -19,6 +20,7 @@ from unitclass.io.table_columns import Column, Table
 
 _TEXT = h5py.string_dtype()
 _COMPRESSED_FROM = 100_000
+_CORE_TYPES = ("TimeIntervals", "Units")
 
 
 def add_table(parent: h5py.Group, table: Table) -> str:
@@ -28,12 +30,9 @@ def add_table(parent: h5py.Group, table: Table) -> str:
     program's name in front.
     """
     group = parent.create_group(_free_name(parent, table.name))
-    kind_space = "core" if table.kind != "DynamicTable" else _table_namespace(parent.file)
-    _mark(group, table.kind, kind_space)
+    _mark(group, table.kind)
     group.attrs["description"] = table.description
-    group.attrs["colnames"] = np.array([], dtype=_TEXT)
-    _mark(group.create_dataset("id", data=np.arange(table.n_rows)), "ElementIdentifiers",
-          _table_namespace(parent.file))
+    _mark(group.create_dataset("id", data=np.arange(table.n_rows)), "ElementIdentifiers")
     add_columns(group, table.filled)
     return str(group.name)
 
@@ -47,7 +46,7 @@ def add_columns(group: h5py.Group, columns: tuple[Column, ...]) -> None:
         name = _free_name(group, column.name)
         _write_column(group, name, column)
         names.append(name)
-    group.attrs["colnames"] = np.array(names, dtype=_TEXT)
+    _set_column_names(group, names)
 
 
 def column_names(group: h5py.Group) -> list[str]:
@@ -85,7 +84,7 @@ def remove_own_columns(group: h5py.Group) -> None:
         if f"{name}_index" in group:
             del group[f"{name}_index"]
     if own:
-        group.attrs["colnames"] = np.array([n for n in column_names(group) if n not in own], dtype=_TEXT)
+        _set_column_names(group, [name for name in column_names(group) if name not in own])
 
 
 def own_child(group: h5py.Group, name: str) -> Any:
@@ -97,12 +96,11 @@ def own_child(group: h5py.Group, name: str) -> Any:
 
 
 def _write_column(group: h5py.Group, name: str, column: Column) -> None:
-    space = _table_namespace(group.file)
     data = _stored(group.file, column)
     dataset = group.create_dataset(name, data=data, dtype=data.dtype,
                                    compression="gzip" if data.nbytes > _COMPRESSED_FROM else None)
     is_region = column.points_to not in ("", "objects")
-    _mark(dataset, "DynamicTableRegion" if is_region else "VectorData", space)
+    _mark(dataset, "DynamicTableRegion" if is_region else "VectorData")
     dataset.attrs["description"] = column.description
     if is_region:
         dataset.attrs["table"] = group.file[column.points_to].ref
@@ -110,7 +108,7 @@ def _write_column(group: h5py.Group, name: str, column: Column) -> None:
         dataset.attrs["resolution"] = column.resolution_s
     if column.lengths is not None:
         index = group.create_dataset(f"{name}_index", data=np.cumsum(column.lengths).astype(np.uint64))
-        _mark(index, "VectorIndex", space)
+        _mark(index, "VectorIndex")
         index.attrs["description"] = f"where each row's cell of {name} ends"
         index.attrs["target"] = dataset.ref
 
@@ -126,10 +124,19 @@ def _stored(file: h5py.File, column: Column) -> np.ndarray[Any, Any]:
     return values
 
 
-def _mark(thing: Any, kind: str, namespace: str) -> None:
+def _mark(thing: Any, kind: str) -> None:
     thing.attrs["neurodata_type"] = kind
-    thing.attrs["namespace"] = namespace
+    thing.attrs["namespace"] = "core" if kind in _CORE_TYPES else _table_namespace(thing.file)
     thing.attrs["object_id"] = str(uuid.uuid4())
+    if _version(thing.file) == (2, 0):
+        thing.attrs["help"] = "see description"
+
+
+def _set_column_names(group: h5py.Group, names: list[str]) -> None:
+    # Until 2.2 the standard wants ASCII, which readers tell by a fixed length.
+    wants_ascii = _version(group.file) <= (2, 2) and all(name.isascii() for name in names)
+    kind = h5py.string_dtype("ascii", max(map(len, names), default=1)) if wants_ascii else _TEXT
+    group.attrs.create("colnames", names, shape=(len(names),), dtype=kind)
 
 
 def _free_name(group: h5py.Group, name: str) -> str:
@@ -139,6 +146,10 @@ def _free_name(group: h5py.Group, name: str) -> str:
 
 def _table_namespace(file: h5py.File) -> str:
     """Return the namespace that holds tables: hdmf-common since NWB 2.2, core before."""
-    version = attribute(file, "nwb_version").split(".")
-    is_old = version[:1] == ["2"] and version[1:2] in (["0"], ["1"])
-    return "core" if is_old and "hdmf-common" not in (child_of(file, "specifications") or ()) else "hdmf-common"
+    has_own = "hdmf-common" in (child_of(file, "specifications") or ())
+    return "core" if _version(file) < (2, 2) and not has_own else "hdmf-common"
+
+
+def _version(file: h5py.File) -> tuple[int, int]:
+    found = re.match(r"(\d+)\.(\d+)", attribute(file, "nwb_version"))
+    return (int(found[1]), int(found[2])) if found else (2, 99)

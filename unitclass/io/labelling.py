@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import datetime
 import uuid
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -18,7 +19,6 @@ from unitclass.io.hdf5_tables import (
     own_child,
     remove_own_columns,
     remove_own_tables,
-    row_ids,
 )
 from unitclass.io.labelled_tables import (
     cycles_table,
@@ -41,14 +41,16 @@ _TEXT = h5py.string_dtype()
 class Labelling:
     """All that goes into a labelled file.
 
-    `condition` is the one whose labels stand in the units table, None for none of them; `run`
-    says in words how to repeat the analysis; `where` is the file that messages name.
+    `condition` is the one whose labels stand in the units table, None for none of them;
+    `tables` are the source's units tables, path to row ids; `run` says in words how to repeat
+    the analysis; `where` is the file that messages name.
     """
 
     recording: Recording
     result: SessionResult
     labels: Labels
     condition: ConditionResult | None
+    tables: Mapping[str, list[str]]
     run: str
     where: str
 
@@ -79,7 +81,7 @@ def add_labels(path: Path, labelling: Labelling) -> Written:
     with h5py.File(path, "r+") as file:
         _make_new(file)
         intervals, analysis = (_place(file, name, labelling.where) for name in ("intervals", "analysis"))
-        _remove_earlier(file, labelling.result)
+        _remove_earlier(file, labelling.tables)
         written: dict[str, tuple[Column, ...]] = {}
         rows = _units(file, labelling, written)
         for table in _tables(labelling, rows):
@@ -100,14 +102,13 @@ def _tables(labelling: Labelling, rows: UnitRows) -> list[Table]:
 
 def _units(file: h5py.File, labelling: Labelling, written: dict[str, tuple[Column, ...]]) -> UnitRows:
     """Label the units table, or make one of the intracellular cells; return who stands where."""
-    group = own_child(file, "units")
-    if isinstance(group, h5py.Group):
-        rows = rows_by_id(labelling.recording, row_ids(group), labelling.where)
+    if labelling.recording.units and labelling.tables:
+        rows = rows_by_id(labelling.recording, labelling.tables, labelling.where)
         _add_vm_units(file, labelling, "intracellular_units", written)
-    elif "units" in file.keys():  # noqa: SIM118  (`in file` would follow a link to another file)
-        return UnitRows("", 0)
-    else:
+    elif file.get("units", getlink=True) is None:
         rows = _add_vm_units(file, labelling, "units", written)
+    else:
+        rows = _add_vm_units(file, labelling, "intracellular_units", written)
     if rows.path and labelling.condition:
         columns = tuple(c for c in label_columns(labelling.condition, labelling.labels, rows) if not c.is_empty)
         add_columns(file[rows.path], columns)
@@ -130,17 +131,14 @@ def _add(parent: h5py.Group, table: Table, written: dict[str, tuple[Column, ...]
     return path
 
 
-def _remove_earlier(file: h5py.File, result: SessionResult) -> None:
+def _remove_earlier(file: h5py.File, tables: Iterable[str]) -> None:
     remove_own_tables(file["intervals"])
     remove_own_tables(file["analysis"])
     units = own_child(file, "units")
-    if not isinstance(units, h5py.Group):
-        return
-    finds_spikes_again = any(unit.vm_spikes is not None for _, unit in result.units())
-    if is_own(attribute(units, "description")) and finds_spikes_again:
+    if isinstance(units, h5py.Group) and is_own(attribute(units, "description")):
         del file["units"]
-    else:
-        remove_own_columns(units)
+    for path in tables:
+        remove_own_columns(file[path])
 
 
 def _place(file: h5py.File, name: str, where: str) -> h5py.Group:

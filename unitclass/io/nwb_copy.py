@@ -8,6 +8,7 @@ from collections.abc import Iterator
 from pathlib import Path
 
 import h5py
+import numpy as np
 
 from unitclass.errors import TargetError
 from unitclass.io.hdf5 import child_of
@@ -34,18 +35,23 @@ def copy_bytes(source: str, temporary: Path) -> None:
                           remedy="wait until the recording has ended")
 
 
-def relocate_links(path: Path, old_folder: str) -> None:
-    """Rewrite what the file at `path` points to by relative path, as it came from `old_folder`.
+def relocate(path: Path, source: str, *, links: bool = True) -> None:
+    """Make good what the file at `path` points to by relative path, as it came from `source`.
 
-    That is external links, and the files that image series name.
+    The files that image series name and, if `links`, external links are rewritten; data that
+    HDF5 gathers from other files (virtual and externally stored datasets) is copied, since from
+    another folder it would read as fill values without an error.
     """
-    new_folder = str(path.parent)
+    old_folder, new_folder = os.path.dirname(os.path.abspath(source)), str(path.parent)
     if os.path.realpath(old_folder) == os.path.realpath(new_folder):
         return
-    with h5py.File(path, "r+") as file:
+    with h5py.File(path, "r+") as file, h5py.File(source, "r") as original:
         for group in list(groups_of(file)):
-            _relocate_external_links(group, old_folder, new_folder)
+            if links:
+                _relocate_external_links(group, old_folder, new_folder)
             _relocate_image_files(group, old_folder, new_folder)
+            for name in list(group):
+                _gather(group, name, original)
 
 
 def _relocate_external_links(group: h5py.Group, old_folder: str, new_folder: str) -> None:
@@ -88,9 +94,26 @@ def _relocate_image_files(group: h5py.Group, old_folder: str, new_folder: str) -
     dataset = group["external_file"]
     if not isinstance(dataset, h5py.Dataset) or h5py.check_string_dtype(dataset.dtype) is None or not dataset.size:
         return
-    moved = [moved_path(text_of(name), old_folder, new_folder) for name in dataset[()].reshape(-1)]
+    names = [text_of(name) for name in np.atleast_1d(dataset[()]).reshape(-1)]
+    moved = [moved_path(name, old_folder, new_folder) if os.path.exists(os.path.join(old_folder, name)) else name
+             for name in names]
+    if moved == names:
+        return
     attributes = dict(dataset.attrs)
     shape = dataset.shape
     del group["external_file"]
     group.create_dataset("external_file", shape=shape, dtype=_TEXT)[...] = moved if shape else moved[0]
     group["external_file"].attrs.update(attributes)
+
+
+def _gather(group: h5py.Group, name: str, original: h5py.File) -> None:
+    """Replace a dataset whose values lie in other files by one that holds them."""
+    dataset = child_of(group, name) if isinstance(group.get(name, getlink=True), h5py.HardLink) else None
+    if not isinstance(dataset, h5py.Dataset) or not (dataset.is_virtual or dataset.external):
+        return
+    values, attributes = original[dataset.name], dict(dataset.attrs)
+    del group[name]
+    whole = group.create_dataset(name, shape=values.shape, dtype=values.dtype, chunks=True)
+    for chunk in whole.iter_chunks():
+        whole[chunk] = values[chunk]
+    whole.attrs.update(attributes)

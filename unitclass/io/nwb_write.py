@@ -11,13 +11,13 @@ from pathlib import Path
 
 from unitclass.errors import TargetError, UnitclassError
 from unitclass.io.atomic import check_target, written_whole
-from unitclass.io.hdf5 import opened
 from unitclass.io.labelled_units import labelled_condition
 from unitclass.io.labelling import Labelling, add_labels
 from unitclass.io.nwb_check import check_written
-from unitclass.io.nwb_copy import copy_bytes, relocate_links
+from unitclass.io.nwb_copy import copy_bytes, relocate
 from unitclass.io.nwb_linked_copy import copy_with_links
 from unitclass.io.provenance import run_in_words
+from unitclass.io.unit_rows import units_tables
 from unitclass.records import Labels, Recording, SessionResult
 from unitclass.settings import Settings
 
@@ -58,9 +58,8 @@ def write_labelled(source: str, target: str, recording: Recording, result: Sessi
     _check_apart(source, target)
     check_target(target, force=force)
     condition = labelled_condition(result, only, source)
-    labelling = Labelling(recording, result, labels, condition, run_in_words(result, settings), source)
-    with opened(source):  # refuses what is locked, cut off or no HDF5, in its own words
-        pass
+    labelling = Labelling(recording, result, labels, condition, units_tables(source),
+                          run_in_words(result, settings), source)
     with written_whole(target, force=force) as temporary, _failures_named(target):
         _copy(source, temporary, link_raw=link_raw)
         _claim_space(temporary, labelling.size)
@@ -85,7 +84,7 @@ def _copy(source: str, temporary: Path, *, link_raw: bool) -> None:
         copy_with_links(source, temporary)
     else:
         copy_bytes(source, temporary)
-        relocate_links(temporary, os.path.dirname(os.path.abspath(source)))
+    relocate(temporary, source, links=not link_raw)
 
 
 def _claim_space(path: Path, n_bytes: int) -> None:

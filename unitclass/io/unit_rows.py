@@ -8,10 +8,11 @@ from dataclasses import dataclass, field
 import numpy as np
 
 from unitclass.errors import TargetError
+from unitclass.io.hdf5 import opened
+from unitclass.io.hdf5_tables import row_ids
+from unitclass.io.nwb_discover import discover
 from unitclass.io.table_columns import Column, text_column
 from unitclass.records import FloatArray, Recording, UnitResult
-
-UNITS = "/units"
 
 
 @dataclass(frozen=True)
@@ -40,22 +41,40 @@ class UnitRows:
         return Column("unit", "the unit, as a row of the units table", found, lengths, points_to=self.path), name
 
 
-def rows_by_id(recording: Recording, ids: list[str], where: str) -> UnitRows:
-    """Return the row of each of the recording's units in a table whose ids are `ids`.
+def units_tables(source: str) -> dict[str, list[str]]:
+    """Return the path and the row ids of every units table that lies in the file itself."""
+    with opened(source) as file:
+        groups = [file[path] for path in discover(file).units]
+        return {str(group.name): row_ids(group) for group in groups if group.file.filename == file.filename}
+
+
+def rows_by_id(recording: Recording, tables: Mapping[str, list[str]], where: str) -> UnitRows:
+    """Return the row of each of the recording's units in the table they were read from.
+
+    Parameters
+    ----------
+    recording : Recording
+        What was analysed.
+    tables : Mapping
+        Path of each units table in the file to the ids of its rows.
+    where : str
+        The file, for the message.
 
     Raises
     ------
     TargetError
-        If the table in the file is not the one that the recording was read from.
+        If none of the tables can be the one that the recording was read from.
     """
     names = [unit.id for unit in recording.units]
-    if len(set(ids)) == len(ids) and set(names) <= set(ids):
-        places = {name: i for i, name in enumerate(ids)}
-        return UnitRows(UNITS, len(ids), {name: places[name] for name in names})
-    if len(names) == len(ids):
-        return UnitRows(UNITS, len(ids), {name: i for i, name in enumerate(names)})
-    raise TargetError(f"its units table has {len(ids)} rows, but {len(names)} units were analysed", where=where,
-                      remedy="analyse it again")
+    for path, ids in tables.items():
+        if len(set(ids)) == len(ids) and set(names) <= set(ids):
+            places = {name: i for i, name in enumerate(ids)}
+            return UnitRows(path, len(ids), {name: places[name] for name in names})
+    for path, ids in tables.items():
+        if len(names) == len(ids):
+            return UnitRows(path, len(ids), {name: i for i, name in enumerate(names)})
+    found = ", ".join(f"{path} has {len(ids)}" for path, ids in tables.items())
+    raise TargetError(f"{len(names)} units were analysed, but {found}", where=where, remedy="analyse it again")
 
 
 def spikes_within(recording: Recording, unit: UnitResult, spans: tuple[tuple[float, float], ...]) -> FloatArray:

@@ -9,7 +9,7 @@ from numpy.typing import ArrayLike
 
 from unitclass.phase.counts import CycleCounts, count_cycles
 from unitclass.phase.exposure import CycleResamples, cycle_resamples, exposure
-from unitclass.phase.warp import to_phase
+from unitclass.phase.warp import checked_times, to_phase
 from unitclass.records import Cycles, FloatArray, IntArray, PhaseHistogram, Raster
 
 CONFIDENCE = 0.95
@@ -149,7 +149,7 @@ def raster(spike_times_s: ArrayLike, cycles: Cycles, max_cycles: int = 200) -> R
     ValueError
         If `spike_times_s` is not 1-D and finite, or the cycles do not ascend.
     """
-    phased = to_phase(spike_times_s, cycles)
+    phased = to_phase(np.sort(checked_times(spike_times_s)), cycles)
     return raster_of(phased.phase, phased.cycle, cycles.n_cycles, max_cycles)
 
 

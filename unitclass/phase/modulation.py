@@ -102,7 +102,9 @@ def eta_squared(rates: ArrayLike) -> float:
     With no modulation it is about (k - 1)/(n k - 1) for n cycles and k fractions, so no fixed
     cut-off tells anything. NaN when nothing varies.
     """
-    return float(shift_null(np.asarray(rates, dtype=float)[None], 1, 0).eta_squared[0])
+    values = np.asarray(rates, dtype=float)
+    # Centred first, or a large common value would drown the differences in rounding.
+    return float(shift_null((values - values.mean())[None], 1, 0).eta_squared[0])
 
 
 def equal_time_counts(counts: CycleCounts) -> tuple[FloatArray, FloatArray]:

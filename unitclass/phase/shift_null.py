@@ -42,7 +42,8 @@ def shift_null(counts: ArrayLike, n_shifts: int, seed: int, *, cycle_s: ArrayLik
 
     Eta squared is the share of the variance of rate over (cycle, fraction) cells that lies between
     fractions [1]_. The probability is (1 + shifts at least as great) / (1 + n_shifts). A unit's
-    result does not depend on which others are given, nor on the number of threads.
+    result does not depend on which others are given, nor on the number of threads. All is NaN with
+    fewer than two cycles or without spikes.
 
     Parameters
     ----------
@@ -76,6 +77,7 @@ def shift_null(counts: ArrayLike, n_shifts: int, seed: int, *, cycle_s: ArrayLik
     spread, within, summed = _variances(cells, is_used, n_fractions / seconds)
     power = _shifted_power(cells, is_used, n_fractions / seconds, n_shifts, np.random.default_rng(seed))
     n_used = is_used.sum(axis=1)
+    spread[n_used < 2] = 0.0
     with np.errstate(invalid="ignore", divide="ignore"):
         between = _power(summed) / n_used
         null = np.where(spread > 0, power / n_used / spread, np.nan).T
