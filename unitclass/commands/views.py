@@ -33,8 +33,9 @@ def print_table(head: Sequence[str], rows: Sequence[Sequence[str]], file: TextIO
         print(line.rstrip()[:limit], file=file)
 
 
-def print_units(result: SessionResult, labels: Labels, file: TextIO = sys.stdout) -> None:
+def print_units(result: SessionResult, labels: Labels, file: TextIO | None = None) -> None:
     """Print one session's suggestions, a table per condition."""
+    file = file or sys.stdout
     for condition in result.conditions:
         print(f"{safe_text(result.path)}  {_condition_line(condition)}", file=file)
         if condition.problem:
@@ -64,8 +65,9 @@ def _unit_cells(unit: UnitResult, labels: Labels) -> tuple[str, ...]:
             "; ".join(suggestion.reasons))
 
 
-def print_inventory(recording: Recording, file: TextIO = sys.stdout) -> None:
+def print_inventory(recording: Recording, file: TextIO | None = None) -> None:
     """Print what one file offers, with the reason for each guess."""
+    file = file or sys.stdout
     print(f"{safe_text(recording.path)}  session {safe_text(recording.session) or '-'}, "
           f"animal {safe_text(recording.animal) or 'not told'}, "
           f"{recording.start_s:.1f} to {recording.stop_s:.1f} s", file=file)
@@ -79,8 +81,9 @@ def print_inventory(recording: Recording, file: TextIO = sys.stdout) -> None:
     print(file=file)
 
 
-def print_cycles(result: SessionResult, file: TextIO = sys.stdout) -> None:
+def print_cycles(result: SessionResult, file: TextIO | None = None) -> None:
     """Print the summary of every condition's cycles."""
+    file = file or sys.stdout
     for condition in result.conditions:
         print(f"{safe_text(result.path)}  {_condition_line(condition)}", file=file)
         for line in (*condition.nerve_cycles.detection, *condition.regime_reasons, *condition.nerve_cycles.notes):
