@@ -8,7 +8,7 @@ from collections.abc import Sequence
 import h5py
 import numpy as np
 
-from unitclass.io.hdf5 import child_of, scalar_number, scalar_text
+from unitclass.io.hdf5 import child_of, identity, scalar_number, scalar_text
 from unitclass.records import Electrode
 
 _FILL = re.compile(r"[^.;,]*\b(?:acetate|KAc|KCH3COO|gluconate|methane?sul\w+|methylsul\w+|KMeSO4|KCl|CsCl|NaCl|chloride|"
@@ -44,6 +44,22 @@ def electrode_of(file: h5py.File, name: str, series: Sequence[str]) -> Electrode
         bridge_balance_mohm=scalar_number(first, "bridge_balance") / 1e6, access_mohm=_access(first, group),
         junction_potential=_said(_JUNCTION, about),
         columns={key: value for key in _CARRIED if (value := scalar_text(group, key))})
+
+
+def electrode_name(file: h5py.File, series: str) -> str:
+    """Return the name that the electrode of a series has in the file's own list; empty when it has none.
+
+    A link shows the object under the series' own path, so the list is searched for the same object.
+    """
+    group = child_of(file[series], "electrode")
+    listed = child_of(file, "general/intracellular_ephys")
+    if not isinstance(group, h5py.Group):
+        return ""
+    for name in listed if isinstance(listed, h5py.Group) else ():
+        other = child_of(listed, name)
+        if isinstance(other, h5py.Group) and identity(other) == identity(group):
+            return str(name)
+    return str(group.name).rsplit("/", 1)[-1]
 
 
 def bias_currents_pa(file: h5py.File, series: Sequence[str]) -> list[float]:

@@ -119,6 +119,8 @@ def _stored(file: h5py.File, column: Column) -> np.ndarray[Any, Any]:
         return np.array([file[path].ref for path in values], dtype=h5py.ref_dtype)
     if values.dtype == object:
         return values.astype(_TEXT)
+    if column.points_to:
+        return values
     if values.dtype.kind in "if" and values.size and set(np.unique(values)) == {0, 1}:
         return values.astype(np.int8)  # wider, readers take such a column for a mistaken yes/no
     return values

@@ -10,7 +10,7 @@ import h5py
 import numpy as np
 
 from unitclass.io.chunk_readers import JoinedChunks
-from unitclass.io.electrodes import bias_currents_pa, electrode_of
+from unitclass.io.electrodes import bias_currents_pa, electrode_name, electrode_of
 from unitclass.io.hdf5 import child_of, scalar_text
 from unitclass.io.roles import voltage_factor_mv
 from unitclass.io.series import Series, peek
@@ -149,7 +149,7 @@ def _cell_key(file: h5py.File, sweep: Sweep) -> str:
     if not isinstance(group, h5py.Group):
         return f"series {stem(sweep.label)}"
     cell = scalar_text(group, "cell_id")
-    return f"cell {cell}" if cell else f"electrode {group.name}"
+    return f"cell {cell}" if cell else f"electrode {electrode_name(file, sweep.series.location)}"
 
 
 def _apart(key: str, sweeps: list[Sweep]) -> list[list[Sweep]]:
@@ -161,7 +161,5 @@ def _apart(key: str, sweeps: list[Sweep]) -> list[list[Sweep]]:
 
 
 def _electrode_name(file: h5py.File, sweeps: list[Sweep]) -> str:
-    group = child_of(file[sweeps[0].series.location], "electrode")
-    if isinstance(group, h5py.Group):
-        return str(group.name).rsplit("/", 1)[-1]
-    return sweeps[0].label if len(sweeps) == 1 else stem(sweeps[0].label)
+    named = electrode_name(file, sweeps[0].series.location)
+    return named or (sweeps[0].label if len(sweeps) == 1 else stem(sweeps[0].label))

@@ -40,9 +40,9 @@ def check_written(temporary: Path, source: str, written: Written, target: str) -
 
 
 def _stands_in(group: h5py.Group, column: Column) -> bool:
-    name = next((n for n in (column.name, f"unitclass_{column.name}") if n in column_names(group)), "")
-    if not name:
-        return False
+    name = next((n for n in (f"unitclass_{column.name}", column.name) if n in column_names(group)), "")
+    if not name:  # a reference to what the file does not hold is left out on purpose
+        return column.points_to == "objects" and not all(path in group.file for path in column.values)
     if column.points_to == "objects":
         return len(group[name]) == len(column.values)
     stored = group[name][()]
