@@ -11,7 +11,7 @@ EVERYWHERE = {"three-phase": 1.0, "two-phase": 1.0, "one-phase": 1.0}
 
 def exact(type_id: str, points: list[tuple[float, float]]) -> Family:
     """Return a drawn family without any freedom: every draw is the same curve."""
-    still = {name: (0.0, 0.0) for name in ("shift", "background", "wiggle", "foreign")}
+    still = dict.fromkeys(("shift", "background", "wiggle", "foreign"), (0.0, 0.0))
     return Family(type_id, "drawn", {**still, "stretch": (1.0, 1.0)}, EVERYWHERE, points=tuple(points))
 
 

@@ -21,7 +21,8 @@ from unitclass.settings import Settings
 
 LIBRARY, SETTINGS, OPEN = read_library(), Settings(), RhythmEvidence({}, ())
 DRAWN = draw_families(LIBRARY, TIMING, n_bins=40, n_draws=256)
-RAMP = {"ramp-I": lambda p: np.where(p < 1, 60 * p, 0.0), "post-I": lambda p: np.where(p >= 1, 60 * np.exp(-(p - 1) / 0.2), 0.0),
+RAMP = {"ramp-I": lambda p: np.where(p < 1, 60 * p, 0.0),
+        "post-I": lambda p: np.where(p >= 1, 60 * np.exp(-(p - 1) / 0.2), 0.0),
         "aug-E": lambda p: np.where(p > 1.2, 60 * (p - 1.2) / 0.8, 0.0)}
 
 

@@ -24,7 +24,8 @@ def test_every_standard_family_has_plain_words_and_a_source_for_each_regime():
 
 def test_a_family_file_replaces_its_namesake_and_keeps_the_order(tmp_path):
     path = tmp_path / "mine.toml"
-    path.write_text('id = "ramp-I"\nform = "augmenting"\n[ranges]\nonset = [0.3, 0.5]\npeak = [0.9, 1.0]\noffset = [0.98, 1.0]\n')
+    path.write_text('id = "ramp-I"\nform = "augmenting"\n[ranges]\n'
+                    'onset = [0.3, 0.5]\npeak = [0.9, 1.0]\noffset = [0.98, 1.0]\n')
     library = read_library(str(path))
     assert [f.id for f in library.families] == [f.id for f in read_library().families]
     assert library.family("ramp-I").range("onset") == (0.3, 0.5)

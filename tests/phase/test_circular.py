@@ -30,7 +30,7 @@ def published(name):
 
 
 # Zar, Biostatistical Analysis, data D1 and D7 of pycircstat2; Fisher 1993, data B3.
-EXPECTED = {
+EXPECTED: dict[str, dict[str, float]] = {
     "zar/D1": dict(n=8, mean=98.98775, r=0.825218, z=5.44787, exact=0.00165512, wilkie=0.00185164, kuiper=2.13927,
                    u2=0.300876, u2_star=0.318932, rao=206.0),
     "zar/D7": dict(n=10, mean=94.0482, r=0.952137, z=9.06564, exact=6.149e-7, wilkie=5.304e-6, kuiper=2.78994,

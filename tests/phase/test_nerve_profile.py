@@ -23,7 +23,7 @@ def test_a_nerve_that_follows_phase_gives_that_shape_back_however_cycles_vary():
 
 def test_gaps_and_time_beyond_the_recording_are_left_out():
     cycles = steady_cycles(20)
-    values = np.full(int(30 * 100), 2.0, dtype=np.float32)
+    values = np.full(30 * 100, 2.0, dtype=np.float32)
     values[500:1500] = np.nan
     profile = nerve_profile(Envelope("a", "vagus", "V", 0.0, 100.0, values), cycles)
     np.testing.assert_allclose(profile.mean, 2.0)

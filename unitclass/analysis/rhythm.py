@@ -64,7 +64,8 @@ def condition_cycles(recording: Recording, condition: Condition, settings: Setti
     mine = [edit for edit in edits if edit.condition == condition.name]
     try:
         found = find_cycles(reference, others, start_s=condition.start_s + settings.cycles.settling_s,
-                            stop_s=condition.stop_s, settings=settings, exclusions=_exclusions(recording, condition), edits=mine)
+                            stop_s=condition.stop_s, settings=settings,
+                            exclusions=_exclusions(recording, condition), edits=mine)
     except SignalError as error:
         return ConditionCycles(condition, _nothing(reference.name), (), problem=str(error))
     used = found.cycles.used()

@@ -85,9 +85,9 @@ def two_humps(p: Parameters, phase: FloatArray) -> FloatArray:
     """Return two windows with a dip between: firing before and after inspiration, silent in it."""
     first = window(p, phase)
     second = dict(p)
-    second.update(onset=np.maximum(p["second_onset"], p["offset"] + LEAST_GAP), offset=p["second_offset"], peak=p["second_offset"],
-                  start_level=p["second_start"], end_level=np.ones_like(p["edge_ms"]), foot=0 * p["foot"],
-                  tail=0 * p["tail"])
+    second.update(onset=np.maximum(p["second_onset"], p["offset"] + LEAST_GAP), offset=p["second_offset"],
+                  peak=p["second_offset"], start_level=p["second_start"], end_level=np.ones_like(p["edge_ms"]),
+                  foot=0 * p["foot"], tail=0 * p["tail"])
     between = p["dip"] * _gate(p, phase, p["onset"], p["second_offset"])
     return np.maximum.reduce([p["first_level"] * first, p["second_level"] * window(second, phase), between])
 

@@ -63,7 +63,7 @@ def field_of(values: FloatArray, floor: FloatArray, quiet: BoolArray, *, is_powe
     base = floor**2 if is_power else floor
     quiet = quiet & np.isfinite(values)
     if quiet.any() and is_power:
-        base = base * float(np.mean(strength[quiet]) / max(np.mean(base[quiet]), 1e-300))
+        base = base * float(np.mean(strength[quiet]) / max(float(np.mean(base[quiet])), 1e-300))
     elif quiet.any():
         base = base + float(np.median(strength[quiet] - base[quiet]))
     return Field(strength - base, floor, quiet, is_power)
