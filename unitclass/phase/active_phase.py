@@ -12,7 +12,7 @@ from unitclass.records import BoolArray, FloatArray, PhaseHistogram
 
 LOW_SHARE = 0.1
 NOISE_LEVELS = 3.0
-SEEN_LEVELS = 5.0
+SEEN_LEVELS = 6.0
 
 
 @dataclass(frozen=True)
@@ -52,7 +52,7 @@ def active_phase(histogram: PhaseHistogram) -> ActivePhase:
     height over background (by more, up to a half, the more of the peak is background) and
     above the noise of the background. One quiet bin does not end it. At a transition of phase
     the edge is the transition itself; elsewhere it is found between bins (`edges.rise_place`).
-    Nothing stands out unless the peak is above the background by five times the noise that a
+    Nothing stands out unless the peak is above the background by six times the noise that a
     flat cell with as many spikes, as bursty, has.
     """
     width = chosen_bandwidth(histogram, low=0.02)

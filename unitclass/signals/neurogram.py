@@ -141,7 +141,7 @@ def _rectified(signal: Signal, settings: NerveSettings, start_s: float, stop_s: 
     from_s = start_s - warm_up * block / signal.rate_hz
     hum = find_hum(signal, start_s=start_s, stop_s=stop_s, low_hz=low_hz, high_hz=high_hz)
     origin_s, parts = start_s, []
-    for origin_s, values in _filtered(signal, from_s, stop_s, block, (low_hz, high_hz), HumFit(hum, signal.rate_hz)):
+    for origin_s, values in _filtered(signal, from_s, stop_s, block, (low_hz, high_hz), HumFit(hum, signal.rate_hz)):  # noqa: B007 (the last one counts)
         parts.append(_averaged(values, block).astype(np.float32))
     values = np.concatenate(parts).astype(float)[warm_up:] if parts else np.empty(0)
     words = (f"raw at {signal.rate_hz:g} Hz ({signal.form_reason or 'as given'}): band-passed {low_hz:g} to "
