@@ -20,6 +20,8 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     add_paths(parser)
     parser.add_argument("--reviewer", default="", metavar="NAME", help="who labels (default: the login name)")
     parser.add_argument("--blind", action="store_true", help="hide each suggestion until a label is given")
+    parser.add_argument("--pictures", default="", metavar="DIR",
+                        help="write every screen as SVG into a folder instead of opening the review")
     add_session_options(parser)
 
 
@@ -33,6 +35,8 @@ def run(args: argparse.Namespace) -> int:
     from unitclass.review.session import ReviewSession
     from unitclass.tui.terminal import check_terminal
 
+    if args.pictures:
+        return _pictures(args)
     check_terminal()
     settings = settings_from(args)
     place = store_path(args.paths, args.store)
@@ -58,6 +62,33 @@ def run(args: argparse.Namespace) -> int:
         print(place.message)
     print(f"decisions are kept in {place.path}")
     return code
+
+
+def _pictures(args: argparse.Namespace) -> int:
+    """Write the screens as SVG; the decisions on disk are neither read nor changed."""
+    import tempfile
+    from pathlib import Path
+
+    from unitclass.batch import analyse_files
+    from unitclass.commands.options import plan_from
+    from unitclass.errors import FileError
+    from unitclass.io.decisions import DecisionStore
+    from unitclass.io.paths import find_files
+    from unitclass.review.session import ReviewSession
+    from unitclass.tui.app import ReviewApp
+    from unitclass.tui.pictures import save_pictures
+
+    plan = plan_from(args)
+    with tempfile.TemporaryDirectory() as folder, DecisionStore(Path(folder) / "store.sqlite") as store:
+        session = ReviewSession(store, args.reviewer or "reviewer", is_blind=args.blind)
+        for outcome in analyse_files(find_files(args.paths), plan):
+            if outcome.result is None:
+                raise FileError(outcome.problem)
+            session.add_result(outcome.result)
+        app = ReviewApp(session, settings=plan.settings, library=lambda: plan.library)
+        for path in save_pictures(app, Path(args.pictures)):
+            print(path)
+    return 0
 
 
 @dataclass

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import asyncio
+import re
 from collections.abc import Mapping, Sequence
 from pathlib import Path
 
@@ -16,6 +17,9 @@ SCREENS: Mapping[str, Sequence[str]] = {
 
 BRIGHT = ("#fdfdc5", "#f0f0f0")
 """The drawing library's bright white is a yellow; a terminal's is not."""
+
+_FONT_FROM_AFAR = re.compile(r"@font-face\s*\{[^}]*\}\s*")
+"""A picture in the manual asks nothing of the network."""
 
 
 def save_pictures(app: ReviewApp, folder: Path, *, size: tuple[int, int] = (110, 34)) -> list[Path]:
@@ -36,7 +40,7 @@ async def _saved(app: ReviewApp, folder: Path, size: tuple[int, int]) -> list[Pa
             await pilot.pause()
             written.append(folder / f"{name}.svg")
             drawn = app.export_screenshot(title=f"unitclass: {name}")
-            written[-1].write_text(drawn.replace(*BRIGHT), encoding="utf-8")
+            written[-1].write_text(_FONT_FROM_AFAR.sub("", drawn.replace(*BRIGHT)), encoding="utf-8")
             if actions:
                 _press(app, ["escape"])
                 await pilot.pause()
