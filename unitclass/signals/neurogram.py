@@ -15,13 +15,16 @@ import numpy as np
 from unitclass.errors import SignalError
 from unitclass.records import Envelope, FloatArray, Signal
 from unitclass.settings import NerveSettings
+from unitclass.signals.decimation import decimated
 from unitclass.signals.frames import frames
+from unitclass.signals.highpass import HighPass
 from unitclass.signals.mains import HumFit, find_hum
 from unitclass.signals.smoothing import boxcar, filled
 
 GRID_HZ = 500.0
 ENVELOPE_HZ = 250.0
 WARM_UP_S = 0.25
+RECURSION = 64
 SLOW_ROLES = ("pressure", "airflow", "co2", "pump", "ecg")  # no integrator stands before these
 
 
@@ -124,30 +127,49 @@ def leaky(values: FloatArray, rate_hz: float, tau_s: float) -> FloatArray:
     First order, exact for an input that is constant within a sample. NaN is bridged for the
     integrator and put back afterwards.
     """
-    from scipy.signal import lfilter
-
     bridged = filled(values)
     keep = float(np.exp(-1.0 / (rate_hz * tau_s)))
-    out, _ = lfilter([1 - keep], [1.0, -keep], bridged, zi=np.array([keep * bridged[0]]))
-    return np.where(np.isfinite(values), out, np.nan)
+    return np.where(np.isfinite(values), _recursed(bridged, keep), np.nan)
+
+
+def _recursed(values: FloatArray, keep: float) -> FloatArray:
+    """Return y[n] = keep y[n-1] + (1 - keep) x[n] from y[-1] = x[0], a block of samples at a time.
+
+    The answer within a block is a product with a triangular matrix; only the blocks' last
+    values follow one from another.
+    """
+    n_blocks = -(-values.size // RECURSION)
+    padded = np.concatenate([values, np.full(n_blocks * RECURSION - values.size, values[-1])])
+    powers = keep ** np.arange(RECURSION)
+    ages = np.arange(RECURSION)[:, None] - np.arange(RECURSION)[None, :]
+    within = np.where(ages >= 0, (1 - keep) * powers[np.maximum(ages, 0)], 0.0)
+    alone = padded.reshape(n_blocks, RECURSION) @ within.T
+    carried = np.empty(n_blocks)
+    state, share = float(values[0]), float(keep**RECURSION)
+    for i, end in enumerate(alone[:, -1].tolist()):
+        carried[i] = state
+        state = share * state + end
+    return (alone + carried[:, None] * (keep * powers)).ravel()[: values.size]
 
 
 # ------------------------------------------------------------------------------------- raw
 
 def _rectified(signal: Signal, settings: NerveSettings, start_s: float, stop_s: float) -> Activity:
     low_hz, high_hz = _band(signal.rate_hz, settings)
-    block = max(1, round(signal.rate_hz / GRID_HZ))
-    warm_up = int(min(WARM_UP_S, start_s - signal.start_s) * signal.rate_hz / block)
-    from_s = start_s - warm_up * block / signal.rate_hz
-    hum = find_hum(signal, start_s=start_s, stop_s=stop_s, low_hz=low_hz, high_hz=high_hz)
+    coarse = decimated(signal, high_hz)
+    block = max(1, round(coarse.rate_hz / GRID_HZ))
+    warm_up = int(min(WARM_UP_S, start_s - signal.start_s) * coarse.rate_hz / block)
+    from_s = start_s - warm_up * block / coarse.rate_hz
+    hum = find_hum(coarse, start_s=start_s, stop_s=stop_s, low_hz=low_hz, high_hz=0.45 * coarse.rate_hz)
+    high_pass = HighPass(low_hz, coarse.rate_hz)
     origin_s, parts = start_s, []
-    for origin_s, values in _filtered(signal, from_s, stop_s, block, (low_hz, high_hz), HumFit(hum, signal.rate_hz)):  # noqa: B007 (the last one counts)
+    for origin_s, values in _filtered(coarse, from_s, stop_s, block, high_pass, HumFit(hum, coarse.rate_hz)):  # noqa: B007
         parts.append(_averaged(values, block).astype(np.float32))
     values = np.concatenate(parts).astype(float)[warm_up:] if parts else np.empty(0)
     words = (f"raw at {signal.rate_hz:g} Hz ({signal.form_reason or 'as given'}): band-passed {low_hz:g} to "
              f"{high_hz:g} Hz, rectified", hum.words)
-    first_s = origin_s + (warm_up * block + (block - 1) / 2) / signal.rate_hz
-    return Activity(signal.name, signal.role, signal.unit, first_s, signal.rate_hz / block, values,
+    first_s = origin_s + (warm_up * block + (block - 1) / 2 - high_pass.delay) / coarse.rate_hz
+    return Activity(signal.name, signal.role, signal.unit, first_s, coarse.rate_hz / block, values,
                     is_power=True, words=tuple(w for w in words if w))
 
 
@@ -156,38 +178,23 @@ def _band(rate_hz: float, settings: NerveSettings) -> tuple[float, float]:
     return min(settings.low_cut_hz, 0.3 * high_hz), high_hz
 
 
-def _filtered(signal: Signal, start_s: float, stop_s: float, block: int, band_hz: tuple[float, float],
+def _filtered(signal: Signal, start_s: float, stop_s: float, block: int, high_pass: HighPass,
               hum: HumFit) -> Iterator[tuple[float, FloatArray]]:
     """Yield the rectified band-passed trace frame by frame, NaN where the recording has none."""
-    from scipy.signal import sosfilt
-
-    sos = _sections(signal.rate_hz, band_hz)
-    state, last = np.zeros((sos.shape[0], 2)), np.nan
+    base, last = np.nan, np.nan
     for frame in frames(signal, start_s=start_s, stop_s=stop_s, multiple=block):
         values, missing = frame.values, np.isnan(frame.values)
         if missing.any():
             values = _held(values, missing, last)
-        if np.isnan(last):
+        if np.isnan(base):
             base = values[0]
         last = values[-1]
         values = values - base
         hum.subtract(values)
-        if values.any() or state.any():
-            values, state = sosfilt(sos, values, zi=state)
-            state[np.abs(state) < 1e-200] = 0.0
-        values = np.abs(values)
+        values = np.abs(high_pass.filtered(values))
         if missing.any():
             values[missing] = np.nan
         yield frame.origin_s, values
-
-
-def _sections(rate_hz: float, band_hz: tuple[float, float]) -> FloatArray:
-    """Return Butterworth sections: fourth order below (mains, heart, sway), second order above."""
-    from scipy.signal import butter
-
-    low = butter(4, band_hz[0], "high", fs=rate_hz, output="sos")
-    high = butter(2, band_hz[1], "low", fs=rate_hz, output="sos")
-    return np.vstack([low, high])
 
 
 def _held(values: FloatArray, missing: np.ndarray, last: float) -> FloatArray:
