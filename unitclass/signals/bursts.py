@@ -7,7 +7,7 @@ after-discharge is not a burst) and above the noise.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -16,9 +16,10 @@ from unitclass.errors import SignalError
 from unitclass.records import BoolArray, FloatArray
 from unitclass.settings import CycleSettings
 from unitclass.signals.levels import excess, first_floor, first_peak, floor_between, restored, running_median
-from unitclass.signals.neurogram import Activity
+from unitclass.signals.neurogram import Activity, averaged
 from unitclass.signals.smoothing import runs, smooth, widened
 
+SEARCH_HZ = 125.0  # means of four samples: ten to the shortest smoother tried, and edges are refined later
 WIDTHS_S = (0.03, 0.06, 0.12, 0.24, 0.48)
 MIN_CONTRAST = 7.0
 GOOD_CONTRAST = 12.0
@@ -94,6 +95,24 @@ def find_bursts(fine: Activity, settings: CycleSettings, *, threshold_scale: flo
         When nothing stands clear of the floor: noise alone, or too little of a rhythm.
     """
     scale = threshold_scale * settings.threshold_scale
+    step = max(1, int(fine.rate_hz // SEARCH_HZ))
+    if step == 1:
+        return _searched(fine, settings, scale)
+    coarse = replace(fine, values=averaged(fine.values, step), rate_hz=fine.rate_hz / step)
+    return _refined(_searched(coarse, settings, scale), fine.values.size, step)
+
+
+def _refined(found: Bursts, n_samples: int, step: int) -> Bursts:
+    """Return bursts found on means of `step` samples as indices and traces of the samples themselves."""
+    centres = np.arange(found.trace.size) * step + (step - 1) / 2
+    trace, floor, level = (np.interp(np.arange(n_samples), centres, values)
+                           for values in (found.trace, found.floor, found.level))
+    return replace(found, first=found.first * step, last=np.minimum(found.last * step, n_samples), trace=trace,
+                   floor=floor, level=level)
+
+
+def _searched(fine: Activity, settings: CycleSettings, scale: float) -> Bursts:
+    """Return the bursts under the least smoothing that shows them, then under what their length allows."""
     tried = []
     for width_s in WIDTHS_S:
         if 8 * width_s > fine.values.size / fine.rate_hz:

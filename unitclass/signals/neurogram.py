@@ -107,7 +107,7 @@ def displayed(fine: Activity, settings: NerveSettings, is_integrated: bool) -> E
     if not is_integrated:
         values, words = integrated(fine.values, fine.rate_hz, settings)
     step = max(1, int(fine.rate_hz // ENVELOPE_HZ))
-    coarse, shift_s = _averaged(values, step), (step - 1) / 2 / fine.rate_hz
+    coarse, shift_s = averaged(values, step), (step - 1) / 2 / fine.rate_hz
     return Envelope(fine.name, fine.role, fine.unit, fine.start_s + shift_s, fine.rate_hz / step,
                     coarse.astype(np.float32), words)
 
@@ -164,7 +164,7 @@ def _rectified(signal: Signal, settings: NerveSettings, start_s: float, stop_s: 
     high_pass = HighPass(low_hz, coarse.rate_hz)
     origin_s, parts = start_s, []
     for origin_s, values in _filtered(coarse, from_s, stop_s, block, high_pass, HumFit(hum, coarse.rate_hz)):  # noqa: B007
-        parts.append(_averaged(values, block).astype(np.float32))
+        parts.append(averaged(values, block).astype(np.float32))
     values = np.concatenate(parts).astype(float)[warm_up:] if parts else np.empty(0)
     words = (f"raw at {signal.rate_hz:g} Hz ({signal.form_reason or 'as given'}): band-passed {low_hz:g} to "
              f"{high_hz:g} Hz, rectified", hum.words)
@@ -212,7 +212,7 @@ def _stored(signal: Signal, settings: NerveSettings, start_s: float, stop_s: flo
     origin_s, parts = start_s, []
     for frame in frames(signal, start_s=start_s, stop_s=stop_s, multiple=block):
         origin_s = frame.origin_s
-        parts.append(_averaged(frame.values, block))
+        parts.append(averaged(frame.values, block))
     values = np.concatenate(parts) if parts else np.empty(0)
     words = f"integrated already ({signal.form_reason or 'as given'}): used as it is"
     return Activity(signal.name, signal.role, signal.unit, origin_s + (block - 1) / 2 / signal.rate_hz,
@@ -221,7 +221,7 @@ def _stored(signal: Signal, settings: NerveSettings, start_s: float, stop_s: flo
 
 # ---------------------------------------------------------------------------------- shared
 
-def _averaged(values: FloatArray, block: int) -> FloatArray:
+def averaged(values: FloatArray, block: int) -> FloatArray:
     """Return means over consecutive blocks; NaN where more than half of a block is missing."""
     if block == 1:
         return np.asarray(values, dtype=float)

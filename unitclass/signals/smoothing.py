@@ -65,9 +65,12 @@ def widened(flags: BoolArray, n: int) -> BoolArray:
 
 def _window_sum(values: FloatArray, half: int) -> FloatArray:
     n = values.size
-    total = np.concatenate([[0.0], np.cumsum(values, dtype=float)])
-    at = np.arange(n)
-    return total[np.minimum(at + half + 1, n)] - total[np.maximum(at - half, 0)]
+    half = min(half, n)
+    total = np.empty(n + 2 * half + 1)  # the running sum, held at its ends: windows are cut there
+    total[: half + 1] = 0.0
+    np.cumsum(values, out=total[half + 1 : half + 1 + n])
+    total[half + 1 + n :] = total[half + n]
+    return total[2 * half + 1 :] - total[:n]
 
 
 def _window_length(n: int, half: int) -> FloatArray:
