@@ -207,11 +207,19 @@ def _above(fine: Activity, trace: FloatArray, floor: FloatArray, level: FloatArr
         pieces = runs(over > fraction * level)
     pieces = _joined(pieces, over, settings.min_gap_s * fine.rate_hz)
     pieces = pieces[(pieces[:, 1] - pieces[:, 0]) >= _shortest(pieces, settings, fine.rate_hz)]
-    peak = np.array([np.nanmax(over[a:b]) for a, b in pieces]) if len(pieces) else np.empty(0)
+    peak = _highest(over, pieces)
     middle = (pieces.mean(axis=1)).astype(int) if len(pieces) else np.empty(0, int)
     heights = restored(peak, floor[middle], fine.is_power) - floor[middle]
     contrast = float(np.median(heights)) / noise if noise > 0 and heights.size else float(heights.size > 0) * 1e9
     return Bursts(pieces[:, 0], pieces[:, 1], peak, trace, floor, level, fraction, width_s, contrast, noise)
+
+
+def _highest(over: FloatArray, pieces: NDArray[np.int64]) -> FloatArray:
+    """Return the greatest value in each piece, shape (n_pieces,)."""
+    if not len(pieces):
+        return np.empty(0)
+    padded = np.append(np.where(np.isfinite(over), over, -np.inf), -np.inf)
+    return np.maximum.reduceat(padded, pieces.ravel())[::2]
 
 
 def _joined(pieces: NDArray[np.int64], over: FloatArray, min_gap: float) -> NDArray[np.int64]:
