@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from concurrent.futures import ThreadPoolExecutor
 
 import numpy as np
 
@@ -16,6 +17,9 @@ from unitclass.signals.neurogram import Activity, displayed
 from unitclass.signals.rhythm import burst_shape, rhythm_evidence
 from unitclass.signals.summary import summarised
 from unitclass.signals.tags import Draft, drafted, edited, tagged
+
+
+N_THREADS = 2
 
 
 def find_cycles(reference: Signal, others: Sequence[Signal], *, start_s: float, stop_s: float, settings: Settings,
@@ -50,10 +54,13 @@ def find_cycles(reference: Signal, others: Sequence[Signal], *, start_s: float, 
     SignalError
         When the nerve holds no usable sample here or no burst stands clear of its floor.
     """
-    marks = find_marks(reference, settings, start_s=start_s, stop_s=stop_s, threshold_scale=_threshold_scale(edits))
+    # Nerves do not need each other until here, and reading and arithmetic let other threads run.
+    with ThreadPoolExecutor(N_THREADS) as pool:
+        looking = [pool.submit(_read_other, signal, settings, start_s, stop_s) for signal in others]
+        marks = find_marks(reference, settings, start_s=start_s, stop_s=stop_s, threshold_scale=_threshold_scale(edits))
+        nerves, notes = _seen([future.result() for future in looking])
     draft = drafted(marks, stop_s)
     cycles = _judged(draft, marks, settings, exclusions, start_s)
-    nerves, notes = _read_others(others, settings, start_s, stop_s)
     for nerve in nerves:
         cycles = measured(cycles, nerve, settings)
     cycles = edited(cycles, edits)
@@ -79,19 +86,17 @@ def _judged(draft: Draft, marks: Marks, settings: Settings, exclusions: Sequence
                   late_e=np.full(n, -1), peak=peak, area=area)
 
 
-def _read_others(others: Sequence[Signal], settings: Settings, start_s: float, stop_s: float) -> tuple[
-        list[OtherNerve], list[str]]:
-    nerves, notes = [], []
-    for signal in others:
-        try:
-            nerve = read_other(signal, settings, start_s, stop_s)
-        except SignalError as error:
-            notes.append(str(error))
-            continue
-        nerves.append(nerve)
-        if nerve.note:
-            notes.append(nerve.note)
-    return nerves, notes
+def _read_other(signal: Signal, settings: Settings, start_s: float, stop_s: float) -> OtherNerve | str:
+    """Return what another nerve shows, or one line that says why it shows nothing."""
+    try:
+        return read_other(signal, settings, start_s, stop_s)
+    except SignalError as error:
+        return str(error)
+
+
+def _seen(found: Sequence[OtherNerve | str]) -> tuple[list[OtherNerve], list[str]]:
+    nerves = [nerve for nerve in found if not isinstance(nerve, str)]
+    return nerves, [f if isinstance(f, str) else f.note for f in found if isinstance(f, str) or f.note]
 
 
 def _envelopes(reference: Signal, fine: Activity, others: Sequence[Signal], nerves: Sequence[OtherNerve],

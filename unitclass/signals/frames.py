@@ -13,7 +13,7 @@ import numpy as np
 
 from unitclass.records import Chunk, FloatArray, Signal
 
-FRAME_S = 2.0
+FRAME_S = 8.0
 
 
 @dataclass(frozen=True)
