@@ -18,7 +18,6 @@ from unitclass.signals.rhythm import burst_shape, rhythm_evidence
 from unitclass.signals.summary import summarised
 from unitclass.signals.tags import Draft, drafted, edited, tagged
 
-
 N_THREADS = 2
 
 
