@@ -39,7 +39,8 @@ def session_file(path: Path, ids: tuple[int, ...] = (3, 7, 12, 20, 31)) -> Path:
                                           starting_time=0.0, description="phrenic nerve"))
     file.add_acquisition(TimeSeries(name="cVN", data=trace[:, 0].copy(), timestamps=np.arange(len(trace)) / RATE_HZ,
                                     unit="V", description="cervical vagus"))
-    file.add_unit_column("region", "where the cell was")
+    if ids:
+        file.add_unit_column("region", "where the cell was")
     for i, name in enumerate(ids):
         file.add_unit(id=name, spike_times=spikes_of(i), region="rostral column")
     if ids:

@@ -23,8 +23,12 @@ _COMPRESSED_FROM = 100_000
 _CORE_TYPES = ("TimeIntervals", "Units")
 
 
-def add_table(parent: h5py.Group, table: Table) -> str:
-    """Write `table` into `parent` and return its path.
+Placed = dict[str, Column]
+"""Name under which a column stands in the file to the column."""
+
+
+def add_table(parent: h5py.Group, table: Table) -> tuple[str, Placed]:
+    """Write `table` into `parent`; return its path and its columns.
 
     A table of that name that is not the program's own is kept; the new one then gets the
     program's name in front.
@@ -33,20 +37,23 @@ def add_table(parent: h5py.Group, table: Table) -> str:
     _mark(group, table.kind)
     group.attrs["description"] = table.description
     _mark(group.create_dataset("id", data=np.arange(table.n_rows)), "ElementIdentifiers")
-    add_columns(group, table.filled)
-    return str(group.name)
+    return str(group.name), add_columns(group, table.filled)
 
 
-def add_columns(group: h5py.Group, columns: tuple[Column, ...]) -> None:
-    """Add columns to a table, each under its name, or with the program's name in front if that is taken."""
-    names = column_names(group)
+def add_columns(group: h5py.Group, columns: tuple[Column, ...]) -> Placed:
+    """Add columns to a table, each under its name, or with the program's name in front if that is taken.
+
+    References to objects that the file lacks are left out.
+    """
+    placed: Placed = {}
     for column in columns:
         if column.points_to == "objects" and not all(path in group.file for path in column.values):
             continue
         name = _free_name(group, column.name)
         _write_column(group, name, column)
-        names.append(name)
-    _set_column_names(group, names)
+        placed[name] = column
+    _set_column_names(group, [*column_names(group), *placed])
+    return placed
 
 
 def column_names(group: h5py.Group) -> list[str]:
@@ -121,7 +128,7 @@ def _stored(file: h5py.File, column: Column) -> np.ndarray[Any, Any]:
         return values.astype(_TEXT)
     if column.points_to:
         return values
-    if values.dtype.kind in "if" and values.size and set(np.unique(values)) == {0, 1}:
+    if not column.points_to and values.dtype.kind in "if" and values.size and set(np.unique(values)) == {0, 1}:
         return values.astype(np.int8)  # wider, readers take such a column for a mistaken yes/no
     return values
 

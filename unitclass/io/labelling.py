@@ -14,6 +14,7 @@ from unitclass.errors import TargetError
 from unitclass.io.hdf5 import attribute
 from unitclass.io.hdf5 import text as text_of
 from unitclass.io.hdf5_tables import (
+    Placed,
     add_columns,
     add_table,
     own_child,
@@ -30,7 +31,7 @@ from unitclass.io.labelled_tables import (
 from unitclass.io.labelled_units import label_columns, vm_units_table
 from unitclass.io.nwb_check import Written
 from unitclass.io.provenance import is_own
-from unitclass.io.table_columns import Column, Table
+from unitclass.io.table_columns import Table
 from unitclass.io.unit_rows import UnitRows, rows_by_id
 from unitclass.records import ConditionResult, Labels, Recording, SessionResult
 
@@ -82,7 +83,7 @@ def add_labels(path: Path, labelling: Labelling) -> Written:
         _make_new(file)
         intervals, analysis = (_place(file, name, labelling.where) for name in ("intervals", "analysis"))
         _remove_earlier(file, labelling.tables)
-        written: dict[str, tuple[Column, ...]] = {}
+        written: dict[str, Placed] = {}
         rows = _units(file, labelling, written)
         for table in _tables(labelling, rows):
             _add(intervals if table.kind == "TimeIntervals" else analysis, table, written)
@@ -100,7 +101,7 @@ def _tables(labelling: Labelling, rows: UnitRows) -> list[Table]:
     return [*tables, cycles] if cycles else tables
 
 
-def _units(file: h5py.File, labelling: Labelling, written: dict[str, tuple[Column, ...]]) -> UnitRows:
+def _units(file: h5py.File, labelling: Labelling, written: dict[str, Placed]) -> UnitRows:
     """Label the units table, or make one of the intracellular cells; return who stands where."""
     if labelling.recording.units and labelling.tables:
         rows = rows_by_id(labelling.recording, labelling.tables, labelling.where)
@@ -111,13 +112,12 @@ def _units(file: h5py.File, labelling: Labelling, written: dict[str, tuple[Colum
         rows = _add_vm_units(file, labelling, "intracellular_units", written)
     if rows.path and labelling.condition:
         columns = tuple(c for c in label_columns(labelling.condition, labelling.labels, rows) if not c.is_empty)
-        add_columns(file[rows.path], columns)
-        written[rows.path] = (*written.get(rows.path, ()), *columns)
+        written[rows.path] = written.get(rows.path, {}) | add_columns(file[rows.path], columns)
     return rows
 
 
 def _add_vm_units(file: h5py.File, labelling: Labelling, name: str,
-                  written: dict[str, tuple[Column, ...]]) -> UnitRows:
+                  written: dict[str, Placed]) -> UnitRows:
     table, rows = vm_units_table(labelling.recording, labelling.result, name)
     if table is None:
         return rows
@@ -125,9 +125,9 @@ def _add_vm_units(file: h5py.File, labelling: Labelling, name: str,
     return UnitRows(path, rows.n_rows, rows.row)
 
 
-def _add(parent: h5py.Group, table: Table, written: dict[str, tuple[Column, ...]]) -> str:
-    path = add_table(parent, table)
-    written[path] = table.filled
+def _add(parent: h5py.Group, table: Table, written: dict[str, Placed]) -> str:
+    path, written_columns = add_table(parent, table)
+    written[path] = written_columns
     return path
 
 

@@ -12,10 +12,10 @@ import numpy as np
 
 from unitclass.errors import TargetError
 from unitclass.io.hdf5 import text as text_of
-from unitclass.io.hdf5_tables import column_names
+from unitclass.io.hdf5_tables import Placed, column_names
 from unitclass.io.table_columns import Column
 
-Written = Mapping[str, tuple[Column, ...]]
+Written = Mapping[str, Placed]
 """Path of a table to the columns that were written into it."""
 
 
@@ -32,17 +32,16 @@ def check_written(temporary: Path, source: str, written: Written, target: str) -
     """
     with h5py.File(temporary, "r") as file:
         for path, columns in written.items():
-            for column in columns:
-                if not _stands_in(file[path], column):
-                    raise _broken(f"column {column.name} of {path} does not read back as written", target)
+            for name, column in columns.items():
+                if not _stands_in(file[path], name, column):
+                    raise _broken(f"column {name} of {path} does not read back as written", target)
     _check_validity(temporary, source, target)
     _check_reading(temporary, source, target)
 
 
-def _stands_in(group: h5py.Group, column: Column) -> bool:
-    name = next((n for n in (f"unitclass_{column.name}", column.name) if n in column_names(group)), "")
-    if not name:  # a reference to what the file does not hold is left out on purpose
-        return column.points_to == "objects" and not all(path in group.file for path in column.values)
+def _stands_in(group: h5py.Group, name: str, column: Column) -> bool:
+    if name not in column_names(group):
+        return False
     if column.points_to == "objects":
         return len(group[name]) == len(column.values)
     stored = group[name][()]
