@@ -51,7 +51,7 @@ def test_the_source_is_refused_as_target_even_with_force(source):
     assert source.read_bytes() == before
 
 
-@pytest.mark.parametrize("place", ["_copy", "_claim_space", "add_labels", "check_written"])
+@pytest.mark.parametrize("place", ["_copy", "add_labels", "check_written"])
 @pytest.mark.parametrize("failure", [
     OSError(errno.ENOSPC, "No space left on device"),
     RuntimeError("Unable to flush file (file write failed: time = now, errno = 28, error message = 'No space')")])
@@ -68,9 +68,10 @@ def test_a_disk_that_fills_up_at_any_moment_leaves_nothing(source, out, monkeypa
 
 @pytest.mark.slow
 @pytest.mark.skipif(sys.platform != "linux", reason="needs the file size limit of Linux")
-@pytest.mark.parametrize("share", [0.0, 0.5, 0.999, 1.0])
-def test_a_real_limit_on_the_file_size_is_one_line_and_leaves_nothing(source, out, share):
-    limit = int(source.stat().st_size * share)
+@pytest.mark.parametrize("link_raw", [False, True])
+@pytest.mark.parametrize("share", [0.0, 0.001, 0.5, 1.0, 1.05])
+def test_a_real_limit_on_the_file_size_is_one_line_and_leaves_nothing(source, out, share, link_raw):
+    limit = int((source.stat().st_size if not link_raw else 500_000) * share)
     code = f"""
 import resource, signal, sys
 signal.signal(signal.SIGXFSZ, signal.SIG_IGN)
@@ -79,7 +80,7 @@ from pathlib import Path
 from tests.io.labelling import label
 from unitclass.errors import TargetError
 try:
-    label(Path({str(source)!r}), Path({str(out / "x.nwb")!r}))
+    label(Path({str(source)!r}), Path({str(out / "x.nwb")!r}), link_raw={link_raw})
 except TargetError as problem:
     sys.exit(3 if "larger than this system allows" in str(problem) else f"odd: {{problem}}")
 """

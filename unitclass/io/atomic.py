@@ -86,6 +86,22 @@ def target_error(problem: OSError, target: str) -> TargetError:
     return TargetError(what, where=target, remedy=remedy)
 
 
+def claim_space(path: Path, n_bytes: int) -> None:
+    """Append `n_bytes` of filler to the HDF5 file at `path`, so that its next writer has room.
+
+    HDF5 does not survive a disk that fills up while its caches are written (it may end the
+    process). What lies behind the end that an HDF5 file states of itself is overwritten as the
+    file grows, and cut off when it is closed: the room is claimed here, where running out of it
+    is an ordinary OSError. The filler is random, as some file systems store zeros in no room.
+    """
+    block = os.urandom(1 << 16)
+    with path.open("ab") as file:
+        for start in range(0, n_bytes, len(block)):
+            file.write(block[: n_bytes - start])
+        file.flush()
+        os.fsync(file.fileno())
+
+
 @contextmanager
 def _as_target_errors(target: str) -> Iterator[None]:
     try:

@@ -11,6 +11,7 @@ from pathlib import Path
 import h5py
 
 from unitclass.errors import TargetError
+from unitclass.io.atomic import claim_space
 from unitclass.io.hdf5 import attribute
 from unitclass.io.hdf5 import text as text_of
 from unitclass.io.hdf5_tables import (
@@ -78,7 +79,10 @@ def add_labels(path: Path, labelling: Labelling) -> Written:
     TargetError
         If the file has a place where the tables belong in another file, or its units table is
         not the one that was analysed.
+    OSError
+        If the disk has no room for what is added.
     """
+    claim_space(path, labelling.size)
     with h5py.File(path, "r+") as file:
         _make_new(file)
         intervals, analysis = (_place(file, name, labelling.where) for name in ("intervals", "analysis"))

@@ -11,9 +11,11 @@ import h5py
 import numpy as np
 
 from unitclass.errors import TargetError
+from unitclass.io.atomic import claim_space
 from unitclass.io.hdf5 import child_of
 from unitclass.io.hdf5 import text as text_of
 
+_MARGIN_BYTES = 1 << 20
 _TEXT = h5py.string_dtype()
 
 
@@ -45,6 +47,8 @@ def relocate(path: Path, source: str, *, links: bool = True) -> None:
     old_folder, new_folder = os.path.dirname(os.path.abspath(source)), str(path.parent)
     if os.path.realpath(old_folder) == os.path.realpath(new_folder):
         return
+    with h5py.File(source, "r") as original:
+        claim_space(path, _gathered_bytes(original) + _MARGIN_BYTES)
     with h5py.File(path, "r+") as file, h5py.File(source, "r") as original:
         for group in list(groups_of(file)):
             if links:
@@ -106,10 +110,23 @@ def _relocate_image_files(group: h5py.Group, old_folder: str, new_folder: str) -
     group["external_file"].attrs.update(attributes)
 
 
+def _gathered_bytes(file: h5py.File) -> int:
+    found = [_scattered(group, name) for group in groups_of(file) for name in group]
+    return sum(2 * dataset.size * dataset.dtype.itemsize for dataset in found if dataset is not None)
+
+
+def _scattered(group: h5py.Group, name: str) -> h5py.Dataset | None:
+    """Return the dataset called `name` if its values lie in other files, else None."""
+    dataset = child_of(group, name) if isinstance(group.get(name, getlink=True), h5py.HardLink) else None
+    if isinstance(dataset, h5py.Dataset) and (dataset.is_virtual or dataset.external):
+        return dataset
+    return None
+
+
 def _gather(group: h5py.Group, name: str, original: h5py.File) -> None:
     """Replace a dataset whose values lie in other files by one that holds them."""
-    dataset = child_of(group, name) if isinstance(group.get(name, getlink=True), h5py.HardLink) else None
-    if not isinstance(dataset, h5py.Dataset) or not (dataset.is_virtual or dataset.external):
+    dataset = _scattered(group, name)
+    if dataset is None:
         return
     values, attributes = original[dataset.name], dict(dataset.attrs)
     del group[name]

@@ -11,9 +11,11 @@ import h5py
 import numpy as np
 
 from unitclass.errors import TargetError
-from unitclass.io.nwb_copy import moved_path
+from unitclass.io.atomic import claim_space
+from unitclass.io.nwb_copy import groups_of, moved_path
 
 _RAW = ("data", "timestamps")
+_MARGIN_BYTES = 1 << 20
 
 
 def copy_with_links(source: str, temporary: Path) -> None:
@@ -25,10 +27,16 @@ def copy_with_links(source: str, temporary: Path) -> None:
     ------
     TargetError
         If the source holds region references, which cannot be carried over.
+    OSError
+        If the target's disk fills up.
     """
     folder, old_folder = str(temporary.parent), os.path.dirname(os.path.abspath(source))
     linked = moved_path(os.path.basename(source), old_folder, folder)
-    with h5py.File(source, "r") as old, h5py.File(temporary, "w") as new:
+    with h5py.File(temporary, "w"):
+        pass
+    with h5py.File(source, "r") as old:
+        claim_space(temporary, os.path.getsize(source) - _raw_bytes(old) + _MARGIN_BYTES)
+    with h5py.File(source, "r") as old, h5py.File(temporary, "r+") as new:
         copy = _Copy(source, old, new, linked, old_folder, folder)
         copy.group(old, new)
         copy.finish()
@@ -122,6 +130,11 @@ class _Copy:
             return h5py.Reference()
         address = h5py.h5o.get_info(self.old[reference].id).addr
         return self.new[self.made[address]].ref if address in self.made else h5py.Reference()
+
+
+def _raw_bytes(file: h5py.File) -> int:
+    return sum(group[name].id.get_storage_size() for group in groups_of(file) for name in _RAW
+               if isinstance(group.get(name, getlink=True), h5py.HardLink) and _is_raw(group[name], name))
 
 
 def _is_raw(thing: Any, name: str) -> bool:

@@ -62,7 +62,6 @@ def write_labelled(source: str, target: str, recording: Recording, result: Sessi
                           run_in_words(result, settings), source)
     with written_whole(target, force=force) as temporary, _failures_named(target):
         _copy(source, temporary, link_raw=link_raw)
-        _claim_space(temporary, labelling.size)
         written = add_labels(temporary, labelling)
         check_written(temporary, source, written, target)
 
@@ -85,18 +84,6 @@ def _copy(source: str, temporary: Path, *, link_raw: bool) -> None:
     else:
         copy_bytes(source, temporary)
     relocate(temporary, source, links=not link_raw)
-
-
-def _claim_space(path: Path, n_bytes: int) -> None:
-    """Find out now, and cleanly, whether the disk has room for what is to be added."""
-    with path.open("r+b") as file:
-        end = file.seek(0, os.SEEK_END)
-        try:
-            file.write(bytes(n_bytes))
-            file.flush()
-            os.fsync(file.fileno())
-        finally:
-            file.truncate(end)
 
 
 @contextmanager
