@@ -161,7 +161,8 @@ def labels_for(result: SessionResult, *, reviewer: str = "Ada Fischer") -> dict[
     keys = [(unit.key, unit.suggestion.type) for _, unit in result.units() if unit.suggestion.probabilities]
     found = {key: Label(kind, reviewer, "2031-03-04T10:20:30+00:00", "viewed", note="clean")
              for key, kind in keys}
-    found[keys[-1][0]] = Label("", "", "", "", flags=("disagreement",))
+    if keys:
+        found[keys[-1][0]] = Label("", "", "", "", flags=("disagreement",))
     return found
 
 

@@ -18,20 +18,37 @@ from unitclass.io.nwb_write import labelled_name
 from unitclass.records import Label
 
 
-@pytest.fixture
-def source(tmp_path):
-    return sources.session_file(tmp_path / "heron_04.nwb")
+@pytest.fixture(scope="module")
+def source(tmp_path_factory):
+    return sources.session_file(tmp_path_factory.mktemp("rig") / "heron_04.nwb")
 
 
-@pytest.fixture
-def cell(tmp_path):
-    return sources.cell_file(tmp_path / "cell.nwb")
+@pytest.fixture(scope="module")
+def cell(tmp_path_factory):
+    return sources.cell_file(tmp_path_factory.mktemp("rig") / "cell.nwb")
+
+
+@pytest.fixture(scope="module")
+def labelled(source):
+    """Return the file labelled in its only condition."""
+    return label(source, source.parent / "labelled.nwb")
+
+
+@pytest.fixture(scope="module")
+def labelled_twice(source):
+    """Return the file labelled in two conditions."""
+    return label(source, source.parent / "twice.nwb", session_result())
+
+
+@pytest.fixture(scope="module")
+def labelled_cell(cell):
+    return label_cell(cell, cell.parent / "labelled.nwb")
 
 
 # -------------------------------------------------------------------------- units table
 
-def test_units_hold_decision_suggestion_and_probability_of_the_only_condition(source, tmp_path):
-    with read(label(source, tmp_path / "out.nwb")) as nwb:
+def test_units_hold_decision_suggestion_and_probability_of_the_only_condition(labelled):
+    with read(labelled) as nwb:
         table = nwb.units.to_dataframe()
     assert list(table["firing_type"]) == ["early-I", "post-I", "", "", ""]  # the third is in disagreement
     assert list(table["suggested_firing_type"]) == ["early-I", "post-I", "aug-E", "silent", "undetermined"]
@@ -40,11 +57,11 @@ def test_units_hold_decision_suggestion_and_probability_of_the_only_condition(so
     np.testing.assert_array_equal(table["spike_times"][3], sources.spikes_of(0))
 
 
-def test_with_several_conditions_the_units_table_takes_the_one_named(source, tmp_path):
+def test_with_several_conditions_the_units_table_takes_the_one_named(source, labelled_twice, tmp_path):
     result = session_result()
     labels = {("3", "baseline"): Label("early-I", "A", "", "viewed"),
               ("3", "pons removed"): Label("tonic", "A", "", "viewed")}
-    assert not label_names(label(source, tmp_path / "none.nwb", result, labels=labels))
+    assert not label_names(labelled_twice)
     with read(label(source, tmp_path / "one.nwb", result, labels=labels, only="pons removed")) as nwb:
         assert list(nwb.units["firing_type"][:]) == ["tonic", "", "", "", ""]
 
@@ -70,7 +87,8 @@ def test_rows_follow_the_ids_when_not_all_units_were_analysed(source, tmp_path):
         assert list(types["unit"].data[:]) == [4, 1]
 
 
-def test_the_laboratorys_own_column_of_the_same_name_is_kept(source, tmp_path):
+def test_the_laboratorys_own_column_of_the_same_name_is_kept(tmp_path):
+    source = sources.session_file(tmp_path / "heron_04.nwb")
     with pynwb.NWBHDF5IO(source, "a") as io:
         nwb = io.read()
         nwb.units.add_column("firing_type", "what the sorter calls it", data=list("abcde"))
@@ -82,9 +100,8 @@ def test_the_laboratorys_own_column_of_the_same_name_is_kept(source, tmp_path):
 
 # ----------------------------------------------------------------------- analysis tables
 
-def test_firing_types_hold_a_row_per_unit_and_condition(source, tmp_path):
-    result = session_result()
-    with read(label(source, tmp_path / "out.nwb", result)) as nwb:
+def test_firing_types_hold_a_row_per_unit_and_condition(labelled_twice):
+    with read(labelled_twice) as nwb:
         types = nwb.analysis["firing_types"]
         assert len(types) == 10
         assert types["unit"].table is nwb.units
@@ -99,8 +116,8 @@ def test_firing_types_hold_a_row_per_unit_and_condition(source, tmp_path):
         assert list(types["region"][:]) == ["rostral column"] * 10
 
 
-def test_probabilities_of_all_types_sum_to_one_in_every_row_that_has_any(source, tmp_path):
-    with read(label(source, tmp_path / "out.nwb")) as nwb:
+def test_probabilities_of_all_types_sum_to_one_in_every_row_that_has_any(labelled):
+    with read(labelled) as nwb:
         types = nwb.analysis["firing_types"]
         names = [n for n in types.colnames if n.startswith("probability_")]
         total = np.array([types[name][:] for name in names]).sum(axis=0)
@@ -109,9 +126,9 @@ def test_probabilities_of_all_types_sum_to_one_in_every_row_that_has_any(source,
     assert np.isnan(total[3:]).all()
 
 
-def test_histograms_give_the_counts_and_the_exposure_of_each_row(source, tmp_path):
+def test_histograms_give_the_counts_and_the_exposure_of_each_row(labelled):
     result = sources.one_condition()
-    with read(label(source, tmp_path / "out.nwb", result)) as nwb:
+    with read(labelled) as nwb:
         table = nwb.analysis["phase_histograms"]
         counts, exposure = table["counts"][:], table["exposure_s"][:]
         assert list(table["unit"].data[:]) == [0, 1, 2, 3, 4]
@@ -120,8 +137,8 @@ def test_histograms_give_the_counts_and_the_exposure_of_each_row(source, tmp_pat
         np.testing.assert_allclose(exposure[row], unit.histogram.exposure_s, rtol=1e-15)
 
 
-def test_cycles_are_a_table_of_intervals_in_order_of_time(source, tmp_path):
-    with read(label(source, tmp_path / "out.nwb", session_result())) as nwb:
+def test_cycles_are_a_table_of_intervals_in_order_of_time(labelled_twice):
+    with read(labelled_twice) as nwb:
         table = nwb.intervals["respiratory_cycles"].to_dataframe()
     assert len(table) == 2 * 39
     assert (np.diff(table["start_time"]) > 0).all()
@@ -133,8 +150,8 @@ def test_cycles_are_a_table_of_intervals_in_order_of_time(source, tmp_path):
     assert "late_e" not in table  # nobody could tell
 
 
-def test_the_description_is_enough_to_repeat_the_run(source, tmp_path):
-    with read(label(source, tmp_path / "out.nwb")) as nwb:
+def test_the_description_is_enough_to_repeat_the_run(labelled):
+    with read(labelled) as nwb:
         words = nwb.analysis["firing_types"].description
     for part in ("unitclass 0.1.0", "5e771265d1ce", "7e3b1a7ed1ce", "object id 0b7e7f0e", "nerve PNA",
                  "baseline: 0.000 to 120.000 s", "37 of 39 cycles used", "raw: band-pass 100 to 3000 Hz"):
@@ -159,8 +176,8 @@ def test_names_and_texts_of_a_file_are_made_safe(source, tmp_path):
 
 # -------------------------------------------------------------------------- intracellular
 
-def test_a_cell_without_units_gets_a_units_table_of_its_spikes(cell, tmp_path):
-    with read(label_cell(cell, tmp_path / "out.nwb")) as nwb:
+def test_a_cell_without_units_gets_a_units_table_of_its_spikes(labelled_cell):
+    with read(labelled_cell) as nwb:
         unit = sources.cell_result().conditions[0].units[0]
         assert unit.vm_spikes is not None
         np.testing.assert_array_equal(nwb.units["spike_times"][0], unit.vm_spikes.time_s)
@@ -172,8 +189,8 @@ def test_a_cell_without_units_gets_a_units_table_of_its_spikes(cell, tmp_path):
         assert nwb.units["suggested_firing_type"][0] == "post-I"
 
 
-def test_the_mean_membrane_potential_stands_beside_the_types(cell, tmp_path):
-    with read(label_cell(cell, tmp_path / "out.nwb")) as nwb:
+def test_the_mean_membrane_potential_stands_beside_the_types(labelled_cell):
+    with read(labelled_cell) as nwb:
         table = nwb.analysis["mean_membrane_potential"]
         vm = sources.cell_result().conditions[0].units[0].vm
         assert vm is not None
@@ -231,10 +248,9 @@ def test_the_source_is_not_changed_by_a_byte_and_the_copy_has_its_own_object_id(
         assert len(new["file_create_date"]) == len(old["file_create_date"]) + 1
 
 
-def test_a_second_export_replaces_the_programs_own_tables_and_columns(source, tmp_path):
-    first = label(source, tmp_path / "first.nwb")
+def test_a_second_export_replaces_the_programs_own_tables_and_columns(labelled, tmp_path):
     changed = sources.one_condition({"3": "ramp-I", "7": "tonic", "12": "NRM"})
-    second = label(first, tmp_path / "second.nwb", changed, labels={})
+    second = label(labelled, tmp_path / "second.nwb", changed, labels={})
     with read(second) as nwb:
         assert list(nwb.units["suggested_firing_type"][:]) == ["ramp-I", "tonic", "NRM", "", ""]
         assert "firing_type" not in nwb.units.colnames
@@ -243,9 +259,8 @@ def test_a_second_export_replaces_the_programs_own_tables_and_columns(source, tm
         assert list(nwb.intervals) == ["respiratory_cycles"]
 
 
-def test_a_second_export_of_a_cell_finds_its_units_table_again(cell, tmp_path):
-    first = label_cell(cell, tmp_path / "first.nwb")
-    with read(label_cell(first, tmp_path / "second.nwb")) as nwb:
+def test_a_second_export_of_a_cell_finds_its_units_table_again(labelled_cell, tmp_path):
+    with read(label_cell(labelled_cell, tmp_path / "second.nwb")) as nwb:
         assert len(nwb.units) == 1
         assert sorted(nwb.analysis) == ["firing_types", "mean_membrane_potential", "phase_histograms"]
 
