@@ -233,10 +233,11 @@ def raw(truth: Truth, rig: Rig, rng: np.random.Generator, *, name: str = "PNA", 
 
 def integrated(truth: Truth, rig: Rig, rng: np.random.Generator, *, tau_s: float = 0.05, rate_hz: float = 1000.0,
                name: str = "PNA", role: str = "phrenic") -> Signal:
-    """Return the raw nerve as rectified and integrated by a leaky integrator, sampled at `rate_hz`."""
+    """Return the raw nerve high-passed, rectified and integrated by a leaky integrator, at `rate_hz`."""
     fine = replace(rig, rate_hz=max(rig.rate_hz, 10000.0), trouble=tuple(
         w for w in rig.trouble if w in ("hum", "heart", "drift", "movement")))
-    values = np.abs(raw_values(truth, fine, rng))
+    band = sps.butter(2, fine.band_hz[0], "high", fs=fine.rate_hz, output="sos")
+    values = np.abs(sps.sosfilt(band, raw_values(truth, fine, rng)))
     keep = np.exp(-1 / (fine.rate_hz * tau_s))
     smooth = sps.lfilter([1 - keep], [1, -keep], values)
     step = round(fine.rate_hz / rate_hz)

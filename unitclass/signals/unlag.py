@@ -1,8 +1,9 @@
 """Taking the lag of a leaky integrator out of a neurogram that was integrated by hardware.
 
 A leaky integrator delays the end of a ramp by about twice its time constant. What it did can be
-undone exactly when the time constant is known: from the file's own words, or from the trace, since
-after an abrupt end no integrated trace can fall faster than its integrator lets it.
+undone exactly when the time constant is known: from the file's own words, from the noise of
+the floor, or from the falls, since after an abrupt end no integrated trace can fall faster than its integrator
+lets it.
 """
 
 from __future__ import annotations
@@ -14,6 +15,8 @@ import numpy as np
 
 from unitclass.records import FloatArray
 from unitclass.signals.neurogram import Activity
+from unitclass.signals.smoothing import boxcar
+from unitclass.signals.variogram import integrator_tau_s, quiet_floor, variogram
 
 _STATED = re.compile(r"(?:time[ -]?constants?|tau|τ|TC)\D{0,12}(\d+(?:\.\d+)?)\s*(ms|s)\b|"
                      r"(\d+(?:\.\d+)?)\s*(ms|s)\b\W{0,3}(?:time[ -]?constant|tau|τ)", re.I)
@@ -21,6 +24,9 @@ _CENTRED = re.compile(r"moving[ -]average|centred|centered|zero[ -]phase|gaussia
 SHORTEST_S, LONGEST_S = 0.015, 0.15  # time constants in use: common practice
 STEP_S = 0.02  # over which a fall is measured
 STEADY = 1.35  # ratio of the rates of fall high up and low down within which they are an exponential's
+VARIOGRAM_S = 0.25
+RIPPLE_S = 0.02  # a mains period: ripple of the rectified hum averages out
+DRIFT_S = 3.0
 LEAST = 20  # samples of fall to judge by
 
 
@@ -42,7 +48,7 @@ def without_lag(made: Activity, description: str) -> Activity:
     description : str
         The file's words about the signal.
     """
-    lag = stated_lag(description) or seen_lag(made.values, made.rate_hz, description)
+    lag = stated_lag(description) or heard_lag(made, description) or seen_lag(made.values, made.rate_hz, description)
     if lag.tau_s * made.rate_hz < 0.5:
         return replace(made, words=(*made.words, *((lag.words,) if lag.words else ())))
     keep = float(np.exp(-1.0 / (made.rate_hz * lag.tau_s)))
@@ -64,6 +70,20 @@ def stated_lag(description: str) -> Lag | None:
     if not 0.001 <= tau_s <= 1.0:
         return None
     return Lag(tau_s, f"integrator with a time constant of {1e3 * tau_s:.0f} ms, as the file says: its lag is undone")
+
+
+def heard_lag(made: Activity, description: str = "") -> Lag | None:
+    """Return the time constant that the noise of the floor shows, or None."""
+    if _CENTRED.search(description):
+        return None
+    quiet = quiet_floor(made.values, made.rate_hz)
+    steady = boxcar(made.values, round(RIPPLE_S * made.rate_hz))
+    slow = boxcar(np.where(quiet, steady, np.nan), round(DRIFT_S * made.rate_hz))
+    tau_s = integrator_tau_s(variogram(steady - slow, quiet, made.rate_hz, longest_s=VARIOGRAM_S))
+    if not SHORTEST_S <= tau_s <= LONGEST_S:
+        return None
+    return Lag(tau_s, f"the floor's noise is that of a leaky integrator with a time constant of {1e3 * tau_s:.0f} ms: "
+                      "its lag is undone")
 
 
 def seen_lag(values: FloatArray, rate_hz: float, description: str = "") -> Lag:
