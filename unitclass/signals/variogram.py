@@ -90,7 +90,7 @@ def _best(found: Variogram, model: Callable[[FloatArray, float], FloatArray]) ->
         solved, *_ = np.linalg.lstsq(design, found.gamma, rcond=None)
         sill, nugget = max(solved[0], 0.0), solved[1]
         if nugget < 0:
-            nugget, sill = 0.0, max(float(rise @ found.gamma / max(rise @ rise, 1e-300)), 0.0)
+            nugget, sill = 0.0, max(float(rise @ found.gamma / max(float(rise @ rise), 1e-300)), 0.0)
         error = float(np.sum((found.gamma - sill * rise - nugget) ** 2))
         if error < best[1]:
             best = (float(tau), error, sill / max(sill + nugget, 1e-300))
