@@ -22,7 +22,7 @@ from unitclass.io.template_files import read_library
 from unitclass.records import NOT_MODULATED, OTHER, FloatArray, UnitResult
 from unitclass.settings import Settings
 
-SIMULATORS = ("rates", "resampled", "integrate_fire")
+SIMULATORS = ("rates", "resampled", "integrate-fire")
 REGIMES = ("three-phase", "two-phase", "one-phase")
 
 
