@@ -4,10 +4,11 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
+from unitclass.errors import FileError, SignalError
 from unitclass.records import ArraySpikes, FloatArray, Membrane, Recording, SpikeReader, Unit, VmSpikes
 from unitclass.settings import Settings
 
@@ -34,9 +35,25 @@ class Cell:
 
 
 def cells_of(recording: Recording, settings: Settings) -> tuple[Cell, ...]:
-    """Return the sorted units, then the impaled cells."""
-    units = tuple(_unit_cell(unit) for unit in recording.units)
-    return (*units, *(_membrane_cell(membrane, settings) for membrane in recording.membranes))
+    """Return the sorted units, then the impaled cells.
+
+    Raises
+    ------
+    FileError
+        When no cell at all is usable; one bad trace among others is left out with a note.
+    """
+    cells = [_unit_cell(unit) for unit in recording.units]
+    problems = []
+    for membrane in recording.membranes:
+        try:
+            cells.append(_membrane_cell(membrane, settings))
+        except SignalError as error:
+            problems.append(str(error))
+    if problems and not cells:
+        raise FileError(problems[0], where=recording.path)
+    if problems:
+        cells[0] = replace(cells[0], notes=(*cells[0].notes, *problems))
+    return tuple(cells)
 
 
 def train_digest(times_s: FloatArray) -> str:

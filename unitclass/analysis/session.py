@@ -61,7 +61,9 @@ def cycles_only(recording: Recording, library: TypeLibrary, settings: Settings, 
 
 def _check_any_cell(recording: Recording) -> None:
     if not recording.units and not recording.membranes:
-        raise FileError("holds no units and no membrane potential", where=recording.path,
+        lost = [line for line in recording.missing if " [/" in line]  # traces that are there but cannot be used
+        why = f": {lost[0]}" if lost else ""
+        raise FileError(f"holds no units and no membrane potential{why}", where=recording.path,
                         remedy="`unitclass cycles` still gives its breathing cycles")
 
 

@@ -125,6 +125,8 @@ def _smoothing(sample: Sample, lens: Lens, height_mv: float) -> Lens:
     """Smooth until the noise is a fortieth of the spike's height, or over 0.2 ms."""
     noise_mv = value_noise(sample, replace(lens, smooth_samples=1))
     wanted = min((40.0 * noise_mv / max(height_mv, 1e-6)) ** 2, 0.2e-3 * lens.rate_hz)
+    if not np.isfinite(wanted):  # too few events, or none with noise, to weigh noise against blur
+        return lens
     return replace(lens, smooth_samples=max(1, int(wanted + 1) // 2 * 2 - 1))
 
 
