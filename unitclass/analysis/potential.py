@@ -18,12 +18,15 @@ def mean_potential(cell: Cell, cycles: Cycles, settings: Settings) -> VmProfile 
                       locked_window_ms=settings.phase.locked_window_ms)
 
 
-def membrane_levels(cell: Cell, profile: VmProfile | None) -> MembraneLevels | None:
-    """Return the levels that may vote on the type, or None where there is no membrane potential."""
+def membrane_levels(cell: Cell, profile: VmProfile | None, cycles: Cycles) -> MembraneLevels | None:
+    """Return the levels that may vote on the type, or None where there is no membrane potential.
+
+    Where a vagus tells the end of post-inspiration, that parts post-I from E2.
+    """
     if profile is None:
         return None
     from unitclass.phase.vm_profile import vm_phase_levels
 
-    levels = vm_phase_levels(profile)
+    levels = vm_phase_levels(profile, cycles)
     return MembraneLevels(levels.level_mv, levels.error_mv, may_vote=not cell.vote_problem,
                           reason=cell.vote_problem)

@@ -12,6 +12,7 @@ from unitclass.analysis.flags import unit_flags
 from unitclass.analysis.potential import mean_potential, membrane_levels
 from unitclass.analysis.rhythm import ConditionCycles
 from unitclass.classify.draws import Timing, draw_families
+from unitclass.classify.membrane import MembraneLevels
 from unitclass.classify.regime import Regime
 from unitclass.classify.suggestion import UnitFacts, suggest
 from unitclass.classify.templates import TypeLibrary
@@ -43,6 +44,7 @@ class _Seen:
     profile: UnitProfile
     row: CountRow
     vm: VmProfile | None
+    levels: MembraneLevels | None
 
 
 def judge_units(found: ConditionCycles, cells: Sequence[Cell], library: TypeLibrary,
@@ -56,7 +58,7 @@ def judge_units(found: ConditionCycles, cells: Sequence[Cell], library: TypeLibr
     drawn = draw_families(library, _timing(cycles), n_bins=settings.phase.n_bins,
                           n_draws=settings.classify.n_draws)
     table = stacked([one.row for one in seen], settings.phase.n_bins)
-    suggested = suggest([_facts(one, settings) for one in seen], table, found.nerve_cycles.rhythm,
+    suggested = suggest([_facts(one) for one in seen], table, found.nerve_cycles.rhythm,
                         library=library, drawn=drawn, settings=settings)
     q_values = benjamini_hochberg([one.profile.modulation.eta_squared_p for one in seen])
     results = tuple(_result(one, found, suggestion, float(q), settings)
@@ -74,9 +76,11 @@ def _seen(cells: Sequence[Cell], cycles: Cycles, settings: Settings) -> list[_Se
             yield times_s, cell.observed_s
 
     profiles = unit_profiles(trains(), cycles, settings=settings, seed=SEED)
-    return [_Seen(cell, digests[i], profile, _row(profile),
-                  mean_potential(cell, cycles, settings))
-            for i, (cell, profile) in enumerate(zip(cells, profiles, strict=True))]
+    seen = []
+    for i, (cell, profile) in enumerate(zip(cells, profiles, strict=True)):
+        potential = mean_potential(cell, cycles, settings)
+        seen.append(_Seen(cell, digests[i], profile, _row(profile), potential, membrane_levels(cell, potential, cycles)))
+    return seen
 
 
 def _row(profile: UnitProfile) -> CountRow:
@@ -89,10 +93,10 @@ def _timing(cycles: Cycles) -> Timing:
     return Timing(float(np.median(cycles.ti_s)), float(np.median(cycles.te_s)))
 
 
-def _facts(one: _Seen, settings: Settings) -> UnitFacts:
+def _facts(one: _Seen) -> UnitFacts:
     profile = one.profile
     return UnitFacts(profile.histogram, profile.modulation, profile.features, profile.histogram.n_cycles,
-                     membrane=membrane_levels(one.cell, one.vm), is_held=one.cell.is_held)
+                     membrane=one.levels, is_held=one.cell.is_held)
 
 
 def _result(one: _Seen, found: ConditionCycles, suggestion: Suggestion, q_value: float,
