@@ -45,7 +45,8 @@ def session_file(simulated, path, *, vm=None, n_sweeps=1, cell_id="cell-7", fill
             name=f"sweep_{i:02d}", data=part * unit_scale, electrode=electrode, gain=1.0, rate=rate_hz,
             starting_time=i * length / rate_hz + vm_shift_s, bias_current=bias_current_a))
     if voltage_clamp:
-        nwb.add_acquisition(VoltageClampSeries(name="clamped", data=np.zeros(1000), electrode=electrode, gain=1.0, rate=rate_hz))
+        nwb.add_acquisition(VoltageClampSeries(name="clamped", data=np.zeros(1000), electrode=electrode, gain=1.0,
+                                               rate=rate_hz))
     return write(nwb, path)
 
 
