@@ -544,8 +544,6 @@ class Features:
     drift: float
     split_half_r: float
     overdispersion: float
-    cardiac_modulation: float = np.nan
-    pump_modulation: float = np.nan
 
 
 # ------------------------------------------------------------------------ intracellular
@@ -673,7 +671,6 @@ class UnitResult:
     columns: Mapping[str, str] = field(default_factory=dict)
     vm: VmProfile | None = None
     vm_spikes: VmSpikes | None = None
-    histogram_with_tagged: PhaseHistogram | None = None
 
     @property
     def key(self) -> tuple[str, str]:

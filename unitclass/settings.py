@@ -142,7 +142,6 @@ class RigSettings:
     condition_table: str = worded("", "intervals table that holds the conditions")
     same_condition: bool = worded(False, "pool repeated visits to one condition")
     exclude: tuple[str, ...] = worded((), "interval tables or labels to leave out, e.g. \"stimulation\"")
-    crosswalk: str = worded("", "file that maps type ids to the laboratory's own words")
     electrode_fill: str = worded("", "fill of the intracellular electrode when the files do not tell")
 
 

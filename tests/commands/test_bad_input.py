@@ -234,3 +234,22 @@ def test_names_from_a_file_bring_no_escape_sequences_to_the_terminal(tmp_path, s
         assert ran.code == 0, ran.err
         assert "\x1b" not in ran.out + ran.err
         assert "\u202e" not in ran.out + ran.err
+
+
+def test_two_files_of_one_name_do_not_overwrite_each_other_even_with_force(tmp_path, good):
+    for folder in ("monday", "tuesday"):
+        (tmp_path / folder).mkdir()
+        shutil.copyfile(good, tmp_path / folder / "same.nwb")
+    ran = run("export", tmp_path / "monday", tmp_path / "tuesday", "--out", tmp_path / "out", "--force")
+    assert ran.code == 1
+    assert len(said(ran)) == 1
+    assert "tuesday" in said(ran)[0]
+    assert set(column(rows_of(tmp_path / "out" / "units.csv"), "file")) == {str(tmp_path / "monday" / "same.nwb")}
+
+
+def test_an_unknown_role_in_the_settings_is_refused_with_those_there_are(tmp_path, good):
+    settings = tmp_path / "settings.toml"
+    settings.write_text('[rig]\nroles = {physiology = "frenic"}\n')
+    ran = run("classify", good, "--settings", settings)
+    assert ran.code == 2
+    assert "phrenic" in ran.err

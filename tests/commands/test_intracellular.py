@@ -130,7 +130,7 @@ def test_a_bad_trace_is_one_line_and_the_other_file_goes_on(simulated, tmp_path,
     assert set(column(rows_of(tmp_path / "units.csv"), "file")) == {str(good)}
 
 
-def test_a_folder_of_short_files_is_one_row_per_cell_and_a_shared_cell_id_joins_nothing_by_accident(simulated, tmp_path):
+def test_a_folder_of_short_files_is_one_row_per_cell(simulated, tmp_path):
     folder = tmp_path / "week"
     folder.mkdir()
     for i in range(3):

@@ -218,7 +218,6 @@ def test_it_may_be_deleted_at_any_time(cache, nwb, result):
 def test_where_nothing_can_be_kept_the_program_goes_on_without(tmp_path, nwb, result):
     (tmp_path / "file").touch()
     cache = ResultCache(tmp_path / "file" / "results.sqlite")
-    assert not cache.is_working
     assert not cache.put(result, FileStamp.of(nwb), KEY)
     assert cache.find(nwb, KEY) is None
     cache.close()

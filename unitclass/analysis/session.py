@@ -8,7 +8,6 @@ from dataclasses import replace
 from unitclass.analysis.cells import Cell, cells_of, overlap_problem
 from unitclass.analysis.rhythm import ConditionCycles, condition_cycles, conditions_of
 from unitclass.analysis.units import judge_units
-from unitclass.classify.regime import judge_regime
 from unitclass.classify.templates import TypeLibrary
 from unitclass.errors import FileError
 from unitclass.records import ConditionResult, CycleEdit, Recording, SessionResult
@@ -86,12 +85,10 @@ def _check_any_cycle(recording: Recording, found: Sequence[ConditionCycles]) -> 
 def _judged(found: ConditionCycles, cells: Sequence[Cell], library: TypeLibrary,
             settings: Settings) -> ConditionResult:
     units = judge_units(found, cells, library, settings)
-    regime = units.regime or judge_regime(found.nerve_cycles.rhythm, units.no_evidence, library,
-                                          given=settings.classify.regime, other_prior=settings.classify.other_prior)
     return ConditionResult(
         condition=found.condition, nerve=found.nerve_cycles.cycles.nerve, nerve_cycles=found.nerve_cycles,
-        nerve_profiles=found.profiles, regime_probabilities=regime.probabilities,
-        regime_reasons=regime.reasons, units=units.results, problem=found.problem)
+        nerve_profiles=found.profiles, regime_probabilities=units.regime.probabilities,
+        regime_reasons=units.regime.reasons, units=units.results, problem=found.problem)
 
 
 def _session(recording: Recording, judged: tuple[ConditionResult, ...], library: TypeLibrary, settings: Settings,

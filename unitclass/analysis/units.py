@@ -13,13 +13,13 @@ from unitclass.analysis.potential import mean_potential, membrane_levels
 from unitclass.analysis.rhythm import ConditionCycles
 from unitclass.classify.draws import Timing, draw_families
 from unitclass.classify.membrane import MembraneLevels
-from unitclass.classify.regime import Regime
+from unitclass.classify.regime import Regime, judge_regime
 from unitclass.classify.suggestion import UnitFacts, suggest
 from unitclass.classify.templates import TypeLibrary
 from unitclass.classify.unit_counts import CountRow, count_row, stacked
 from unitclass.phase.multiple_testing import benjamini_hochberg
 from unitclass.phase.profiles import Train, UnitProfile, unit_profiles
-from unitclass.records import Cycles, FloatArray, Suggestion, UnitResult, VmProfile
+from unitclass.records import Cycles, Suggestion, UnitResult, VmProfile
 from unitclass.settings import Settings
 
 SEED = 1
@@ -28,11 +28,10 @@ USUAL = Timing(ti_s=1.0, te_s=2.0)  # before any cycle is known
 
 @dataclass(frozen=True)
 class JudgedUnits:
-    """Results of one condition; `regime` is None when there was no cell to judge it with."""
+    """Results of one condition, and the regime under which they were judged."""
 
     results: tuple[UnitResult, ...]
-    regime: Regime | None
-    no_evidence: FloatArray
+    regime: Regime
 
 
 @dataclass(frozen=True)
@@ -50,9 +49,10 @@ class _Seen:
 def judge_units(found: ConditionCycles, cells: Sequence[Cell], library: TypeLibrary,
                 settings: Settings) -> JudgedUnits:
     """Return the result of every cell in one condition, in the order given."""
-    none = np.zeros((0, len(library.families) + 1))
     if not cells:
-        return JudgedUnits((), None, none)
+        nobody = np.zeros((0, len(library.families) + 1))
+        return JudgedUnits((), judge_regime(found.nerve_cycles.rhythm, nobody, library, given=settings.classify.regime,
+                                            other_prior=settings.classify.other_prior))
     cycles = found.brainstem_cycles(settings)
     seen = _seen(cells, cycles, settings)
     drawn = draw_families(library, _timing(cycles), n_bins=settings.phase.n_bins,
@@ -63,7 +63,7 @@ def judge_units(found: ConditionCycles, cells: Sequence[Cell], library: TypeLibr
     q_values = benjamini_hochberg([one.profile.modulation.eta_squared_p for one in seen])
     results = tuple(_result(one, found, suggestion, float(q), settings)
                     for one, suggestion, q in zip(seen, suggested.suggestions, q_values, strict=True))
-    return JudgedUnits(results, suggested.regime, none)
+    return JudgedUnits(results, suggested.regime)
 
 
 def _seen(cells: Sequence[Cell], cycles: Cycles, settings: Settings) -> list[_Seen]:

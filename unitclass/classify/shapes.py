@@ -18,16 +18,16 @@ Parameters = Mapping[str, FloatArray]
 
 
 def window(p: Parameters, phase: FloatArray) -> FloatArray:
-    """Return one active window: rise to the peak, fall from it, an optional foot and tail.
+    """Return one active window: rise to the peak, fall from it, an optional foot.
 
-    The foot is weak firing before the window (how a pre-I cell starts), the tail weak firing
-    after it. Works on the unwrapped phase; turns that the window reaches into are laid over each other.
+    The foot is weak firing before the window: how a pre-I cell starts. Works on the unwrapped
+    phase; turns that the window reaches into are laid over each other.
     """
     reach = 3.0 * float(p["edge_ms"].max()) / 1e3 / min(float(p["ti_s"][0, 0]), float(p["te_s"][0, 0]))
     level = _hump(p, phase)
     if min(float(p["onset"].min()), float(p["foot_onset"].min()) if p["foot"].any() else 2.0) < reach:
         level = np.maximum(level, _hump(p, phase - 2.0))
-    if max(float(p["offset"].max()), float(p["tail_offset"].max()) if p["tail"].any() else 0.0) > 2.0 - reach:
+    if float(p["offset"].max()) > 2.0 - reach:
         level = np.maximum(level, _hump(p, phase + 2.0))
     return level
 
@@ -40,18 +40,13 @@ def _hump(p: Parameters, phase: FloatArray) -> FloatArray:
     body = body * _gate(p, phase, onset, p["offset"])
     if p["foot"].any():
         body = body + _foot(p, phase, onset)
-    return body + _tail(p, phase) if p["tail"].any() else body
+    return body
 
 
 def _foot(p: Parameters, phase: FloatArray, onset: FloatArray) -> FloatArray:
     foot_onset = np.minimum(p["foot_onset"], onset - 0.01)
     foot = p["foot"] * _ramp(phase, foot_onset, onset) * _gate(p, phase, foot_onset, onset)
     return foot * (1 - _gate(p, phase, onset, onset + 9.0))
-
-
-def _tail(p: Parameters, phase: FloatArray) -> FloatArray:
-    tail_offset = np.maximum(p["tail_offset"], p["offset"] + 0.01)
-    return p["tail"] * _ramp(-phase, -tail_offset, -p["offset"]) * _gate(p, phase, p["offset"], tail_offset)
 
 
 def _rise_and_fall(phase: FloatArray, onset: FloatArray, peak: FloatArray, offset: FloatArray,
@@ -87,7 +82,7 @@ def two_humps(p: Parameters, phase: FloatArray) -> FloatArray:
     second = dict(p)
     second.update(onset=np.maximum(p["second_onset"], p["offset"] + LEAST_GAP), offset=p["second_offset"],
                   peak=p["second_offset"], start_level=p["second_start"], end_level=np.ones_like(p["edge_ms"]),
-                  foot=0 * p["foot"], tail=0 * p["tail"])
+                  foot=0 * p["foot"])
     between = p["dip"] * _gate(p, phase, p["onset"], p["second_offset"])
     return np.maximum.reduce([p["first_level"] * first, p["second_level"] * window(second, phase), between])
 

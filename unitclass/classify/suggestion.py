@@ -76,7 +76,7 @@ def suggest(facts: Sequence[UnitFacts], units: UnitCounts, rhythm: RhythmEvidenc
     rhythm_name = max(regime.probabilities, key=lambda name: regime.probabilities[name])
     made = []
     for i, fact in enumerate(facts):
-        if states[i] and not _speaks_alone(fact, states[i]):
+        if states[i] and not _speaks_alone(fact, settings):
             made.append(_state_suggestion(states[i], fact))
             continue
         witnesses = {"histogram": histogram[i], "membrane potential": membrane[i], "regime": prior}
@@ -96,10 +96,10 @@ def unit_state(fact: UnitFacts, settings: Settings) -> str:
     return UNDETERMINED if n_spikes < floor.min_spikes else ""
 
 
-def _speaks_alone(fact: UnitFacts, state: str) -> bool:
+def _speaks_alone(fact: UnitFacts, settings: Settings) -> bool:
     """Return whether a cell with too few spikes can be judged by its membrane potential."""
-    return fact.membrane is not None and fact.membrane.may_vote and fact.n_cycles >= 10 and bool(
-        level_words(fact.membrane))
+    return fact.membrane is not None and fact.membrane.may_vote and (
+        fact.n_cycles >= settings.modulation.min_cycles) and bool(level_words(fact.membrane))
 
 
 def _membrane(fact: UnitFacts, library: TypeLibrary, drawn: DrawnFamilies) -> FloatArray:

@@ -20,7 +20,7 @@ Range = tuple[float, float]
 # leave [0, 2) so that a range can straddle an edge; levels are shares of the peak rate.
 COMMON: Mapping[str, Range] = {
     "background": (0.0, 0.35), "edge_ms": (10.0, 60.0), "wiggle": (0.0, 0.2), "foreign": (0.0, 0.15), "foot": (0.0, 0.0),
-    "foot_onset": (-0.2, -0.05), "tail": (0.0, 0.0), "tail_offset": (1.05, 1.2),
+    "foot_onset": (-0.2, -0.05),
     "curve_up": (0.6, 2.0), "curve_down": (0.6, 2.5),
 }
 FORMS: Mapping[str, Mapping[str, Range]] = {

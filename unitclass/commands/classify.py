@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import argparse
-import sys
 
 from unitclass.commands.options import add_paths, add_run_options, add_session_options
 
@@ -23,18 +22,17 @@ def run(args: argparse.Namespace) -> int:
     from unitclass.commands.views import print_units
     from unitclass.io.tables import CLASSIFY_COLUMNS, classify_rows
 
-    words = None
     rows, results, failed = [], [], 0
     for outcome in run_files(args):
         if outcome.result is None:
             failed += 1
             continue
         labels = labels_of(outcome.result, args)
-        rows += classify_rows(outcome.result, labels, words=words)
-        results.append(outcome.result)
+        rows += classify_rows(outcome.result, labels)
+        results.append((outcome.result, labels))
     if results and (args.table or args.json):
         write_rows(rows, args, columns=CLASSIFY_COLUMNS)
     if not args.json and args.table != "-":
-        for result in results:
-            print_units(result, labels_of(result, args), file=sys.stdout)
+        for result, labels in results:
+            print_units(result, labels)
     return exit_code(failed, len(results))

@@ -21,14 +21,15 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
 
 def run(args: argparse.Namespace) -> int:
     """Copy the sample, classify it, review it where there is a terminal, write the labelled NWB."""
-    from unitclass.commands.export import made_folder, write_copy
+    from unitclass.commands.export import write_copy
     from unitclass.commands.labels import labels_of
     from unitclass.commands.parser import parse
     from unitclass.commands.runs import run_files, write_rows
     from unitclass.commands.views import print_units
+    from unitclass.io.atomic import made_folder
     from unitclass.io.tables import CLASSIFY_COLUMNS, classify_rows
 
-    folder = Path(made_folder(args.out))
+    folder = made_folder(args.out)
     session, table = _copied_sample(folder), folder / "units.csv"
     if _has_terminal() and not args.no_review:
         review = parse(["review", str(session)])
@@ -41,7 +42,7 @@ def run(args: argparse.Namespace) -> int:
         print_units(outcome.result, labels)
         job.table = str(table)
         write_rows(classify_rows(outcome.result, labels), job, columns=CLASSIFY_COLUMNS)
-        target = write_copy(outcome, job)
+        target = write_copy(outcome, labels, job, {})
     _say_what_next(session, table, target)
     return 0
 

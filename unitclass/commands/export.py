@@ -9,6 +9,7 @@ from unitclass.commands.options import add_paths, add_run_options, add_session_o
 
 if TYPE_CHECKING:
     from unitclass.batch import Outcome
+    from unitclass.records import Labels
 
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
@@ -22,77 +23,65 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
 
 def run(args: argparse.Namespace) -> int:
     """Classify, write a labelled copy of every session, and the two tables."""
-    from pathlib import Path
-
     from unitclass.commands.labels import labels_of
     from unitclass.commands.progress import say
     from unitclass.commands.runs import exit_code, run_files
-    from unitclass.errors import TargetError, UnitclassError
+    from unitclass.errors import UnitclassError
+    from unitclass.io.atomic import check_target, made_folder
     from unitclass.io.table_files import write_table
     from unitclass.io.tables import CLASSIFY_COLUMNS, CYCLE_COLUMNS, classify_rows, cycle_rows
 
     folder = made_folder(args.out)
     tables = {"units.csv": CLASSIFY_COLUMNS, "cycles.csv": CYCLE_COLUMNS}
     for name in tables:
-        if (Path(folder) / name).exists() and not args.force:
-            raise TargetError("exists already", where=str(Path(folder) / name), remedy="name another folder or --force")
-    units, cycles, n_done, failed = [], [], 0, 0
+        check_target(str(folder / name), force=args.force)
+    units, cycles, failed = [], [], 0
+    written: dict[str, str] = {}
     for outcome in run_files(args):
         if outcome.result is None:
             failed += 1
             continue
+        labels = labels_of(outcome.result, args)
         try:
-            target = write_copy(outcome, args)
+            target = write_copy(outcome, labels, args, written)
         except UnitclassError as error:
             failed += 1
             say(f"unitclass: {error}")
             continue
-        n_done += 1
-        units += classify_rows(outcome.result, labels_of(outcome.result, args))
+        units += classify_rows(outcome.result, labels)
         cycles += cycle_rows(outcome.result)
         print(target, flush=True)
-    if n_done:
+    if written:
         for (name, columns), rows in zip(tables.items(), (units, cycles), strict=True):
-            write_table(str(Path(folder) / name), rows, force=args.force, columns=columns)
-            print(Path(folder) / name)
-    return exit_code(failed, n_done)
+            write_table(str(folder / name), rows, force=args.force, columns=columns)
+            print(folder / name)
+    return exit_code(failed, len(written))
 
 
-def write_copy(outcome: Outcome, args: argparse.Namespace) -> str:
+def write_copy(outcome: Outcome, labels: Labels, args: argparse.Namespace, written: dict[str, str]) -> str:
     """Write one labelled copy and return its path.
+
+    `written`, target to source, holds the copies of this run and gains the new one.
 
     Raises
     ------
     TargetError
-        When it cannot be written; nothing half-written remains.
+        When it cannot be written, or another file of the run has the same name; nothing
+        half-written remains.
     """
     from pathlib import Path
 
-    from unitclass.commands.labels import labels_of
+    from unitclass.commands.options import settings_from
+    from unitclass.errors import TargetError
     from unitclass.io.nwb_write import labelled_name, write_labelled
 
     assert outcome.result is not None
     assert outcome.recording is not None
     target = str(Path(args.out) / labelled_name(outcome.path))
-    write_labelled(outcome.path, target, outcome.recording, outcome.result, labels_of(outcome.result, args),
-                   only=args.only, link_raw=args.link_raw, force=args.force)
+    if target in written:
+        raise TargetError(f"has the name of {written[target]}, exported just now", where=outcome.path,
+                          remedy="export it into another folder")
+    write_labelled(outcome.path, target, outcome.recording, outcome.result, labels, only=args.only,
+                   link_raw=args.link_raw, force=args.force, settings=settings_from(args))
+    written[target] = outcome.path
     return target
-
-
-def made_folder(out: str) -> str:
-    """Return the folder, made if it is not there.
-
-    Raises
-    ------
-    TargetError
-        When it cannot be made.
-    """
-    from pathlib import Path
-
-    from unitclass.errors import TargetError
-
-    try:
-        Path(out).mkdir(parents=True, exist_ok=True)
-    except OSError as error:
-        raise TargetError("cannot be made", where=out, remedy=error.strerror or str(error)) from error
-    return out

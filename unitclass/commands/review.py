@@ -173,6 +173,7 @@ def exported(args: argparse.Namespace, path: str, result: SessionResult, labels:
     from unitclass.commands.options import plan_from
     from unitclass.io.nwb_write import write_labelled
 
-    write_labelled(path, target, read_planned(path, plan_from(args)), result, labels, only=args.only,
-                   force=is_replacing)
+    plan = plan_from(args)
+    write_labelled(path, target, read_planned(path, plan), result, labels, only=args.only, force=is_replacing,
+                   settings=plan.settings)
     return target

@@ -21,7 +21,7 @@ def run_files(args: argparse.Namespace, *, cycles_only: bool = False) -> Iterato
     from unitclass.batch import analyse_files
     from unitclass.io.paths import find_files
 
-    check_target(args)
+    check_table(args)
     paths, plan = find_files(args.paths), replace(plan_from(args), cycles_only=cycles_only)
     with progress(len(paths), quiet=args.quiet) as step:
         for outcome in analyse_files(paths, plan, workers=args.workers):
@@ -34,19 +34,15 @@ def run_files(args: argparse.Namespace, *, cycles_only: bool = False) -> Iterato
             yield outcome
 
 
-def check_target(args: argparse.Namespace) -> None:
+def check_table(args: argparse.Namespace) -> None:
     """Refuse a table that exists, or is of no known kind, before any long work."""
-    from pathlib import Path
-
-    from unitclass.errors import TargetError
+    from unitclass.io.atomic import check_target
     from unitclass.io.table_files import table_form
 
     table = getattr(args, "table", "")
-    if table in ("", "-"):
-        return
-    table_form(table)
-    if Path(table).exists() and not args.force:
-        raise TargetError("exists already", where=table, remedy="name another file or add --force")
+    if table not in ("", "-"):
+        table_form(table)
+        check_target(table, force=args.force)
 
 
 def exit_code(n_failed: int, n_done: int) -> int:

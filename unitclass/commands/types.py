@@ -3,6 +3,10 @@
 from __future__ import annotations
 
 import argparse
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from unitclass.classify.templates import Family
 
 BARS = " .:-=+*#%@"  # one character a phase bin: readable in any terminal
 
@@ -65,18 +69,16 @@ def _show(args: argparse.Namespace) -> int:
     for name, (low, high) in family.ranges.items():
         print(f"{name}: {low:g} to {high:g}{' ms' if name.endswith('_ms') else ''}")
     print(f"sources: {'; '.join(family.sources)}")
-    _print_picture(args.type, args.templates)
+    _print_picture(family)
     return 0
 
 
-def _print_picture(type_id: str, templates: str) -> None:
+def _print_picture(family: Family) -> None:
     """Print a few profiles of the family, drawn evenly from its draws, a line each."""
     import numpy as np
 
     from unitclass.classify.draws import Timing, draw_profiles
-    from unitclass.io.template_files import read_library
 
-    family = read_library(templates).family(type_id)
     profiles = draw_profiles(family, Timing(ti_s=1.0, te_s=2.0), n_bins=40, n_draws=8)
     print("eight cells that it would hold (TI 1 s, TE 2 s):")
     print("  " + "inspiration".center(20, "_") + "|" + "expiration".center(20, "_"))

@@ -72,11 +72,6 @@ class ResultCache:
         self._lock = threading.RLock()
         self._db = open_cache(self.path)
 
-    @property
-    def is_working(self) -> bool:
-        """Return whether there is a file to keep results in."""
-        return self._db is not None
-
     def close(self) -> None:
         """Close the file."""
         with self._lock:

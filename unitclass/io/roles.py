@@ -58,7 +58,6 @@ _VOCABULARIES = (
                r"population|pre[ -]?b(?:ö|o|oe)t|multi[ -]?unit|field potential", r"VRG|VRC|preBotC|MUA|LFP"),
 )
 POPULATION = "population activity"
-AIRWAY_PRESSURE = "airway pressure"
 DIAPHRAGM = "diaphragm"
 OTHER_NERVE = "a nerve that does not define inspiration"
 

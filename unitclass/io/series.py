@@ -39,7 +39,6 @@ class Series:
     times: TimeBase
     dataset: str
     time_axis: int = 0
-    is_whole_numbers: bool = False
     notes: tuple[str, ...] = ()
 
     @property
@@ -85,7 +84,6 @@ def read_series(file: h5py.File, location: str, parents: Mapping[str, str],
         n_columns=n_columns, unit=_unit(data), description=attribute(group, "description"),
         comments=attribute(group, "comments"), gains=_gains(group, data, n_columns),
         offset=_offset(data), times=times, dataset=f"{location}/data", time_axis=time_axis,
-        is_whole_numbers=data.dtype.kind in "iu",
         notes=tuple(filter(None, (times.note, _transposed_note(data, time_axis)))))
     if all(g == 0 for g in series.gains):
         raise UnusableSeriesError("has a gain (conversion) of zero")

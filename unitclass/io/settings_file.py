@@ -6,6 +6,7 @@ import tomllib
 from pathlib import Path
 
 from unitclass.errors import UsageError
+from unitclass.records import ROLES
 from unitclass.settings import Settings
 
 
@@ -60,4 +61,14 @@ def read_settings(path: str) -> Settings:
     except tomllib.TOMLDecodeError as problem:
         raise UsageError(f"the settings file is not valid TOML: {problem}", where=path,
                          remedy="correct that line") from None
-    return Settings.from_mapping(given, where=path)
+    return _checked_rig(Settings.from_mapping(given, where=path), path)
+
+
+def _checked_rig(settings: Settings, path: str) -> Settings:
+    """Return the settings; a role or a form that the program does not know is refused by name."""
+    for table, known in (("roles", ROLES), ("forms", ("raw", "integrated"))):
+        for name, value in getattr(settings.rig, table).items():
+            if value not in known:
+                raise UsageError(f"rig.{table}: {name} = {value!r} is unknown", where=path,
+                                 remedy="use one of " + ", ".join(known))
+    return settings

@@ -102,8 +102,6 @@ def _active_range(family: Family) -> tuple[float, float]:
         start = min(start, family.range("foot_onset")[0])
     if family.form == "two humps":
         stop = max(stop, family.range("second_offset")[1])
-    if family.range("tail")[1] > 0:
-        stop = max(stop, family.range("tail_offset")[1])
     return start, stop
 
 

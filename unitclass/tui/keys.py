@@ -15,7 +15,6 @@ from unitclass.errors import UsageError
 REVIEW, POPULATION, CONDITIONS, CYCLES, TYPES, HELP = (
     "review", "population", "conditions", "cycles", "types", "help")
 BATCH, DISCUSS, FINISH, ACCOUNT = "batch", "discuss", "finish", "account"
-ASK = "ask"
 LISTS = (POPULATION, BATCH, DISCUSS)
 OTHERS = (POPULATION, CONDITIONS, CYCLES, TYPES, HELP, BATCH, DISCUSS, FINISH, ACCOUNT)
 
