@@ -150,6 +150,7 @@ class ReviewSettings:
     """The terminal review."""
 
     mouse: bool = worded(True, "report mouse events to the program")
+    learn: bool = worded(True, "let the labels given so far change the suggestions of other units")
     keys: Mapping[str, str] = worded({}, "action id to key, e.g. accept = \"enter\"")
     reviewer: str = worded("", "name of the reviewer; empty is the login name")
     background: str = worded("auto", "background of the terminal, for the shading of inspiration",

@@ -6,7 +6,7 @@ from scipy.stats import multinomial
 
 from tests.classify.families import TIMING, in_and_ex
 from unitclass.classify.draws import draw_families
-from unitclass.classify.likelihood import draw_posterior, evidence_weight, family_evidence, log_likelihood
+from unitclass.classify.likelihood import evidence_weight, family_evidence, log_likelihood
 from unitclass.classify.posterior import probabilities, type_log_prior
 
 
@@ -95,10 +95,3 @@ def test_evidence_saturates_at_the_concentration_and_bursty_trains_count_less():
     assert effective[0] == pytest.approx(10, rel=0.05)
     assert effective[1] == pytest.approx(300, rel=0.01)
     assert evidence_weight(n, np.full(2, 3.0), 300.0)[0] < 0.4
-
-
-def test_draw_shares_sum_to_one_and_favour_the_likelier_draw():
-    drawn = draw_families(in_and_ex(), TIMING, n_bins=8, n_draws=4)
-    share = draw_posterior(np.arange(4.0), 1.0, drawn, "ex")
-    assert share.sum() == pytest.approx(1.0)
-    assert share.argmax() == 3

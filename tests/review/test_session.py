@@ -290,12 +290,12 @@ def test_two_files_of_one_name_cannot_go_into_one_folder(tmp_path):
     assert {i.problem for i in session.export_plan()} == {""}
 
 
-def test_results_for_an_export_hold_the_suggestions_in_force(tmp_path):
+def test_results_for_an_export_hold_the_analysis_own_suggestions_whatever_labels_taught(tmp_path):
     session = review(tmp_path)
     other = session.unit_result(row(session, "10")).suggestion
     session.update_suggestions({("rig/a.nwb", "3", "baseline"): other})
     result = session.session_result("rig/a.nwb")
-    assert {u.unit: u.suggestion.type for _, u in result.units()}["3"] == "post-I"
+    assert {u.unit: u.suggestion.type for _, u in result.units()}["3"] == "pre-I"
     assert result.object_id == "object of rig/a.nwb"
     with pytest.raises(UnitclassError, match="no results yet"):
         session.session_result("rig/unknown.nwb")

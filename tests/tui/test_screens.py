@@ -245,7 +245,8 @@ def learned(lessons):
     """Stand in for the learner: after five labels unit 30 looks like ramp-I; runs in another process."""
     from unitclass.records import Suggestion
 
-    assert len(lessons) == 5
+    if len(lessons) < 5:
+        return {}
     nothing = np.zeros(0)
     return {("rig/heron_04.nwb", "30", "baseline"): Suggestion("ramp-I", {"ramp-I": 0.9, "pre-I": 0.1}, (), {},
                                                                nothing, nothing, nothing)}

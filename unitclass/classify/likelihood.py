@@ -76,13 +76,3 @@ def family_evidence(log_lik: FloatArray, weight: FloatArray, drawn: DrawnFamilie
     top = np.maximum.reduceat(tempered, starts, axis=1)
     spread = np.exp(tempered - np.repeat(top, np.diff([*starts, drawn.owner.size]), axis=1))
     return np.asarray(top + np.log(np.add.reduceat(spread, starts, axis=1)))
-
-
-def draw_posterior(log_lik: FloatArray, weight: float, drawn: DrawnFamilies, type_id: str) -> FloatArray:
-    """Return the posterior share of each draw of one family for one unit.
-
-    `log_lik` and the result have shape (n_draws,), the draws of that family alone.
-    """
-    tempered = weight * log_lik + drawn.log_weight[drawn.rows(type_id)]
-    share = np.exp(tempered - tempered.max())
-    return np.asarray(share / share.sum())

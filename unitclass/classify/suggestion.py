@@ -8,7 +8,8 @@ from dataclasses import dataclass, replace
 import numpy as np
 
 from unitclass.classify.draws import DrawnFamilies
-from unitclass.classify.likelihood import draw_posterior, evidence_weight, log_likelihood
+from unitclass.classify.fit import NO_FIT, Fit, fit
+from unitclass.classify.likelihood import evidence_weight
 from unitclass.classify.membrane import MembraneLevels, level_words, membrane_evidence, quiet_phases
 from unitclass.classify.posterior import probabilities, score_units, type_log_prior
 from unitclass.classify.reasons import firing_reasons, odds_words, type_reasons
@@ -30,7 +31,6 @@ from unitclass.records import (
 from unitclass.settings import Settings
 
 NOTHING = np.zeros(0)
-BAND = (0.05, 0.95)
 
 
 @dataclass(frozen=True)
@@ -124,11 +124,11 @@ def _typed_suggestion(fact: UnitFacts, unit: UnitCounts, row: FloatArray, witnes
     order = np.argsort(-row, kind="stable")
     first, second = int(order[0]), int(order[1])
     ranked = {types[i]: float(row[i]) for i in order}
-    fit = _fit(unit, types[first], drawn, settings)
+    found = _fit(unit, types[first], drawn, settings)
     return Suggestion(
         type=types[first], probabilities=ranked, reasons=_reasons(fact, types, row, first, second, settings),
         evidence={name: float(values[first] - values[second]) for name, values in witnesses.items()},
-        fitted_rate_hz=fit[0], fitted_low_hz=fit[1], fitted_high_hz=fit[2])
+        fitted_rate_hz=found.rate_hz, fitted_low_hz=found.low_hz, fitted_high_hz=found.high_hz)
 
 
 def _reasons(fact: UnitFacts, types: tuple[str, ...], row: FloatArray, first: int, second: int,
@@ -142,24 +142,9 @@ def _reasons(fact: UnitFacts, types: tuple[str, ...], row: FloatArray, first: in
             odds_words(types[first], types[second], float(row[first]), float(row[second])))
 
 
-def _fit(unit: UnitCounts, type_id: str, drawn: DrawnFamilies,
-         settings: Settings) -> tuple[FloatArray, FloatArray, FloatArray]:
-    """Return the posterior mean profile at the fitted gain with its 90 % band, spikes/s."""
+def _fit(unit: UnitCounts, type_id: str, drawn: DrawnFamilies, settings: Settings) -> Fit:
     if type_id == OTHER or not unit.n_spikes[0]:
-        return NOTHING, NOTHING, NOTHING
-    rate = drawn.rate[drawn.rows(type_id)]
-    log_lik = log_likelihood(unit.counts, unit.exposure_s, rate)[0]
-    weight = float(evidence_weight(unit.n_spikes, unit.dispersion, settings.classify.concentration)[0])
-    share = draw_posterior(log_lik, weight, drawn, type_id)
-    scaled = rate * (unit.n_spikes[0] / (rate @ unit.exposure_s[0]))[:, None]
-    mean = share @ scaled
-    low, high = _weighted_quantiles(scaled, share)
-    return mean, np.minimum(low, mean), np.maximum(high, mean)  # a few strong draws can pull the mean out
-
-
-def _weighted_quantiles(values: FloatArray, share: FloatArray) -> tuple[FloatArray, FloatArray]:
-    order = np.argsort(values, axis=0)
-    reached = np.cumsum(share[order], axis=0)
-    columns = np.arange(values.shape[1])
-    low, high = (np.argmax(reached >= q, axis=0) for q in BAND)
-    return values[order[low, columns], columns], values[order[high, columns], columns]
+        return NO_FIT
+    mine = drawn.rows(type_id)
+    weight = evidence_weight(unit.n_spikes, unit.dispersion, settings.classify.concentration)
+    return fit(unit.counts, unit.exposure_s, float(weight[0]), drawn.rate[mine], drawn.log_weight[mine])

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+from collections.abc import Sequence
 from dataclasses import dataclass
 from functools import partial
 from typing import TYPE_CHECKING, Any
@@ -12,7 +13,9 @@ from unitclass.commands.options import add_paths, add_session_options
 if TYPE_CHECKING:
     from unitclass.batch import Plan
     from unitclass.io.result_cache import CacheKey, ResultCache
-    from unitclass.records import Labels, SessionResult
+    from unitclass.records import Labels, SessionResult, Suggestion
+    from unitclass.review.entry import EntryKey
+    from unitclass.review.teaching import Lesson
 
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
@@ -56,6 +59,7 @@ def run(args: argparse.Namespace) -> int:
     from unitclass.tui.app import ReviewApp, run_review
 
     app = ReviewApp(session, analyse=partial(analysed, args), take=partial(_taken, work, store), pending=pending,
+                    relearn=partial(taught, args) if settings.review.learn else None,
                     export=partial(exported, args), settings=settings, library=work.library)
     code = run_review(app, mouse=settings.review.mouse)
     if place.message:
@@ -164,6 +168,22 @@ def _taken(work: _Work, store: Any, path: str, result: SessionResult | None) -> 
 
         raise FileError("its results were lost from the cache", where=path, remedy="open the review again")
     return known
+
+
+def taught(args: argparse.Namespace, lessons: Sequence[Lesson]) -> dict[EntryKey, Suggestion]:
+    """Return the suggestions that labels change; runs in a process of its own, on cached results."""
+    from unitclass.commands.options import settings_from
+    from unitclass.io.decisions import DecisionStore
+    from unitclass.io.paths import find_files
+    from unitclass.io.result_cache import ResultCache
+    from unitclass.io.store_place import cache_path
+    from unitclass.review.relearning import relearned
+
+    settings = settings_from(args)
+    work = _Work(args, ResultCache(cache_path()), settings_digest=settings.digest())
+    with DecisionStore(args.store, is_read_only=True) as store:
+        found = [work.cache.find(path, work.key, edits_digest_of=store.edits_digest) for path in find_files(args.paths)]
+    return relearned([view for view in found if view is not None], lessons, work.library(), settings)
 
 
 def exported(args: argparse.Namespace, path: str, result: SessionResult, labels: Labels, target: str,

@@ -167,20 +167,23 @@ class ReviewSession(ReviewReader):
     # ----------------------------------------------------------------------- suggestions
 
     def update_suggestions(self, suggestions: Mapping[EntryKey, Suggestion]) -> tuple[EntryKey, ...]:
-        """Replace suggestions; rows keep their places and say what the suggestion was.
+        """Let these suggestions stand in place of the analysis's own; every other unit gets its own back.
 
+        Rows keep their places and say what the suggestion was.
         The row under the cursor keeps what is on the screen until the cursor leaves it, so that
         nobody accepts what was not there a moment ago. Return the keys that changed at once.
         """
-        current = self.current
+        current, shelf = self.current, self._board.shelf
+        over = [key for key in shelf.replaced if key not in suggestions]
         changed = []
-        for key, suggestion in suggestions.items():
-            if key not in self._board.queue:
-                continue
+        for key in (key for key in (*over, *suggestions) if key in self._board.queue):
             if current is not None and key == current.key:
-                self._held[key] = suggestion
+                self._held[key] = suggestions.get(key) or shelf.own_suggestion(key)
+            elif key in suggestions:
+                shelf.replace_suggestion(key, suggestions[key])
+                changed.append(key)
             else:
-                self._board.shelf.replace_suggestion(key, suggestion)
+                shelf.restore_suggestion(key)
                 changed.append(key)
         self._board.suggest(changed)
         return tuple(changed)

@@ -89,6 +89,20 @@ class ResultShelf:
         self._units.pop(key, None)
         self._note_change(key, before, after)
 
+    @property
+    def replaced(self) -> tuple[EntryKey, ...]:
+        """Return the units for which another suggestion stands than the analysis's own."""
+        return tuple(self._replaced)
+
+    def restore_suggestion(self, key: EntryKey) -> None:
+        """Let the analysis's own suggestion stand again."""
+        self.replace_suggestion(key, self.own_suggestion(key))
+        del self._replaced[key]
+
+    def own_suggestion(self, key: EntryKey) -> Suggestion:
+        """Return what the analysis itself suggests."""
+        return self._views[key[0]].unit_result(key[1], key[2]).suggestion
+
     def _note_change(self, key: EntryKey, before: LightUnit, after: LightUnit) -> None:
         words = change_in_words(before, after)
         if words:
@@ -129,7 +143,9 @@ class ResultShelf:
         return self._views[path].condition_result(condition, with_envelopes=with_envelopes)
 
     def session_result(self, path: str) -> SessionResult:
-        """Return everything about a session, with the suggestions in force.
+        """Return everything about a session, with the analysis's own suggestions.
+
+        What labels taught is of this review; an export holds what anybody gets from the same file.
 
         Raises
         ------
@@ -138,14 +154,7 @@ class ResultShelf:
         """
         if path not in self._views:
             raise UnitclassError("has no results yet", where=path, remedy="wait for its analysis")
-        result = self._views[path].session_result()
-        return replace(result, conditions=tuple(
-            replace(c, units=tuple(self._with_replaced(path, unit) for unit in c.units))
-            for c in result.conditions))
-
-    def _with_replaced(self, path: str, unit: UnitResult) -> UnitResult:
-        suggestion = self._replaced.get((path, *unit.key))
-        return unit if suggestion is None else replace(unit, suggestion=suggestion)
+        return self._views[path].session_result()
 
     def rates_hz(self, rows: tuple[QueueEntry, ...]) -> NDArray[np.float32]:
         """Return rates by phase, shape (n_rows, n_bins); NaN where nothing was observed."""

@@ -29,7 +29,7 @@ from unitclass.tui.terminal import check_terminal  # noqa: E402
 from unitclass.tui.theme import Theme, background_of_terminal, look_of_terminal  # noqa: E402
 from unitclass.tui.workers import Done, Work  # noqa: E402
 
-LABELS_TO_LEARN = 5
+LABELS_TO_LEARN = 3
 EXISTS = "exists already"
 
 
@@ -104,6 +104,7 @@ class ReviewApp(App[int], inherit_bindings=False):
         if self.desk.library is not None:
             self._review_screen.repaint_soon()
         self._start_analysis()
+        self._learn_what_is_there()
 
     def _leave_on_request(self) -> None:
         """Give the terminal back when the program is asked to end."""
@@ -134,6 +135,15 @@ class ReviewApp(App[int], inherit_bindings=False):
     def labels_changed(self) -> None:
         """Count what was decided; after a few decisions the suggestions are made afresh."""
         self._n_unlearned += 1
+        self._learn()
+
+    def _learn_what_is_there(self) -> None:
+        """Take in labels of an earlier sitting, and new results that labels have not reached."""
+        if self.desk.session.lessons():
+            self._n_unlearned = LABELS_TO_LEARN
+        self._learn()
+
+    def _learn(self) -> None:
         if self._relearn is not None and self._n_unlearned >= LABELS_TO_LEARN and LEARNING not in self._works:
             self._n_unlearned = 0
             self._start(LEARNING, self._relearn, [("labels", (self.desk.session.lessons(),))])
@@ -166,10 +176,13 @@ class ReviewApp(App[int], inherit_bindings=False):
         if message.done is None:
             self._works.pop(message.task, None)
             self._start_analysis()
+            if message.task == ANALYSIS:
+                self._learn_what_is_there()
+            self._learn()
         elif message.task == ANALYSIS:
             self._take_analysis(message.done)
-        elif message.task == LEARNING and not message.done.problem:
-            self.desk.session.update_suggestions(message.done.result)
+        elif message.task == LEARNING:
+            self._take_learned(message.done)
         if message.task == EXPORT:
             self._show_export(message.done)
         for screen in self.screen_stack:
@@ -192,6 +205,12 @@ class ReviewApp(App[int], inherit_bindings=False):
         for screen in self.screen_stack:
             if hasattr(screen, "results_changed"):
                 screen.results_changed(done.name)
+
+    def _take_learned(self, done: Done) -> None:
+        if done.problem:
+            self._review_screen.say(f"suggestions stay as they were: {done.problem}", "warn")
+        else:
+            self.desk.session.update_suggestions(done.result)
 
     def _show_export(self, done: Done | None) -> None:
         from unitclass.tui.screens.finish import FinishScreen
