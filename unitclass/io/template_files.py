@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+import json
 import tomllib
 from pathlib import Path
-from typing import Any
 
-from unitclass.classify.templates import TypeLibrary, family_from_mapping
+from unitclass.classify.templates import Family, TypeLibrary, family_from_mapping
 from unitclass.errors import UsageError
+from unitclass.io.atomic import written_whole
 from unitclass.io.resolver import templates_folder
 
 STANDARD = "standard"
@@ -41,7 +42,7 @@ def read_library(named: str = "") -> TypeLibrary:
     raise UsageError(f"no template file, folder or set called {named!r}", remedy=f"the sets are: {sets}")
 
 
-def read_family(path: Path) -> Any:
+def read_family(path: Path) -> Family:
     """Return the family in one file.
 
     Raises
@@ -64,3 +65,41 @@ def _read_folder(folder: Path) -> TypeLibrary:
         raise UsageError("holds no family files (*.toml)", where=str(folder),
                          remedy="see `unitclass types show` for what one looks like")
     return TypeLibrary(folder.name, tuple(read_family(path) for path in files))
+
+
+def write_family(family: Family, target: str, *, force: bool = False) -> None:
+    """Write one family as a file that a person can read and edit.
+
+    Raises
+    ------
+    TargetError
+        When it exists (without `force`) or cannot be written.
+    """
+    with written_whole(target, force=force) as path:
+        path.write_text(family_text(family), encoding="utf-8")
+
+
+def family_text(family: Family) -> str:
+    """Return a family as TOML."""
+    lines = [f"id = {_quoted(family.id)}", f"also = [{', '.join(map(_quoted, family.also))}]",
+             f"words = {_quoted(family.words)}", f"form = {_quoted(family.form)}",
+             f"sources = [{', '.join(map(_quoted, family.sources))}]"]
+    if family.points:
+        lines += ["points = [  # canonical phase (0-1 inspiration, 1-2 expiration), level as a share of the peak",
+                  *(f"  [{phase:g}, {level:g}]," for phase, level in family.points), "]"]
+    for title, table in (("prior", family.prior), ("membrane", family.membrane), ("ranges", family.ranges)):
+        if table:
+            lines += ["", f"[{title}]", *(f"{_key(name)} = {_value(value)}" for name, value in table.items())]
+    return "\n".join(lines) + "\n"
+
+
+def _quoted(text: str) -> str:
+    return json.dumps(text, ensure_ascii=False)
+
+
+def _key(name: str) -> str:
+    return name if name.replace("-", "").replace("_", "").isalnum() and name.isascii() else _quoted(name)
+
+
+def _value(value: float | tuple[float, float]) -> str:
+    return f"[{value[0]:g}, {value[1]:g}]" if isinstance(value, tuple) else f"{value:g}"
