@@ -5,6 +5,8 @@ from __future__ import annotations
 import argparse
 from typing import TYPE_CHECKING
 
+from unitclass.commands import types_learn
+
 if TYPE_CHECKING:
     from unitclass.classify.templates import Family
 
@@ -13,7 +15,7 @@ BARS = " .:-=+*#%@"  # one character a phase bin: readable in any terminal
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
     """Declare the options."""
-    sub = parser.add_subparsers(dest="what", metavar="list|show|check", required=True)
+    sub = parser.add_subparsers(dest="what", metavar="list|show|check|learn", required=True)
     for name, words in (("list", "all types, a line each"), ("show", "one type in full"),
                         ("check", "whether template files are right")):
         command = sub.add_parser(name, help=words, description=words[0].upper() + words[1:] + ".")
@@ -26,9 +28,14 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
             command.add_argument("--json", action="store_true", help="JSON on stdout")
 
 
+    learn = sub.add_parser("learn", help="a new family from units that belong together",
+                           description="Write a template family made from labelled units, a shape group or units named.")
+    types_learn.add_arguments(learn)
+
+
 def run(args: argparse.Namespace) -> int:
-    """List, show or check."""
-    return {"list": _list, "show": _show, "check": _check}[args.what](args)
+    """List, show, check or learn."""
+    return {"list": _list, "show": _show, "check": _check, "learn": types_learn.run}[args.what](args)
 
 
 def _list(args: argparse.Namespace) -> int:
