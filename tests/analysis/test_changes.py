@@ -27,7 +27,8 @@ def test_each_unit_has_one_step_and_conditions_follow_in_time_not_in_name():
     result = session({"1": ("post-I", "silent"), "2": ("ramp-I", "ramp-I")})
     turned = replace(result, conditions=result.conditions[::-1])
     for one in (result, turned):
-        steps = {c.unit: (c.condition_before, c.type_before, c.condition_after, c.type_after) for c in type_changes(one, {})}
+        steps = {c.unit: (c.condition_before, c.type_before, c.condition_after, c.type_after)
+                 for c in type_changes(one, {})}
         assert steps == {"1": (BEFORE, "post-I", AFTER, "silent"), "2": (BEFORE, "ramp-I", AFTER, "ramp-I")}
 
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import replace
 
+from unitclass.analysis.beats import Beats, beats_of
 from unitclass.analysis.cells import Cell, cells_of, overlap_problem
 from unitclass.analysis.rhythm import ConditionCycles, condition_cycles, conditions_of
 from unitclass.analysis.units import judge_units
@@ -37,7 +38,8 @@ def analyse(recording: Recording, library: TypeLibrary, settings: Settings, *,
     found = [condition_cycles(recording, condition, settings, edits) for condition in conditions_of(recording)]
     _check_any_cycle(recording, found)
     cells = cells_of(recording, settings)
-    judged = tuple(_judged(one, cells, library, settings) for one in found)
+    beats = beats_of(recording)
+    judged = tuple(_judged(one, cells, library, settings, beats) for one in found)
     _check_overlap(recording, judged)
     return _session(recording, judged, library, settings, program_version,
                     notes=tuple(note for cell in cells for note in cell.notes))
@@ -54,7 +56,7 @@ def cycles_only(recording: Recording, library: TypeLibrary, settings: Settings, 
     """
     found = [condition_cycles(recording, condition, settings, edits) for condition in conditions_of(recording)]
     _check_any_cycle(recording, found)
-    judged = tuple(_judged(one, (), library, settings) for one in found)
+    judged = tuple(_judged(one, (), library, settings, ()) for one in found)
     return _session(recording, judged, library, settings, program_version, notes=())
 
 
@@ -83,8 +85,8 @@ def _check_any_cycle(recording: Recording, found: Sequence[ConditionCycles]) -> 
 
 
 def _judged(found: ConditionCycles, cells: Sequence[Cell], library: TypeLibrary,
-            settings: Settings) -> ConditionResult:
-    units = judge_units(found, cells, library, settings)
+            settings: Settings, beats: Sequence[Beats]) -> ConditionResult:
+    units = judge_units(found, cells, library, settings, beats)
     return ConditionResult(
         condition=found.condition, nerve=found.nerve_cycles.cycles.nerve, nerve_cycles=found.nerve_cycles,
         nerve_profiles=found.profiles, regime_probabilities=units.regime.probabilities,

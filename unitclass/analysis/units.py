@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from unitclass.analysis.beats import Beats, beat_flags
 from unitclass.analysis.cells import Cell, train_digest
 from unitclass.analysis.flags import unit_flags
 from unitclass.analysis.potential import mean_potential, membrane_levels
@@ -44,17 +45,18 @@ class _Seen:
     row: CountRow
     vm: VmProfile | None
     levels: MembraneLevels | None
+    follows: tuple[str, ...]
 
 
 def judge_units(found: ConditionCycles, cells: Sequence[Cell], library: TypeLibrary,
-                settings: Settings) -> JudgedUnits:
+                settings: Settings, beats: Sequence[Beats] = ()) -> JudgedUnits:
     """Return the result of every cell in one condition, in the order given."""
     if not cells:
         nobody = np.zeros((0, len(library.families) + 1))
         return JudgedUnits((), judge_regime(found.nerve_cycles.rhythm, nobody, library, given=settings.classify.regime,
                                             other_prior=settings.classify.other_prior))
     cycles = found.brainstem_cycles(settings)
-    seen = _seen(cells, cycles, settings)
+    seen = _seen(cells, cycles, settings, beats)
     drawn = draw_families(library, _timing(cycles), n_bins=settings.phase.n_bins,
                           n_draws=settings.classify.n_draws)
     table = stacked([one.row for one in seen], settings.phase.n_bins)
@@ -66,20 +68,23 @@ def judge_units(found: ConditionCycles, cells: Sequence[Cell], library: TypeLibr
     return JudgedUnits(results, suggested.regime)
 
 
-def _seen(cells: Sequence[Cell], cycles: Cycles, settings: Settings) -> list[_Seen]:
+def _seen(cells: Sequence[Cell], cycles: Cycles, settings: Settings, beats: Sequence[Beats]) -> list[_Seen]:
     digests: list[str] = []
+    follows: list[tuple[str, ...]] = []
 
     def trains() -> Iterator[Train]:
         for cell in cells:
             times_s = cell.train.read()
             digests.append(train_digest(times_s))
+            follows.append(beat_flags(times_s, beats, cycles))
             yield times_s, cell.observed_s
 
     profiles = unit_profiles(trains(), cycles, settings=settings, seed=SEED)
     seen = []
     for i, (cell, profile) in enumerate(zip(cells, profiles, strict=True)):
         potential = mean_potential(cell, cycles, settings)
-        seen.append(_Seen(cell, digests[i], profile, _row(profile), potential, membrane_levels(cell, potential, cycles)))
+        seen.append(_Seen(cell, digests[i], profile, _row(profile), potential, membrane_levels(cell, potential, cycles),
+                          follows[i]))
     return seen
 
 
@@ -106,5 +111,5 @@ def _result(one: _Seen, found: ConditionCycles, suggestion: Suggestion, q_value:
         unit=one.cell.id, condition=found.condition.name, digest=one.digest,
         n_cycles=profile.histogram.n_cycles, n_spikes=profile.histogram.n_spikes, histogram=profile.histogram,
         locked=profile.locked, modulation=profile.modulation, features=profile.features, suggestion=suggestion,
-        raster=profile.raster, flags=unit_flags(profile, suggestion, one.cell, settings), q_value=q_value,
+        raster=profile.raster, flags=(*unit_flags(profile, suggestion, one.cell, settings), *one.follows), q_value=q_value,
         columns=one.cell.columns, vm=one.vm, vm_spikes=one.cell.vm_spikes)

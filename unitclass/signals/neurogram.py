@@ -97,8 +97,19 @@ def activity(signal: Signal, settings: NerveSettings, *, start_s: float, stop_s:
         return _checked(_rectified(signal, settings, start_s, stop_s))
     from unitclass.signals.unlag import without_lag
 
-    made = _checked(_stored(signal, settings, start_s, stop_s))
+    made = _checked(_stored(signal, start_s, stop_s))
     return without_lag(made, signal.description) if signal.role not in SLOW_ROLES else made
+
+
+def as_recorded(signal: Signal, *, start_s: float, stop_s: float) -> Activity:
+    """Return a stretch as it was recorded, averaged down to about 500 Hz, neither filtered nor rectified.
+
+    Raises
+    ------
+    SignalError
+        When it holds no sample, or none but NaN, or a constant.
+    """
+    return _checked(_stored(signal, start_s, stop_s))
 
 
 def displayed(fine: Activity, settings: NerveSettings, is_integrated: bool) -> Envelope:
@@ -207,7 +218,7 @@ def _held(values: FloatArray, missing: np.ndarray, last: float) -> FloatArray:
 
 # ------------------------------------------------------------------------------ integrated
 
-def _stored(signal: Signal, settings: NerveSettings, start_s: float, stop_s: float) -> Activity:
+def _stored(signal: Signal, start_s: float, stop_s: float) -> Activity:
     block = max(1, round(signal.rate_hz / GRID_HZ))
     origin_s, parts = start_s, []
     for frame in frames(signal, start_s=start_s, stop_s=stop_s, multiple=block):
