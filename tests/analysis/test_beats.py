@@ -42,7 +42,7 @@ def with_ecg(recording: Recording, heart: np.ndarray, rng: np.random.Generator) 
 
 def test_the_cell_that_follows_the_heart_is_flagged_with_channel_and_rate(judged):
     flag, = [flag for flag in judged["vascular"].flags if "heart" in flag]
-    assert flag.startswith("follows the heart (ECG, 5.3 a second)")
+    assert flag.startswith("follows the heart (ECG, 5.")
     assert judged["vascular"].suggestion.type in ("NRM", "tonic")
 
 

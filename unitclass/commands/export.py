@@ -71,17 +71,18 @@ def write_copy(outcome: Outcome, labels: Labels, args: argparse.Namespace, writt
     """
     from pathlib import Path
 
-    from unitclass.commands.options import settings_from
+    from unitclass.batch import read_planned
+    from unitclass.commands.options import plan_from
     from unitclass.errors import TargetError
     from unitclass.io.nwb_write import labelled_name, write_labelled
 
     assert outcome.result is not None
-    assert outcome.recording is not None
     target = str(Path(args.out) / labelled_name(outcome.path))
     if target in written:
         raise TargetError(f"has the name of {written[target]}, exported just now", where=outcome.path,
                           remedy="export it into another folder")
-    write_labelled(outcome.path, target, outcome.recording, outcome.result, labels, only=args.only,
-                   link_raw=args.link_raw, force=args.force, settings=settings_from(args))
+    plan = plan_from(args)
+    write_labelled(outcome.path, target, read_planned(outcome.path, plan), outcome.result, labels, only=args.only,
+                   link_raw=args.link_raw, force=args.force, settings=plan.settings)
     written[target] = outcome.path
     return target

@@ -37,6 +37,9 @@ def add_run_options(parser: argparse.ArgumentParser) -> None:
     """Add how to run and report."""
     group = parser.add_argument_group("running")
     group.add_argument("--workers", type=int, default=1, metavar="N", help="files worked on at once")
+    group.add_argument("--scheduler", default="", metavar="ADDRESS",
+                       help="work on a Dask cluster, e.g. tcp://host:8786, whose workers see the same files")
+    group.add_argument("--fresh", action="store_true", help="analyse again even what is known from an earlier run")
     group.add_argument("--json", action="store_true", help="JSON on stdout")
     group.add_argument("--quiet", action="store_true", help="no progress, no notes")
     group.add_argument("--force", action="store_true", help="replace files that exist")
@@ -61,4 +64,12 @@ def plan_from(args: argparse.Namespace) -> Plan:
     store = existing_store(args.paths, args.store)
     return Plan(settings=settings_from(args), library=read_library(args.templates), nerve=args.nerve,
                 condition_column=args.condition_column, only=args.only, store=str(store or ""),
-                condition_table=read_condition_table(args.conditions) if args.conditions else None)
+                condition_table=read_condition_table(args.conditions) if args.conditions else None,
+                condition_text=condition_text(args), is_debug=getattr(args, "debug", False))
+
+
+def condition_text(args: argparse.Namespace) -> str:
+    """Return the table of conditions as it stands in its file; empty when there is none."""
+    from pathlib import Path
+
+    return Path(args.conditions).read_text("utf-8-sig") if args.conditions else ""

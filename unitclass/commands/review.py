@@ -73,7 +73,7 @@ def _pictures(args: argparse.Namespace) -> int:
     import tempfile
     from pathlib import Path
 
-    from unitclass.batch import analyse_files
+    from unitclass.batch import analyse_file
     from unitclass.commands.options import plan_from
     from unitclass.errors import FileError
     from unitclass.io.decisions import DecisionStore
@@ -85,7 +85,7 @@ def _pictures(args: argparse.Namespace) -> int:
     plan = plan_from(args)
     with tempfile.TemporaryDirectory() as folder, DecisionStore(Path(folder) / "store.sqlite") as store:
         session = ReviewSession(store, args.reviewer or "reviewer", is_blind=args.blind)
-        for outcome in analyse_files(find_files(args.paths), plan):
+        for outcome in (analyse_file(path, plan) for path in find_files(args.paths)):
             if outcome.result is None:
                 raise FileError(outcome.problem)
             session.add_result(outcome.result)
@@ -115,12 +115,10 @@ class _Work:
 
 def cache_key(args: argparse.Namespace, settings_digest: str, template_digest: str) -> CacheKey:
     """Return what besides the file shapes its results."""
-    from pathlib import Path
+    from unitclass.commands.options import condition_text
+    from unitclass.io.result_cache import CacheKey, cache_options
 
-    from unitclass.io.result_cache import CacheKey
-
-    table = Path(args.conditions).read_text("utf-8-sig") if args.conditions else ""
-    options = repr((args.nerve, args.condition_column, args.only, table))
+    options = cache_options(args.nerve, args.condition_column, args.only, condition_text(args))
     return CacheKey(settings_digest, template_digest, options)
 
 
@@ -134,10 +132,9 @@ def analysed(args: argparse.Namespace, path: str) -> SessionResult | None:
     FileError
         When the file cannot be used.
     """
-    from unitclass.batch import analyse_file
+    from unitclass.batch import analyse_file, edits_digest
     from unitclass.commands.options import plan_from
     from unitclass.errors import FileError
-    from unitclass.io.decisions import DecisionStore
     from unitclass.io.result_cache import FileStamp, ResultCache
     from unitclass.io.store_place import cache_path
 
@@ -150,10 +147,8 @@ def analysed(args: argparse.Namespace, path: str) -> SessionResult | None:
     if outcome.result is None:
         raise FileError(outcome.problem)
     result = outcome.result
-    with DecisionStore(args.store, is_read_only=True) as store:
-        edits = store.edits_digest(result.identifier, result.object_id)
-    key = cache_key(args, plan.settings.digest(), plan.library.digest())
-    is_kept = ResultCache(cache_path()).put(result, stamp, key, edits_digest=edits)
+    edits = edits_digest(plan, result.identifier, result.object_id)
+    is_kept = ResultCache(cache_path()).put(result, stamp, plan.key, edits_digest=edits)
     return None if is_kept else result
 
 

@@ -13,18 +13,20 @@ from unitclass.errors import NoUsableFileError
 
 if TYPE_CHECKING:
     from unitclass.batch import Outcome
+    from unitclass.io.result_cache import ResultCache
     from unitclass.io.table_files import Cell
 
 
 def run_files(args: argparse.Namespace, *, cycles_only: bool = False) -> Iterator[Outcome]:
     """Yield the outcome of every file named; failures are said on stderr as they come."""
-    from unitclass.batch import analyse_files
+    from unitclass.batch import analyse_files, runner_for
     from unitclass.io.paths import find_files
 
     check_table(args)
     paths, plan = find_files(args.paths), replace(plan_from(args), cycles_only=cycles_only)
-    with progress(len(paths), quiet=args.quiet) as step:
-        for outcome in analyse_files(paths, plan, workers=args.workers):
+    runner = runner_for(len(paths), workers=args.workers, scheduler=args.scheduler)
+    with progress(len(paths), quiet=args.quiet) as step, runner as who:
+        for outcome in analyse_files(paths, plan, who, known_results(args)):
             step(outcome.path)
             if outcome.problem:
                 say(f"unitclass: {outcome.problem}")
@@ -32,6 +34,16 @@ def run_files(args: argparse.Namespace, *, cycles_only: bool = False) -> Iterato
                 for note in outcome.result.notes:
                     say(f"{outcome.path}: {note}", quiet=args.quiet)
             yield outcome
+
+
+def known_results(args: argparse.Namespace) -> ResultCache | None:
+    """Return the results of earlier runs, unless they are not wanted."""
+    if args.fresh:
+        return None
+    from unitclass.io.result_cache import ResultCache
+    from unitclass.io.store_place import cache_path
+
+    return ResultCache(cache_path())
 
 
 def check_table(args: argparse.Namespace) -> None:

@@ -6,12 +6,14 @@ the results; its light list is read at once, each unit when it is asked for.
 
 from __future__ import annotations
 
+import hashlib
 import os
 import sqlite3
 import threading
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from datetime import UTC, datetime
+from functools import lru_cache
 from itertools import islice
 from pathlib import Path
 
@@ -25,6 +27,15 @@ from unitclass.io.store_text import storable
 from unitclass.records import SessionResult
 
 _PIECES_AT_ONCE = 32
+
+
+@lru_cache(maxsize=1)
+def program_stamp() -> str:
+    """Return what tells apart this program from one whose code has been changed since."""
+    package = Path(__file__).parent.parent
+    told = sorted((str(file.relative_to(package)), (found := file.stat()).st_size, found.st_mtime_ns)
+                  for file in package.rglob("*.py"))
+    return hashlib.sha256(repr(told).encode()).hexdigest()[:12]
 
 
 @dataclass(frozen=True)
@@ -52,7 +63,13 @@ class CacheKey:
     settings_digest: str
     template_digest: str
     options: str = ""
-    program: str = f"{__version__} {layout_digest()}"
+    program: str = field(default_factory=lambda: f"{__version__} {layout_digest()} {program_stamp()}")
+
+
+def cache_options(nerve: str, condition_column: str, only: str, condition_text: str, *,
+                  is_cycles_only: bool = False) -> str:
+    """Return the text for `CacheKey.options`: the command's words, and the table of conditions in full."""
+    return repr((nerve, condition_column, only, condition_text, *(("cycles",) if is_cycles_only else ())))
 
 
 class ResultCache:

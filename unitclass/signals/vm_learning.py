@@ -73,9 +73,12 @@ def _contrast(events: Events) -> float:
 
 
 def _matched_detector(sample: Sample, detector: Detector, events: Events) -> Detector:
+    centres = _centres(sample, detector, events)
+    if not any(at.size for at in centres):
+        return detector
     width = float(np.clip(np.median(events.half_width_ms), 0.4, 4.0))
     bump = BumpFilter(detector.grid, float(np.clip(1.2 * width, 0.5, 4.0)))
-    taps, before = matched_taps(sample, detector.grid, _centres(sample, detector, events), width)
+    taps, before = matched_taps(sample, detector.grid, centres, width)
     bare = replace(detector, bump=bump, kernel=Kernel(taps, before, 0.0))
     scores = [bare.score(c) for c in sample.coarse]
     noise = max(quiet_noise_sd(np.concatenate(scores), 2 * taps.size), LEAST_NOISE_MV)
