@@ -21,7 +21,12 @@ def main(argv: Sequence[str] | None = None) -> int:
     """
     from unitclass.commands.parser import build_parser
 
-    args = build_parser().parse_args(argv)
+    parser = build_parser()
+    if "_ARGCOMPLETE" in os.environ:  # a shell asks what could stand here; see commands.completion
+        import argcomplete
+
+        argcomplete.autocomplete(parser)
+    args = parser.parse_args(argv)
     try:
         code: int = args.run(args)
         sys.stdout.flush()

@@ -83,11 +83,15 @@ def test_a_scheduler_that_goes_away_is_one_line_and_what_was_finished_is_kept(cl
     from unitclass.io.result_cache import ResultCache
 
     cache, done = ResultCache(tmp_path / "results.sqlite"), []
-    with pytest.raises(SchedulerLostError, match="run the same command again"), runner_for(
-            len(archive), scheduler=cluster.address) as runner:
-        for outcome in analyse_files(archive, PLAN, runner, cache):
-            done.append(outcome.path)
-            cluster.end()
+
+    def until_it_is_gone() -> None:
+        with runner_for(len(archive), scheduler=cluster.address) as runner:
+            for outcome in analyse_files(archive, PLAN, runner, cache):
+                done.append(outcome.path)
+                cluster.end()
+
+    with pytest.raises(SchedulerLostError, match="run the same command again"):
+        until_it_is_gone()
     assert done
     assert all(cache.find(path, PLAN.key) for path in done)
 

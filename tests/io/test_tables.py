@@ -17,6 +17,7 @@ CLASSIFY = ("file, session, animal, unit, condition, nerve, regime, regime_proba
             "suggested_type, probability, second_type, second_probability, type, reviewer, reviewed_at, "
             "shape_group, eta_squared, eta_squared_p, rayleigh_p, q_value, mean_phase, onset_phase, peak_phase, "
             "offset_phase, rate_i_hz, rate_e_hz, lead_ms, participation, flags, reasons")
+OURS = "rule_of_thumb, condition_before, type_before, version, settings_digest, template_digest"
 CYCLES = ("file, condition, nerve, kind, onset_s, offset_s, end_s, ti_s, te_s, ttot_s, duty, peak, area, "
           "post_i_end_s, late_e, accepted, reason")
 
@@ -27,7 +28,7 @@ def read_csv(text):
 
 def test_classify_columns_are_the_contract_then_the_carried_ones():
     rows = classify_rows(session_result(), {})
-    assert ", ".join(rows[0]) == f"{CLASSIFY}, region"
+    assert ", ".join(rows[0]) == f"{CLASSIFY}, {OURS}, region"
     assert rows[0]["region"] == "rostral column"
 
 
@@ -65,12 +66,6 @@ def test_type_is_what_a_person_decided_and_empty_in_disagreement():
     assert rows["3"]["reviewed_at"] == "2031-03-04T10:20:30+00:00"
     assert (rows["12"]["type"], rows["12"]["flags"]) == ("", "disagreement")
     assert (rows["20"]["type"], rows["20"]["reviewer"]) == ("", "")
-
-
-def test_a_laboratorys_words_replace_the_ids():
-    result = session_result(conditions=("baseline",))
-    row = classify_rows(result, labels_for(result), words={"early-I": "I-Dec"})[0]
-    assert (row["suggested_type"], row["type"]) == ("I-Dec", "I-Dec")
 
 
 def test_a_carried_column_with_a_name_of_the_table_does_not_hide_it():

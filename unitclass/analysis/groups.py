@@ -2,37 +2,38 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import replace
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
 
 import numpy as np
 
 from unitclass.classify.clustering import ShapeGroups, shape_groups
-from unitclass.records import SessionResult, UnitResult
+from unitclass.records import FloatArray, SessionResult
 
 
-def grouped(results: Sequence[SessionResult]) -> tuple[tuple[SessionResult, ...], ShapeGroups]:
-    """Return the sessions with the shape group of each unit and condition, and the groups.
+@dataclass(frozen=True)
+class ShapedRow:
+    """The shape of one unit in one condition, and the row of a table that it belongs to."""
 
-    Units that are silent or undetermined belong to no group.
+    row: int
+    counts: FloatArray
+    exposure_s: FloatArray
+    type: str
+
+
+def shaped_rows(result: SessionResult, *, first: int = 0) -> Iterator[ShapedRow]:
+    """Yield the units of a session that have a shape: silent and undetermined ones have none.
+
+    `first` is the row of the session's first unit.
     """
-    chosen = [(i, unit) for i, result in enumerate(results) for _, unit in result.units()
-              if unit.suggestion.probabilities]
-    groups = _groups([unit for _, unit in chosen])
-    names = {(i, unit.key): name for (i, unit), name in zip(chosen, groups.names, strict=True)}
-    return tuple(_named(i, result, names) for i, result in enumerate(results)), groups
+    for i, (_, unit) in enumerate(result.units()):
+        if unit.suggestion.probabilities:
+            yield ShapedRow(first + i, unit.histogram.counts, unit.histogram.exposure_s, unit.suggestion.type)
 
 
-def _groups(units: Sequence[UnitResult]) -> ShapeGroups:
-    if not units:
+def groups_of(shapes: Sequence[ShapedRow]) -> ShapeGroups:
+    """Return the shape groups; their names are in the order of `shapes`."""
+    if not shapes:
         return shape_groups(np.zeros((0, 1)), np.zeros((0, 1)), ())
-    return shape_groups(np.stack([unit.histogram.counts for unit in units]),
-                        np.stack([unit.histogram.exposure_s for unit in units]),
-                        [unit.suggestion.type for unit in units])
-
-
-def _named(i: int, result: SessionResult, names: dict[tuple[int, tuple[str, str]], str]) -> SessionResult:
-    conditions = tuple(
-        replace(c, units=tuple(replace(u, shape_group=names.get((i, u.key), "")) for u in c.units))
-        for c in result.conditions)
-    return replace(result, conditions=conditions)
+    return shape_groups(np.stack([s.counts for s in shapes]), np.stack([s.exposure_s for s in shapes]),
+                        [s.type for s in shapes])

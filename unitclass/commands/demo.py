@@ -42,7 +42,7 @@ def run(args: argparse.Namespace) -> int:
         print_units(outcome.result, labels)
         job.table = str(table)
         write_rows(classify_rows(outcome.result, labels), job, columns=CLASSIFY_COLUMNS)
-        target = write_copy(outcome, labels, job, {})
+        target = write_copy(outcome.result, labels, job, {})
     _say_what_next(session, table, target)
     return 0
 

@@ -5,11 +5,12 @@ from __future__ import annotations
 import argparse
 from typing import TYPE_CHECKING
 
-from unitclass.commands.options import add_paths, add_run_options, add_session_options
+from unitclass.commands.options import add_crosswalk, add_paths, add_run_options, add_session_options
 
 if TYPE_CHECKING:
-    from unitclass.batch import Outcome
-    from unitclass.records import Labels
+    from unitclass.records import Labels, SessionResult
+
+CHANGES = "changes.csv"  # written when some session has several conditions
 
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
@@ -17,48 +18,60 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     add_paths(parser)
     parser.add_argument("--out", required=True, metavar="DIR", help="folder for the labelled files and tables")
     parser.add_argument("--link-raw", action="store_true", help="link to the source's raw data instead of copying it")
+    add_crosswalk(parser)
     add_session_options(parser)
     add_run_options(parser)
 
 
 def run(args: argparse.Namespace) -> int:
     """Classify, write a labelled copy of every session, and the two tables."""
-    from unitclass.commands.labels import labels_of
+    from unitclass.analysis.changes import type_changes
+    from unitclass.commands.labels import in_words
     from unitclass.commands.progress import say
     from unitclass.commands.runs import exit_code, run_files
     from unitclass.errors import UnitclassError
     from unitclass.io.atomic import check_target, made_folder
     from unitclass.io.table_files import write_table
-    from unitclass.io.tables import CLASSIFY_COLUMNS, CYCLE_COLUMNS, classify_rows, cycle_rows
+    from unitclass.io.tables import (
+        CHANGE_COLUMNS,
+        CLASSIFY_COLUMNS,
+        CYCLE_COLUMNS,
+        change_rows,
+        classify_rows,
+        cycle_rows,
+    )
 
     folder = made_folder(args.out)
-    tables = {"units.csv": CLASSIFY_COLUMNS, "cycles.csv": CYCLE_COLUMNS}
+    tables = {"units.csv": CLASSIFY_COLUMNS, "cycles.csv": CYCLE_COLUMNS, CHANGES: CHANGE_COLUMNS}
     for name in tables:
         check_target(str(folder / name), force=args.force)
-    units, cycles, failed = [], [], 0
+    units, cycles, changes, failed = [], [], [], 0
     written: dict[str, str] = {}
     for outcome in run_files(args):
         if outcome.result is None:
             failed += 1
             continue
-        labels = labels_of(outcome.result, args)
+        result, labels = in_words(outcome.result, args)
         try:
-            target = write_copy(outcome, labels, args, written)
+            target = write_copy(result, labels, args, written)
         except UnitclassError as error:
             failed += 1
             say(f"unitclass: {error}")
             continue
-        units += classify_rows(outcome.result, labels)
-        cycles += cycle_rows(outcome.result)
+        units += classify_rows(result, labels)
+        cycles += cycle_rows(result)
+        changes += change_rows(type_changes(result, labels))
         print(target, flush=True)
     if written:
-        for (name, columns), rows in zip(tables.items(), (units, cycles), strict=True):
+        for (name, columns), rows in zip(tables.items(), (units, cycles, changes), strict=True):
+            if name == CHANGES and not rows:
+                continue
             write_table(str(folder / name), rows, force=args.force, columns=columns)
             print(folder / name)
     return exit_code(failed, len(written))
 
 
-def write_copy(outcome: Outcome, labels: Labels, args: argparse.Namespace, written: dict[str, str]) -> str:
+def write_copy(result: SessionResult, labels: Labels, args: argparse.Namespace, written: dict[str, str]) -> str:
     """Write one labelled copy and return its path.
 
     `written`, target to source, holds the copies of this run and gains the new one.
@@ -76,13 +89,12 @@ def write_copy(outcome: Outcome, labels: Labels, args: argparse.Namespace, writt
     from unitclass.errors import TargetError
     from unitclass.io.nwb_write import labelled_name, write_labelled
 
-    assert outcome.result is not None
-    target = str(Path(args.out) / labelled_name(outcome.path))
+    target = str(Path(args.out) / labelled_name(result.path))
     if target in written:
-        raise TargetError(f"has the name of {written[target]}, exported just now", where=outcome.path,
+        raise TargetError(f"has the name of {written[target]}, exported just now", where=result.path,
                           remedy="export it into another folder")
     plan = plan_from(args)
-    write_labelled(outcome.path, target, read_planned(outcome.path, plan), outcome.result, labels, only=args.only,
+    write_labelled(result.path, target, read_planned(result.path, plan), result, labels, only=args.only,
                    link_raw=args.link_raw, force=args.force, settings=plan.settings)
-    written[target] = outcome.path
+    written[target] = result.path
     return target

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 import argparse
+from collections.abc import Mapping
+from functools import lru_cache
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
@@ -21,3 +23,25 @@ def labels_of(result: SessionResult, args: argparse.Namespace) -> Labels:
     digests = {unit.unit: unit.digest for _, unit in result.units()}
     with DecisionStore(file, is_read_only=True) as store:
         return store.labels_for(result.identifier, result.object_id, digests)
+
+
+def in_words(result: SessionResult, args: argparse.Namespace) -> tuple[SessionResult, Labels]:
+    """Return a session's results and labels in the words that outputs are to use."""
+    labels, words = labels_of(result, args), _words(args.crosswalk, args.templates)
+    if not words:
+        return result, labels
+    from unitclass.classify.crosswalk import in_other_words, labels_in_other_words
+
+    return in_other_words(result, words), labels_in_other_words(labels, words)
+
+
+@lru_cache(maxsize=1)
+def _words(crosswalk: str, templates: str) -> Mapping[str, str]:
+    if not crosswalk:
+        return {}
+    from unitclass.io.crosswalk_file import read_crosswalk
+    from unitclass.io.template_files import read_library
+    from unitclass.records import OTHER, SILENT, UNDETERMINED
+
+    known = [family.id for family in read_library(templates).families]
+    return read_crosswalk(crosswalk, (*known, OTHER, SILENT, UNDETERMINED))

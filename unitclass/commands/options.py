@@ -45,6 +45,12 @@ def add_run_options(parser: argparse.ArgumentParser) -> None:
     group.add_argument("--force", action="store_true", help="replace files that exist")
 
 
+def add_crosswalk(parser: argparse.ArgumentParser) -> None:
+    """Add the other laboratory's words."""
+    parser.add_argument("--crosswalk", default="", metavar="FILE.csv",
+                        help="write types in another laboratory's words: columns type, word")
+
+
 def settings_from(args: argparse.Namespace) -> Settings:
     """Return the settings in force, the command line's own words laid over the file's."""
     from unitclass.io.settings_file import find_settings

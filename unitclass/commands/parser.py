@@ -20,6 +20,7 @@ COMMANDS: tuple[tuple[str, str], ...] = (
     ("agreement", "reviewers compared"),
     ("types", "the firing types and the template families behind them"),
     ("simulate", "demo sessions with known answers"),
+    ("completion", "a script that completes commands in bash, zsh or fish"),
     ("settings", "every tunable number in force, with unit, range, meaning and source"),
 )
 

@@ -46,15 +46,15 @@ def known_results(args: argparse.Namespace) -> ResultCache | None:
     return ResultCache(cache_path())
 
 
-def check_table(args: argparse.Namespace) -> None:
-    """Refuse a table that exists, or is of no known kind, before any long work."""
+def check_table(args: argparse.Namespace, *more: str) -> None:
+    """Refuse tables that exist, or are of no known kind, before any long work."""
     from unitclass.io.atomic import check_target
     from unitclass.io.table_files import table_form
 
-    table = getattr(args, "table", "")
-    if table not in ("", "-"):
-        table_form(table)
-        check_target(table, force=args.force)
+    for table in (getattr(args, "table", ""), *more):
+        if table not in ("", "-"):
+            table_form(table)
+            check_target(table, force=args.force)
 
 
 def exit_code(n_failed: int, n_done: int) -> int:
@@ -72,13 +72,17 @@ def exit_code(n_failed: int, n_done: int) -> int:
 
 def write_rows(rows: Sequence[Mapping[str, Cell]], args: argparse.Namespace, *, columns: Sequence[str]) -> None:
     """Write the table named on the command line; with --json, print JSON when none is named."""
+    if args.table:
+        write_table_said(args.table, rows, args, columns=columns)
+    if args.json and args.table != "-":
+        write_table_said("-", rows, args, columns=columns)
+
+
+def write_table_said(table: str, rows: Sequence[Mapping[str, Cell]], args: argparse.Namespace, *,
+                     columns: Sequence[str]) -> None:
+    """Write a table to a file, or to stdout ("-") as CSV or, with --json, as JSON."""
     from unitclass.io.table_files import write_table
 
-    if args.table:
-        form = "json" if args.json and args.table == "-" else ""
-        write_table(args.table, rows, force=args.force, columns=columns, form=form)
-        say(f"wrote {args.table}", quiet=args.quiet or args.table == "-")
-    if args.json and args.table != "-":
-        write_table("-", rows, columns=columns, form="json")
-
-
+    form = "json" if args.json and table == "-" else ""
+    write_table(table, rows, force=args.force, columns=columns, form=form)
+    say(f"wrote {table}", quiet=args.quiet or table == "-")

@@ -10,6 +10,7 @@ from unitclass.commands.options import add_paths, add_run_options, add_session_o
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
+    from unitclass.analysis.groups import ShapedRow
     from unitclass.records import Labels, SessionResult, UnitResult
 
 
@@ -61,21 +62,31 @@ def run(args: argparse.Namespace) -> int:
 def _chosen(results: Sequence[SessionResult], labels: Sequence[Labels],
             args: argparse.Namespace) -> tuple[list[UnitResult], list[str]]:
     """Return the units to learn from, and the rhythm in which each was recorded."""
-    if args.group:
-        from unitclass.analysis.groups import grouped
-
-        results = grouped(results)[0]
-    ids, wanted = set(args.units.split(",")) - {""}, args.labelled or args.type
-    units, regimes = [], []
+    wanted = _in_group(results, args.group) if args.group else None
+    ids, label = set(args.units.split(",")) - {""}, args.labelled or args.type
+    units, regimes, row = [], [], 0
     for result, named in zip(results, labels, strict=True):
         for condition, unit in result.units():
-            label = named.get(unit.key)
-            is_chosen = (unit.shape_group == args.group if args.group else unit.unit in ids if ids
-                         else label is not None and label.type == wanted)
+            given = named.get(unit.key)
+            is_chosen = (row in wanted if wanted is not None else unit.unit in ids if ids
+                         else given is not None and given.type == label)
+            row += 1
             if is_chosen and unit.n_spikes:
                 units.append(unit)
                 regimes.append(condition.regime)
     return units, regimes
+
+
+def _in_group(results: Sequence[SessionResult], name: str) -> set[int]:
+    """Return which rows of all results together are in a shape group."""
+    from unitclass.analysis.groups import groups_of, shaped_rows
+
+    shapes: list[ShapedRow] = []
+    first = 0
+    for result in results:
+        shapes += shaped_rows(result, first=first)
+        first += sum(1 for _ in result.units())
+    return {shape.row for shape, group in zip(shapes, groups_of(shapes).names, strict=True) if group == name}
 
 
 def _said(args: argparse.Namespace) -> str:

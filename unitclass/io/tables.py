@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Iterable, Mapping, Sequence
 
+from unitclass.analysis.changes import TypeChange, type_changes
 from unitclass.io.safe_text import safe_text
 from unitclass.io.table_files import Cell, write_table
 from unitclass.records import (
@@ -17,7 +18,8 @@ from unitclass.records import (
     UnitResult,
 )
 
-__all__ = ["CLASSIFY_COLUMNS", "CYCLE_COLUMNS", "classify_rows", "cycle_rows", "write_table"]
+__all__ = ["CHANGE_COLUMNS", "CLASSIFY_COLUMNS", "CYCLE_COLUMNS", "change_rows", "classify_rows", "cycle_rows",
+           "write_table"]
 
 Row = dict[str, Cell]
 
@@ -26,20 +28,23 @@ CLASSIFY_COLUMNS = (
     "n_spikes", "suggested_type", "probability", "second_type", "second_probability", "type", "reviewer",
     "reviewed_at", "shape_group", "eta_squared", "eta_squared_p", "rayleigh_p", "q_value", "mean_phase",
     "onset_phase", "peak_phase", "offset_phase", "rate_i_hz", "rate_e_hz", "lead_ms", "participation",
-    "flags", "reasons")
+    "flags", "reasons", "rule_of_thumb", "condition_before", "type_before", "version", "settings_digest",
+    "template_digest")
+
+CHANGE_COLUMNS = (
+    "file", "session", "animal", "unit", "condition_before", "condition_after", "type_before", "type_after",
+    "probability_before", "probability_after")
 
 CYCLE_COLUMNS = (
     "file", "condition", "nerve", "kind", "onset_s", "offset_s", "end_s", "ti_s", "te_s", "ttot_s", "duty",
     "peak", "area", "post_i_end_s", "late_e", "accepted", "reason")
 
 UNDECIDED = Label(type="", reviewer="", decided_at="", how="")
-_NO_WORDS: Mapping[str, str] = {}
 
 
 # --------------------------------------------------------------------------------- rows
 
-def classify_rows(result: SessionResult, labels: Labels, *,
-                  words: Mapping[str, str] | None = None) -> list[Row]:
+def classify_rows(result: SessionResult, labels: Labels) -> list[Row]:
     """Return one row per unit and condition: CLASSIFY_COLUMNS, then the columns carried along.
 
     Parameters
@@ -48,8 +53,6 @@ def classify_rows(result: SessionResult, labels: Labels, *,
         What the method made of one recording.
     labels : Mapping
         (unit, condition) to the standing label; units without one are undecided.
-    words : Mapping, optional
-        Type id to a laboratory's own word for it.
 
     Returns
     -------
@@ -58,9 +61,17 @@ def classify_rows(result: SessionResult, labels: Labels, *,
         CLASSIFY_COLUMNS is called "NAME (file)".
     """
     carried = carried_names(result)
-    return [_classify_row(result, condition, unit, labels.get(unit.key, UNDECIDED), words or _NO_WORDS)
+    before = {(c.unit, c.condition_after): (c.condition_before, c.type_before) for c in type_changes(result, labels)}
+    return [_classify_row(result, condition, unit, labels.get(unit.key, UNDECIDED), before.get(unit.key, ("", "")))
             | {shown: safe_text(unit.columns.get(name, "")) for name, shown in carried.items()}
             for condition, unit in result.units()]
+
+
+def change_rows(changes: Iterable[TypeChange]) -> list[Row]:
+    """Return one row per unit and step from a condition to the next: CHANGE_COLUMNS."""
+    return [_row(CHANGE_COLUMNS, (
+        c.file, c.session, c.animal, c.unit, c.condition_before, c.condition_after, c.type_before, c.type_after,
+        number(c.probability_before), number(c.probability_after))) for c in changes]
 
 
 def cycle_rows(result: SessionResult) -> list[Row]:
@@ -81,23 +92,23 @@ def carried_names(result: SessionResult) -> dict[str, str]:
 
 
 def _classify_row(result: SessionResult, condition: ConditionResult, unit: UnitResult, label: Label,
-                  words: Mapping[str, str]) -> Row:
+                  before: tuple[str, str]) -> Row:
     suggestion, features = unit.suggestion, unit.features
     second_type, second = next(((t, p) for t, p in suggestion.ranked if t != suggestion.type), ("", math.nan))
     return _row(CLASSIFY_COLUMNS, (
         result.path, result.session, result.animal, unit.unit, unit.condition, condition.nerve,
         condition.regime, number(condition.regime_probabilities.get(condition.regime, math.nan)),
         unit.n_cycles, unit.n_spikes,
-        words.get(suggestion.type, suggestion.type), number(suggestion.probability),
-        words.get(second_type, second_type), number(second),
-        words.get(label.type, label.type), label.reviewer, label.decided_at,
+        suggestion.type, number(suggestion.probability), second_type, number(second),
+        label.type, label.reviewer, label.decided_at,
         unit.shape_group,
         number(unit.modulation.eta_squared), number(unit.modulation.eta_squared_p),
         number(unit.modulation.rayleigh_p), number(unit.q_value), number(unit.modulation.mean_phase),
         number(features.onset_phase), number(features.peak_phase), number(features.offset_phase),
         number(features.rate_i_hz), number(features.rate_e_hz), number(features.lead_ms),
         number(features.participation),
-        joined([*unit.flags, *label.flags]), joined(suggestion.reasons)))
+        joined([*unit.flags, *label.flags]), joined(suggestion.reasons), suggestion.rule_type, *before,
+        result.program_version, result.settings_digest, result.template_digest))
 
 
 def _cycle_rows(result: SessionResult, condition: ConditionResult, others: Sequence[str]) -> Iterable[Row]:
