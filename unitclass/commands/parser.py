@@ -17,6 +17,7 @@ COMMANDS: tuple[tuple[str, str], ...] = (
     ("classify", "suggested firing type of every unit in every condition"),
     ("review", "label the units in the terminal"),
     ("export", "labelled NWB copies and tables"),
+    ("report", "a page per session and over all, with figures, to read, print and cite"),
     ("agreement", "reviewers compared"),
     ("types", "the firing types and the template families behind them"),
     ("simulate", "demo sessions with known answers"),

@@ -52,8 +52,8 @@ def print_moves(found: Comparison, older: str) -> None:
     print(f"against {safe_text(older)}: {n} moved, {found.n_same} did not, {found.n_new} new, {found.n_gone} gone")
     if n:
         print_table(("file", "unit", "condition", "was", "p", "is", "p", "because of"),
-                    [(PurePath(str(m.row["file"])).name, str(m.row["unit"]), str(m.row["condition"]), m.was_type, _p(m.was_probability),
-                      str(m.row["suggested_type"]), _p(m.row["probability"]), "; ".join(m.because))
+                    [(PurePath(str(m.row["file"])).name, str(m.row["unit"]), str(m.row["condition"]), m.was_type,
+                      _p(m.was_probability), str(m.row["suggested_type"]), _p(m.row["probability"]), "; ".join(m.because))
                      for m in found.moves], sys.stdout)
     print()
 

@@ -9,6 +9,7 @@ from collections.abc import Mapping, Sequence
 from typing import TYPE_CHECKING, TextIO
 
 from unitclass.io.safe_text import safe_text
+from unitclass.signals.summary import MEASURES
 
 if TYPE_CHECKING:
     from unitclass.records import ConditionResult, Labels, Recording, SessionResult, UnitResult
@@ -95,11 +96,6 @@ def print_cycles(result: SessionResult, file: TextIO | None = None) -> None:
             print_table(("measure", "cycles in use", "all cycles"), _summary_rows(summary), file)
             print("  " + _tag_words(summary), file=file)
         print(file=file)
-
-
-MEASURES = (("rate_per_min", "rate", "/min"), ("ttot_s", "TTOT", "s"), ("ti_s", "TI", "s"), ("te_s", "TE", "s"),
-            ("duty", "duty (TI/TTOT)", ""), ("cv_ttot", "CV of TTOT", ""), ("cv_ti", "CV of TI", ""),
-            ("cv_te", "CV of TE", ""), ("cv_peak", "CV of burst height", ""))
 
 
 def _summary_rows(summary: Mapping[str, float]) -> list[tuple[str, str, str]]:

@@ -10,6 +10,11 @@ from unitclass.signals.nerves import OtherNerve, agreement, coupling
 TAGS = {"n_sigh": "sigh", "n_after_sigh": "after a sigh", "n_apnoea": "apnoea", "n_doublet": "doublet",
         "n_swallow": "swallow-like", "n_gap": "gap", "n_truncated": "truncated", "n_excluded": "excluded"}
 
+MEASURES = (("rate_per_min", "rate", "/min"), ("ttot_s", "TTOT", "s"), ("ti_s", "TI", "s"), ("te_s", "TE", "s"),
+            ("duty", "duty (TI/TTOT)", ""), ("cv_ttot", "CV of TTOT", ""), ("cv_ti", "CV of TI", ""),
+            ("cv_te", "CV of TE", ""), ("cv_peak", "CV of burst height", ""))
+"""What a summary holds, in words and with its unit."""
+
 
 def summarised(cycles: Cycles, others: list[OtherNerve]) -> dict[str, float]:
     """Return the summary by name; names that end in `_all` include cycles that were left out."""

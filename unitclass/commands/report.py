@@ -1,0 +1,159 @@
+"""`unitclass report`: a page per session and one over all of them, with figures."""
+
+from __future__ import annotations
+
+import argparse
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING, Any
+
+from unitclass.commands.options import add_crosswalk, add_paths, add_run_options, add_session_options
+
+if TYPE_CHECKING:
+    from unitclass.analysis.changes import TypeChange
+    from unitclass.batch import Plan
+    from unitclass.records import SessionResult
+    from unitclass.report.counts import TypedUnit
+    from unitclass.report.document import SessionLine
+    from unitclass.report.making import Session, Wanted
+
+FORMATS = ("svg", "pdf", "png")
+MOST_ANIMALS = 4  # whose bars stand side by side; with more, all animals count together
+
+
+def add_arguments(parser: argparse.ArgumentParser) -> None:
+    """Declare the options."""
+    add_paths(parser)
+    parser.add_argument("--out", required=True, metavar="DIR", help="folder for the pages, figures and tables")
+    parser.add_argument("--unit", action="append", default=[], metavar="ID",
+                        help="also a figure of this unit as papers show it; may be given again; \"all\" for every unit")
+    parser.add_argument("--format", action="append", default=[], choices=FORMATS,
+                        help="of the figure files; may be given again (default: all three)")
+    add_crosswalk(parser)
+    add_session_options(parser)
+    add_run_options(parser)
+
+
+@dataclass
+class _Collected:
+    """What the page over all sessions needs, kept small."""
+
+    lines: list[SessionLine] = field(default_factory=list)
+    units: list[TypedUnit] = field(default_factory=list)
+    changes: list[TypeChange] = field(default_factory=list)
+    results: list[SessionResult] = field(default_factory=list)
+    n_done: int = 0
+    n_failed: int = 0
+
+    def add(self, session: Session, page: str) -> None:
+        """Take one session in."""
+        from dataclasses import replace
+
+        from unitclass.analysis.changes import type_changes
+        from unitclass.report.document import SessionLine
+        from unitclass.report.making import typed_units
+
+        result = session.result
+        units = list(typed_units(result, session.labels))
+        self.n_done += 1
+        self.units += units
+        self.changes += type_changes(result, session.labels)
+        self.results.append(replace(result, conditions=(), findings=(), notes=()))
+        self.lines.append(SessionLine(page, result.session or result.path, result.animal or "not told",
+                                      tuple(c.condition.name or "whole session" for c in result.conditions),
+                                      len(units), sum(unit.is_decided for unit in units)))
+
+
+def run(args: argparse.Namespace) -> int:
+    """Classify, then write the pages, figures and tables."""
+    from unitclass.commands.options import plan_from
+    from unitclass.commands.progress import say
+    from unitclass.commands.runs import exit_code, run_files
+    from unitclass.errors import UnitclassError
+    from unitclass.io.atomic import check_target, made_folder
+    from unitclass.report.document import SessionLine
+    from unitclass.report.making import FIGURES, Wanted
+
+    folder = made_folder(args.out)
+    made_folder(str(folder / FIGURES))
+    for name in ("index.html", "animals.csv"):
+        check_target(str(folder / name), force=args.force)
+    plan, found = plan_from(args), _Collected()
+    wanted = Wanted(folder, tuple(args.format) or FORMATS, tuple(args.unit), args.force)
+    for outcome in run_files(args):
+        problem = outcome.problem
+        if outcome.result is not None:
+            try:
+                _one(outcome.result, args, plan, wanted, found)
+            except UnitclassError as error:
+                problem = str(error)
+                say(f"unitclass: {error}")
+        if problem:
+            found.n_failed += 1
+            found.lines.append(SessionLine("", outcome.path, "", (), 0, 0, problem=problem))
+    if found.n_done:
+        _write_index(found, args, plan, wanted)
+    return exit_code(found.n_failed, found.n_done)
+
+
+def _one(result: SessionResult, args: argparse.Namespace, plan: Plan, wanted: Wanted, found: _Collected) -> None:
+    from unitclass.batch import read_planned
+    from unitclass.commands.labels import in_words
+    from unitclass.errors import TargetError
+    from unitclass.report.making import Session, write_session
+
+    result, labels = in_words(result, args)
+    session = Session(read_planned(result.path, plan), result, labels)
+    page = f"{session.stem}.html"
+    if page in {line.link for line in found.lines}:
+        raise TargetError(f"another session of this run has the page {page}", where=result.path,
+                          remedy="report it into another folder")
+    for file in write_session(session, wanted, plan.library, plan.settings):
+        if file.name == page or "unit-" in file.name:
+            print(file, flush=True)
+    found.add(session, page)
+
+
+def _write_index(found: _Collected, args: argparse.Namespace, plan: Plan, wanted: Wanted) -> None:
+    from unitclass.io.table_files import write_table
+    from unitclass.report.counts import animal_rows, type_counts
+    from unitclass.report.document import Picture, index_html
+    from unitclass.report.making import FIGURES, steps_of, type_order, write_page
+    from unitclass.report.methods import methods_paragraph
+    from unitclass.report.saving import as_svg, save
+    from unitclass.report.session_figures import changes_figure, counts_figure
+
+    order = type_order(plan.library)
+    is_by_animal = len({unit.animal for unit in found.units}) <= MOST_ANIMALS
+    figures = [("counts", counts_figure(type_counts(found.units, order, by_animal=is_by_animal)))]
+    figures += [(f"changes-{i + 1}", changes_figure(found.changes, *step, order))
+                for i, step in enumerate(steps_of(found.changes))]
+    pictures = []
+    for name, drawn in figures:
+        files = save(drawn, wanted.folder / FIGURES / f"all-{name}", wanted.formats, force=args.force)
+        pictures.append(Picture(as_svg(drawn), drawn.caption, tuple(f"{FIGURES}/{file.name}" for file in files)))
+    animals = animal_rows(found.units, order)
+    write_table(str(wanted.folder / "animals.csv"), animals, force=args.force)
+    reviewers, agreement = _agreement(args, found.results)
+    write_page(wanted.folder / "index.html", index_html(
+        found.lines, pictures=pictures, animals=animals, agreement=agreement, reviewers=reviewers,
+        methods=methods_paragraph(found.results, plan.library, plan.settings), settings=plan.settings), force=args.force)
+    print(wanted.folder / "animals.csv")
+    print(wanted.folder / "index.html")
+
+
+def _agreement(args: argparse.Namespace, results: list[SessionResult]) -> tuple[tuple[str, ...], list[dict[str, Any]]]:
+    """Return who labelled, and how far each pair agrees; nothing without a store."""
+    from unitclass.io.store_place import existing_store
+
+    file = existing_store(args.paths, args.store)
+    if file is None:
+        return (), []
+    from unitclass.io.decisions import DecisionStore
+    from unitclass.review.agreement import StoredSession, agreement, rated_units
+
+    with DecisionStore(file, is_read_only=True) as store:
+        report = agreement(rated_units(store, [StoredSession(r.path, r.identifier, r.object_id) for r in results]))
+    return report.reviewers, [
+        {"condition": pair.condition, "first": pair.confusion.first, "second": pair.confusion.second,
+         "kappa": pair.kappa.value, "se": pair.kappa.se, "n_units": pair.kappa.n_units, "n_blind": pair.n_blind}
+        for pair in report.pairs]

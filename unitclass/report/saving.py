@@ -1,0 +1,64 @@
+"""A figure and the numbers behind it, on disk."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from unitclass.io.atomic import written_whole
+from unitclass.io.table_files import Cell, write_table
+from unitclass.report.style import drawing
+
+if TYPE_CHECKING:
+    from matplotlib.figure import Figure
+
+FORMATS = ("svg", "pdf", "png")
+SCREEN = 1.9  # pixels of a page for each point of a journal: its 7-point text is read at 13 pixels
+
+
+@dataclass(frozen=True)
+class Drawn:
+    """A figure, what it shows in a sentence, and its numbers as a table."""
+
+    figure: Figure
+    caption: str
+    rows: Sequence[Mapping[str, Cell]]
+
+
+def save(drawn: Drawn, stem: Path, formats: Sequence[str], *, force: bool) -> list[Path]:
+    """Write the figure in every format, and its numbers as CSV; return the files.
+
+    Raises
+    ------
+    TargetError
+        When a file exists (without `force`) or cannot be written.
+    """
+    files = []
+    for form in formats:
+        target = stem.with_name(f"{stem.name}.{form}")
+        with written_whole(str(target), force=force) as path, drawing():
+            drawn.figure.savefig(path, format=form, metadata=_undated(form))
+        files.append(target)
+    table = stem.with_name(f"{stem.name}.csv")
+    write_table(str(table), drawn.rows, force=force)
+    return [*files, table]
+
+
+def as_svg(drawn: Drawn) -> str:
+    """Return the figure as an SVG element for a page: no prolog, no fixed size."""
+    import io
+    import re
+
+    out = io.StringIO()
+    with drawing():
+        drawn.figure.savefig(out, format="svg", metadata=_undated("svg"))
+    text = out.getvalue()
+    return re.sub(r'width="([0-9.]+)pt" height="[^"]*pt"', lambda size: f'width="{SCREEN * float(size[1]):.0f}"',
+                  text[text.index("<svg"):], count=1)
+
+
+def _undated(form: str) -> dict[str, None]:
+    """Return metadata without a date: the same numbers give the same bytes."""
+    return {"svg": {"Date": None}, "pdf": {"CreationDate": None}}.get(form, {})
