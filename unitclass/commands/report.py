@@ -60,7 +60,7 @@ class _Collected:
         self.results.append(replace(result, conditions=(), findings=(), notes=()))
         self.lines.append(SessionLine(page, result.session or result.path, result.animal or "not told",
                                       tuple(c.condition.name or "whole session" for c in result.conditions),
-                                      len(units), sum(unit.is_decided for unit in units)))
+                                      len({unit.unit for unit in units}), sum(unit.is_decided for unit in units)))
 
 
 def run(args: argparse.Namespace) -> int:

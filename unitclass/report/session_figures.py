@@ -269,8 +269,8 @@ def counts_figure(counts: Sequence[TypeCount]) -> Drawn:
             share = np.array([c.share for c in mine.values()])
             spread = np.array([[c.share - c.low, c.high - c.share] for c in mine.values()]).T.reshape(2, -1)
             axes.bar(x, share, width, yerr=np.maximum(spread, 0), color=SERIES[g % len(SERIES)], edgecolor=INK,
-                     linewidth=0.4, hatch=HATCHES[g % len(HATCHES)], alpha=0.75, error_kw={"linewidth": 0.6, "capsize": 1.5},
-                     label=f"{', '.join(filter(None, group)) or 'all units'} (n = {next(iter(mine.values())).of})")
+                     linewidth=0.4, hatch=HATCHES[g % len(HATCHES)], alpha=0.75,
+                     error_kw={"linewidth": 0.6, "capsize": 1.5}, label=_group_words(group, next(iter(mine.values())).of))
         axes.set_xticks(range(len(types)), types, rotation=45, ha="right")
         axes.set_ylabel("share of units")
         axes.set_ylim(0, 1.25 * axes.get_ylim()[1])
@@ -280,3 +280,7 @@ def counts_figure(counts: Sequence[TypeCount]) -> Drawn:
                  "Units of one animal are no independent sample.",
                  [{"animal": c.animal, "condition": c.condition, "type": c.type, "n": c.n, "of": c.of, "share": c.share,
                    "low": c.low, "high": c.high} for c in counts])
+
+
+def _group_words(group: tuple[str, str], of: int) -> str:
+    return f"{', '.join(filter(None, group)) or 'all units'} (n = {of})"
