@@ -103,7 +103,8 @@ def test_a_real_browser_shows_the_page_without_errors_and_nothing_wider_than_the
         ".height > 5).length, all: document.querySelectorAll('svg').length})</script></body>")), encoding="utf-8")
     ran = subprocess.run(
         [str(CHROMIUM), "--headless", "--no-sandbox", "--disable-gpu", "--enable-logging=stderr",
-         f"--window-size={width},900", "--dump-dom", probe.as_uri()], capture_output=True, text=True, timeout=90, check=False)
+         f"--window-size={width},900", "--dump-dom", probe.as_uri()],
+        capture_output=True, text=True, timeout=90, check=False)
     assert ran.returncode == 0
     assert "CONSOLE" not in ran.stderr
     told = re.search(r'<title>\{"wide":(\d+),"window":(\d+),"svg":(\d+),"all":(\d+)\}</title>',
