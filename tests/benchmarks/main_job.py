@@ -48,7 +48,8 @@ def plain_read(path: Path, nerve: str) -> tuple[float, int]:
 
 def classify(path: Path, table: Path) -> tuple[float, float]:
     """Return wall seconds and peak memory in MB of the whole program."""
-    command = [sys.executable, "-m", "unitclass", "classify", str(path), "--table", str(table), "--force", "--quiet"]
+    command = [sys.executable, "-m", "unitclass", "classify", str(path), "--table", str(table), "--force", "--quiet",
+               "--fresh"]
     start = time.perf_counter()
     with subprocess.Popen(command, stdout=subprocess.DEVNULL) as process:
         _, status, used = os.wait4(process.pid, 0)
