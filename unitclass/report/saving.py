@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 
 from unitclass.io.atomic import written_whole
 from unitclass.io.table_files import Cell, write_table
-from unitclass.report.style import drawing
+from unitclass.report.style import drawing, settle
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
@@ -36,6 +36,8 @@ def save(drawn: Drawn, stem: Path, formats: Sequence[str], *, force: bool) -> li
         When a file exists (without `force`) or cannot be written.
     """
     files = []
+    with drawing():
+        settle(drawn.figure)
     for form in formats:
         target = stem.with_name(f"{stem.name}.{form}")
         with written_whole(str(target), force=force) as path, drawing():
@@ -53,6 +55,7 @@ def as_svg(drawn: Drawn) -> str:
 
     out = io.StringIO()
     with drawing():
+        settle(drawn.figure)
         drawn.figure.savefig(out, format="svg", metadata=_undated("svg"))
     text = out.getvalue()
     return re.sub(r'width="([0-9.]+)pt" height="[^"]*pt"', lambda size: f'width="{SCREEN * float(size[1]):.0f}"',

@@ -4,16 +4,17 @@ from __future__ import annotations
 
 from collections import Counter
 from collections.abc import Mapping, Sequence
+from itertools import groupby
 from typing import TYPE_CHECKING
 
 import numpy as np
 
 from unitclass.analysis.changes import TypeChange
 from unitclass.io.table_files import Cell
-from unitclass.records import ConditionResult, FloatArray, Label, Recording, UnitResult
+from unitclass.records import ConditionResult, Cycles, FloatArray, IntArray, Label, Recording, UnitResult
 from unitclass.report.counts import TypeCount
 from unitclass.report.saving import Drawn
-from unitclass.report.stretch import trace_of, usual_stretch
+from unitclass.report.stretch import Trace, trace_of, usual_stretch
 from unitclass.report.style import (
     FAMILY,
     FIRING,
@@ -26,6 +27,7 @@ from unitclass.report.style import (
     PALE,
     SERIES,
     TWO_COLUMNS,
+    above_axes,
     bare,
     drawing,
     new_figure,
@@ -39,7 +41,7 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
 
 LabelsOf = Mapping[tuple[str, str], Label]
-KIND_MARKS = {"sigh": "S", "doublet": "D", "gasp": "G", "artefact": "x", "edge": "|"}
+LEAST_MM = 1.6  # the height of rows that have room for their type's name
 
 
 def type_of(unit: UnitResult, labels: LabelsOf) -> str:
@@ -62,29 +64,29 @@ def cycles_figure(recording: Recording, condition: ConditionResult, span_s: tupl
     start, stop = span_s or usual_stretch(cycles, 12)
     signal = next((s for s in recording.nerves if s.name == condition.nerve), None)
     with drawing():
-        figure = new_figure(TWO_COLUMNS, 62 * MM)
+        figure = new_figure(TWO_COLUMNS, 66 * MM)
         upper, lower = figure.subplots(2, 1, sharex=True)
         for axes in (upper, lower):
             bare(axes)
         rows: list[dict[str, Cell]] = []
         if start == start and signal is not None and condition.nerve_cycles.envelopes:
-            _draw_raw(upper, trace_of(signal, start, stop).low, trace_of(signal, start, stop).high,
-                      trace_of(signal, start, stop).times_s, signal.unit)
+            _draw_raw(upper, trace_of(signal, start, stop))
             upper.set_ylabel(signal.name, rotation=0, ha="right", va="center")
             rows = _draw_detection(lower, condition, start, stop)
             upper.set_xlim(start, stop)
         name = condition.condition.name or "whole session"
         figure.suptitle(f"cycles of {condition.nerve}, {name}", x=0.01, ha="left", fontsize=8)
     return Drawn(figure, f"Detection of cycles on {condition.nerve}, {name}: the nerve as recorded; its envelope with the "
-                 "level at which a burst counts (dashed); shaded, inspiration; triangles, its onset and end; crossed out, "
-                 "cycles that no histogram uses, with the reason.", rows)
+                 "level at which a burst counts (dashed); shaded, inspiration; triangles, its onset and end; a line "
+                 "above, cycles that no histogram uses, with the reason.", rows)
 
 
-def _draw_raw(axes: Axes, low: FloatArray, high: FloatArray, times_s: FloatArray, unit: str) -> None:
-    axes.fill_between(times_s, low, high, color=GREY, linewidth=0.3)
-    if low.size:
-        length = nice_length(2 * float(np.nanmax(high) - np.nanmin(low)))
-        scale_bar(axes, length, quantity(length, unit), at=(float(times_s[-1]), float(np.nanmin(low))), is_vertical=True)
+def _draw_raw(axes: Axes, trace: Trace) -> None:
+    axes.fill_between(trace.times_s, trace.low, trace.high, color=GREY, linewidth=0.3)
+    if np.isfinite(trace.low).any():
+        length = nice_length(2 * float(np.nanmax(trace.high) - np.nanmin(trace.low)))
+        scale_bar(axes, length, quantity(length, trace.unit), at=(float(trace.times_s[-1]), float(np.nanmin(trace.low))),
+                  is_vertical=True)
 
 
 def _draw_detection(axes: Axes, condition: ConditionResult, start_s: float, stop_s: float) -> list[dict[str, Cell]]:
@@ -96,29 +98,42 @@ def _draw_detection(axes: Axes, condition: ConditionResult, start_s: float, stop
     if np.isfinite(nerve_cycles.threshold):
         axes.axhline(nerve_cycles.threshold, color=FAMILY, linestyle="--", linewidth=0.6)
     top, low = float(np.nanmax(values)), float(np.nanmin(values))
-    for i in np.flatnonzero((cycles.end_s > start_s) & (cycles.onset_s < stop_s)):
-        _draw_one_cycle(axes, condition, int(i), low, top)
+    shown = np.flatnonzero((cycles.end_s > start_s) & (cycles.onset_s < stop_s))
+    for i in shown:
+        _draw_one_cycle(axes, cycles, int(i), low, top)
+    _draw_tags(axes, cycles, shown, (start_s, stop_s), top + 0.06 * (top - low))
     axes.set_ylabel(f"\u222b {envelope.name}", rotation=0, ha="right", va="center")
-    axes.set_ylim(low - 0.25 * (top - low), top + 0.25 * (top - low))
+    axes.set_ylim(low - 0.25 * (top - low), top + 0.12 * (top - low))
     length = nice_length(stop_s - start_s)
     scale_bar(axes, length, f"{length:g} s", at=(stop_s - length, low - 0.22 * (top - low)))
     return [{"time_s": float(t), "envelope": None if v != v else float(v), "unit": envelope.unit}
             for t, v in zip(envelope.times_s[inside], values, strict=True)]
 
 
-def _draw_one_cycle(axes: Axes, condition: ConditionResult, i: int, low: float, top: float) -> None:
-    cycles = condition.nerve_cycles.cycles
-    onset, offset, end = (float(v[i]) for v in (cycles.onset_s, cycles.offset_s, cycles.end_s))
+def _draw_one_cycle(axes: Axes, cycles: Cycles, i: int, low: float, top: float) -> None:
+    onset, offset = float(cycles.onset_s[i]), float(cycles.offset_s[i])
     axes.plot([onset], [low - 0.06 * (top - low)], "^", color=FIRING, markersize=2.5)
     if offset == offset:
         axes.axvspan(onset, offset, color=INSPIRATION, linewidth=0, zorder=0)
         axes.plot([offset], [low - 0.06 * (top - low)], "v", color=FIRING, markersize=2.5, fillstyle="none")
-    if not cycles.accepted[i]:
-        axes.plot([onset, end], [top * 1.04] * 2, color=INK, linewidth=0.6)
-    mark = KIND_MARKS.get(cycles.kind[i], "")
-    words = f"{mark} {cycles.reason[i]}".strip() if cycles.reason[i] or mark else ""
-    if words:
-        axes.text(onset, top * 1.06, words, fontsize=5, clip_on=True)
+
+
+def _draw_tags(axes: Axes, cycles: Cycles, shown: IntArray, span_s: tuple[float, float], height: float) -> None:
+    """Write each tag once over the cycles in a row that carry it; a line marks cycles that no histogram uses."""
+    for tag, run in groupby(shown.tolist(), key=lambda i: tag_of(cycles, i)):
+        mine = list(run)
+        start, stop = max(float(cycles.onset_s[mine[0]]), span_s[0]), min(float(cycles.end_s[mine[-1]]), span_s[1])
+        if not cycles.accepted[mine[0]]:
+            axes.plot([start, stop], [height] * 2, color=INK, linewidth=0.8, solid_capstyle="butt")
+        if tag:
+            axes.annotate(tag.split(":")[0], (start, height), xytext=(0, 2), textcoords="offset points", fontsize=5.5,
+                          rotation=20, ha="left", va="bottom", annotation_clip=False)
+
+
+def tag_of(cycles: Cycles, i: int) -> str:
+    """Return a cycle's tag in words; whether it is used is part of it, "" for a plain breath in use."""
+    words = (cycles.reason[i] or (cycles.kind[i] if cycles.kind[i] != "breath" else "")).split(":")[0]
+    return words or ("" if cycles.accepted[i] else "not used")
 
 
 # ----------------------------------------------------------------------------- population
@@ -127,15 +142,17 @@ def population_figure(condition: ConditionResult, labels: LabelsOf, order: Seque
     """Return every unit's profile as one row, grouped by type, within it by the phase of its peak."""
     units = _sorted_units(condition.units, labels, order)
     with drawing():
-        figure = new_figure(TWO_COLUMNS, (30 + min(2.2 * len(units), 200)) * MM)
-        nerve, heat = figure.subplots(2, 1, sharex=True, height_ratios=(1, max(3.0, len(units) / 8)))
+        figure = new_figure(TWO_COLUMNS, (38 + min(2.6 * len(units), 192)) * MM)
+        nerve, heat = figure.subplots(2, 1, sharex=True, height_ratios=(1, max(1.5, len(units) / 6)))
         _draw_nerves(nerve, condition)
         table = _scaled(units)
         if len(units):
             image = heat.imshow(doubled_rows(table), aspect="auto", extent=(0, 4, len(units), 0), cmap="Greys",
                                 vmin=0, vmax=1, interpolation="nearest")
-            bar = figure.colorbar(image, ax=[nerve, heat], shrink=0.4, location="right", pad=0.01)
-            bar.set_label("share of the unit's highest rate")
+            bar = figure.colorbar(image, ax=[nerve, heat], shrink=0.6, location="right", pad=0.01,
+                                  ticks=[0, 1])
+            bar.ax.set_yticklabels(["0", "peak"])
+            bar.set_label("rate")
             _type_brackets(heat, [type_of(u, labels) for u in units])
         for x in (1, 2, 3):
             heat.axvline(x, color=FAMILY, linewidth=0.5, linestyle=":" if x != 2 else "-")
@@ -144,8 +161,9 @@ def population_figure(condition: ConditionResult, labels: LabelsOf, order: Seque
         heat.set_xticks([0.5, 1.5, 2.5, 3.5], ["I", "E", "I", "E"])
         heat.tick_params(length=0)
         name = condition.condition.name or "whole session"
-        figure.suptitle(f"{len(units)} units, {name}", x=0.01, ha="left", fontsize=8)
-    return Drawn(figure, f"Profiles of {len(units)} units over two cycles, {name}: a row each, scaled to its highest "
+        n_units = f"{len(units)} unit" + ("" if len(units) == 1 else "s")
+        figure.suptitle(f"{n_units}, {name}", x=0.01, ha="left", fontsize=8)
+    return Drawn(figure, f"Profiles of {n_units} over two cycles, {name}: a row each, scaled to its highest "
                  "rate, grouped by type and sorted by the phase of the peak. Above, mean nerves.",
                  _population_rows(units, labels))
 
@@ -178,17 +196,19 @@ def _draw_nerves(axes: Axes, condition: ConditionResult) -> None:
                   linestyle=("-", "--", ":", "-.")[i % 4], label=profile.name)
     axes.set_yticks([])
     if condition.nerve_profiles:
-        axes.legend(loc="upper right", ncols=4, borderaxespad=0)
+        above_axes(axes, len(SERIES))
 
 
 def _type_brackets(axes: Axes, names: Sequence[str]) -> None:
-    """Write each type once beside its rows."""
+    """Write each type once beside its rows; where the rows are too low for a word, only the bracket."""
     axes.set_yticks([])
     counted = Counter(names)
     first = 0
     for name in dict.fromkeys(names):
         stop = first + counted[name]
-        axes.text(-0.05, (first + stop) / 2, f"{name} ({counted[name]})", ha="right", va="center", fontsize=6)
+        height_mm = axes.get_figure().get_figheight() / MM * 0.75 * counted[name] / len(names)  # type: ignore[union-attr]
+        if height_mm >= LEAST_MM:
+            axes.text(-0.05, (first + stop) / 2, f"{name} ({counted[name]})", ha="right", va="center", fontsize=6)
         axes.plot([-0.03, -0.03], [first + 0.1, stop - 0.1], color=INK, linewidth=0.8, clip_on=False)
         if stop < len(names):
             axes.axhline(stop, color=INK, linewidth=0.3)
@@ -273,9 +293,10 @@ def counts_figure(counts: Sequence[TypeCount]) -> Drawn:
                      error_kw={"linewidth": 0.6, "capsize": 1.5}, label=_group_words(group, next(iter(mine.values())).of))
         axes.set_xticks(range(len(types)), types, rotation=45, ha="right")
         axes.set_ylabel("share of units")
-        axes.set_ylim(0, 1.25 * axes.get_ylim()[1])
+        axes.set_ylim(0, min(1.0, axes.get_ylim()[1]))
+        axes.set_xlim(-0.6, len(types) - 0.4)
         if len(groups) <= 12:
-            axes.legend(loc="upper right", ncols=2)
+            above_axes(axes, 3)
     return Drawn(figure, "Share of each type among the units of an animal and condition; bars, Wilson's 95 % interval. "
                  "Units of one animal are no independent sample.",
                  [{"animal": c.animal, "condition": c.condition, "type": c.type, "n": c.n, "of": c.of, "share": c.share,

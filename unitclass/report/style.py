@@ -48,6 +48,21 @@ def new_figure(width: float, height: float) -> Figure:
     return Figure(figsize=(width, height), layout="constrained")
 
 
+def settle(figure: Figure) -> None:
+    """Lay the figure out once, for all formats, at positions rounded to a hundredth of a millimetre or so.
+
+    The layout's solver leaves the last bits of a position to chance, and SVG names its clips by them:
+    rounded, the same numbers give the same file.
+    """
+    if type(figure.get_layout_engine()).__name__ != "ConstrainedLayoutEngine":
+        return  # laid out before
+    figure.draw_without_rendering()
+    figure.set_layout_engine("none")
+    for axes in figure.axes:
+        x, y, width, height = (round(float(v), 5) for v in axes.get_position().bounds)
+        axes.set_position((x, y, width, height))
+
+
 def bare(axes: Axes) -> None:
     """Take all axes away: a scale bar stands for them."""
     axes.set_xticks([])
@@ -56,15 +71,20 @@ def bare(axes: Axes) -> None:
         spine.set_visible(False)
 
 
+def above_axes(axes: Axes, n_columns: int) -> None:
+    """Place the legend above the axes, where it covers nothing."""
+    axes.legend(loc="lower right", bbox_to_anchor=(1.0, 1.0), ncols=n_columns, borderaxespad=0.1, handlelength=1.6,
+                columnspacing=1.0)
+
+
 def scale_bar(axes: Axes, length: float, words: str, *, at: tuple[float, float], is_vertical: bool = False) -> None:
     """Draw a bar of `length` in data units from `at`, its length in words beside it."""
     x, y = at
     ends = ([x, x], [y, y + length]) if is_vertical else ([x, x + length], [y, y])
     axes.plot(*ends, color=INK, linewidth=1.2, solid_capstyle="butt", clip_on=False)
-    if is_vertical:
-        axes.text(x, y + length / 2, f" {words}", ha="left", va="center", clip_on=False)
-    else:
-        axes.text(x + length / 2, y, f"{words}", ha="center", va="top", clip_on=False)
+    middle, away = ((x, y + length / 2), (3, 0)) if is_vertical else ((x + length / 2, y), (0, -2))
+    axes.annotate(words, middle, xytext=away, textcoords="offset points", ha="left" if is_vertical else "center",
+                  va="center" if is_vertical else "top", annotation_clip=False)
 
 
 def nice_length(span: float) -> float:

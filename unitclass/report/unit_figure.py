@@ -22,6 +22,7 @@ from unitclass.report.style import (
     PALE,
     SERIES,
     TWO_COLUMNS,
+    above_axes,
     bare,
     drawing,
     new_figure,
@@ -221,13 +222,14 @@ def _draw_histogram(axes: Axes, shown: Shown, *, with_words: bool) -> None:
         mean = doubled(profile.mean)
         spread = np.nanmax(mean) - np.nanmin(mean)
         if spread > 0:
-            scaled = 0.9 * top * (mean - np.nanmin(mean)) / spread
+            scaled = top * (mean - np.nanmin(mean)) / spread
             axes.plot((np.arange(mean.size) + 0.5) * (4.0 / mean.size), scaled, color=NERVE, linewidth=1.0,
                       label=f"{profile.name}, mean")
     phase_axis(axes, with_words=with_words)
-    axes.set_ylim(0, 1.3 * top)
+    highest = float(np.nanmax(np.r_[top, h.high_hz]))
+    axes.set_ylim(0, 1.08 * highest)
     axes.set_ylabel("rate (spikes/s)")
-    axes.legend(loc="upper center", ncols=3, borderaxespad=0, handlelength=1.4, columnspacing=1.0)
+    above_axes(axes, 3)
 
 
 def _draw_locked(unit: UnitResult, figure: Figure, place: SubplotSpec) -> None:
