@@ -28,6 +28,8 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
                         help="also a figure of this unit as papers show it; may be given again; \"all\" for every unit")
     parser.add_argument("--format", action="append", default=[], choices=FORMATS,
                         help="of the figure files; may be given again (default: all three)")
+    parser.add_argument("--stretch", nargs=2, type=float, action="append", default=[], metavar=("START", "STOP"),
+                        help="also a figure of cycle detection from START to STOP, s; may be given again")
     add_crosswalk(parser)
     add_session_options(parser)
     add_run_options(parser)
@@ -43,18 +45,20 @@ class _Collected:
     results: list[SessionResult] = field(default_factory=list)
     n_done: int = 0
     n_failed: int = 0
+    has_membrane: bool = False
 
     def add(self, session: Session, page: str) -> None:
         """Take one session in."""
         from dataclasses import replace
 
         from unitclass.analysis.changes import type_changes
-        from unitclass.report.document import SessionLine
+        from unitclass.report.document import SessionLine, has_membrane
         from unitclass.report.making import typed_units
 
         result = session.result
         units = list(typed_units(result, session.labels))
         self.n_done += 1
+        self.has_membrane = self.has_membrane or has_membrane(result)
         self.units += units
         self.changes += type_changes(result, session.labels)
         self.results.append(replace(result, conditions=(), findings=(), notes=()))
@@ -78,7 +82,7 @@ def run(args: argparse.Namespace) -> int:
     for name in ("index.html", "animals.csv"):
         check_target(str(folder / name), force=args.force)
     plan, found = plan_from(args), _Collected()
-    wanted = Wanted(folder, tuple(args.format) or FORMATS, tuple(args.unit), args.force)
+    wanted = Wanted(folder, tuple(args.format) or FORMATS, tuple(args.unit), args.force, _stretches(args))
     for outcome in run_files(args):
         problem = outcome.problem
         if outcome.result is not None:
@@ -92,7 +96,21 @@ def run(args: argparse.Namespace) -> int:
             found.lines.append(SessionLine("", outcome.path, "", (), 0, 0, problem=problem))
     if found.n_done:
         _write_index(found, args, plan, wanted)
+    absent = [unit for unit in args.unit if unit != "all" and unit not in {u.unit for u in found.units}]
+    if absent:
+        say(f"unitclass: no unit {', '.join(absent)} in any session; the pages name every unit")
+        found.n_failed += 1
     return exit_code(found.n_failed, found.n_done)
+
+
+def _stretches(args: argparse.Namespace) -> tuple[tuple[float, float], ...]:
+    from unitclass.errors import UsageError
+
+    for start, stop in args.stretch:
+        if not 0 < stop - start < float("inf"):
+            raise UsageError(f"--stretch {start:g} {stop:g} does not end after it starts",
+                             remedy="give START and STOP in seconds")
+    return tuple((start, stop) for start, stop in args.stretch)
 
 
 def _one(result: SessionResult, args: argparse.Namespace, plan: Plan, wanted: Wanted, found: _Collected) -> None:
@@ -124,7 +142,7 @@ def _write_index(found: _Collected, args: argparse.Namespace, plan: Plan, wanted
 
     order = type_order(plan.library)
     is_by_animal = len({unit.animal for unit in found.units}) <= MOST_ANIMALS
-    figures = [("counts", counts_figure(type_counts(found.units, order, by_animal=is_by_animal)))]
+    figures = [("counts", counts_figure(type_counts(found.units, order, by_animal=is_by_animal), order))]
     figures += [(f"changes-{i + 1}", changes_figure(found.changes, *step, order))
                 for i, step in enumerate(steps_of(found.changes))]
     pictures = []
@@ -136,7 +154,9 @@ def _write_index(found: _Collected, args: argparse.Namespace, plan: Plan, wanted
     reviewers, agreement = _agreement(args, found.results)
     write_page(wanted.folder / "index.html", index_html(
         found.lines, pictures=pictures, animals=animals, agreement=agreement, reviewers=reviewers,
-        methods=methods_paragraph(found.results, plan.library, plan.settings), settings=plan.settings), force=args.force)
+        methods=methods_paragraph(found.results, plan.library, plan.settings, with_membrane=found.has_membrane),
+        settings=plan.settings,
+        library=plan.library), force=args.force)
     print(wanted.folder / "animals.csv")
     print(wanted.folder / "index.html")
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections import Counter
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from functools import lru_cache
 from pathlib import Path
 from typing import Any
@@ -42,6 +42,8 @@ class SessionPage:
     labels: Labels
     pictures: Mapping[str, tuple[Picture, ...]]
     """Condition to its figures; "" holds those of the whole session."""
+    unit_files: Mapping[tuple[str, str], tuple[str, ...]] = field(default_factory=dict)
+    """Key of a unit to the files of its full figure."""
 
 
 @dataclass(frozen=True)
@@ -63,18 +65,25 @@ def session_html(page: SessionPage, library: TypeLibrary, settings: Settings) ->
     return str(_environment().get_template("session.html").render(
         version=__version__, result=page.result, recording=page.recording, n_decided=decided,
         conditions=[_condition(c, page) for c in page.result.conditions], whole=page.pictures.get("", ()),
-        methods=methods_paragraph([page.result], library, settings), references=REFERENCES,
+        methods=methods_paragraph([page.result], library, settings, with_membrane=has_membrane(page.result)),
+        references=REFERENCES,
         settings=list(settings.tunables()), templates=_template_rows(library)))
 
 
 def index_html(lines: Sequence[SessionLine], *, pictures: Sequence[Picture], animals: Sequence[Mapping[str, Any]],
                agreement: Sequence[Mapping[str, Any]], reviewers: Sequence[str], methods: str,
-               settings: Settings) -> str:
+               settings: Settings, library: TypeLibrary) -> str:
     """Return the page over all sessions."""
     return str(_environment().get_template("index.html").render(
         version=__version__, lines=lines, pictures=pictures, animals=animals, agreement=agreement, reviewers=reviewers,
         methods=methods, references=REFERENCES, settings=list(settings.tunables()),
-        n_decided=sum(line.n_decided for line in lines), n_units=sum(line.n_units for line in lines)))
+        templates=_template_rows(library), n_decided=sum(line.n_decided for line in lines),
+        n_units=sum(line.n_units for line in lines)))
+
+
+def has_membrane(result: SessionResult) -> bool:
+    """Return whether a unit of the session was read from a membrane potential."""
+    return any(unit.vm is not None for _, unit in result.units())
 
 
 @lru_cache(maxsize=1)
@@ -118,7 +127,8 @@ def _unit(unit: UnitResult, page: SessionPage, picture: str) -> dict[str, Any]:
     f = unit.features
     label = page.labels.get(unit.key)
     return {
-        "it": unit, "label": label, "picture": Markup(picture),
+        "it": unit, "label": label, "picture": Markup(picture), "files": page.unit_files.get(unit.key, ()),
+        "peak_hz": float(np.nan_to_num(unit.histogram.rate_hz).max(initial=0.0)),
         "flags": [*unit.flags, *(label.flags if label else ())], "ranked": unit.suggestion.ranked[:3],
         "features": [("onset, peak, offset", f"phase {_g(f.onset_phase)}, {_g(f.peak_phase)}, {_g(f.offset_phase)}"),
                      ("rate in I, in E", f"{_g(f.rate_i_hz)}, {_g(f.rate_e_hz)} spikes/s"),

@@ -21,7 +21,8 @@ def glance(unit: UnitResult, nerve: NerveProfile | None) -> str:
     fitted = unit.suggestion.fitted_rate_hz
     has_fit = fitted.size == rate.size
     top = max(float(rate.max(initial=0.0)), float(fitted.max(initial=0.0)) if has_fit else 0.0, 1e-9)
-    parts = [f'<svg class="glance" viewBox="0 0 {WIDTH} {HEIGHT}" role="img" aria-label="rate by phase, two cycles">',
+    parts = [f'<svg class="glance" viewBox="0 0 {WIDTH} {HEIGHT}" preserveAspectRatio="none" role="img" '
+             'aria-label="rate by phase, two cycles">',
              *(f'<rect class="insp" x="{x}" y="0" width="{WIDTH // 4}" height="{HEIGHT}"/>' for x in (0, WIDTH // 2)),
              f'<path class="bars" d="{_steps(doubled(rate) / top)}"/>']
     if nerve is not None and np.isfinite(nerve.mean).any():

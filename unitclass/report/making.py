@@ -4,7 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from hashlib import sha256
 from pathlib import Path, PurePath
+from urllib.parse import quote
 
 from unitclass.analysis.changes import TypeChange, type_changes
 from unitclass.classify.templates import TypeLibrary
@@ -34,6 +36,8 @@ class Wanted:
     formats: tuple[str, ...]
     units: tuple[str, ...] = ()
     force: bool = False
+    stretches_s: tuple[tuple[float, float], ...] = ()
+    """Start and stop of stretches whose cycle detection is shown, session clock."""
 
     def wants(self, unit: str) -> bool:
         """Return whether a unit gets its own figure."""
@@ -66,7 +70,7 @@ def write_session(session: Session, wanted: Wanted, library: TypeLibrary, settin
     pictures: dict[str, tuple[Picture, ...]] = {}
     for condition in session.result.conditions:
         kept = []
-        for name, drawn in _condition_figures(session, condition, order):
+        for name, drawn in _condition_figures(session, condition, order, wanted.stretches_s):
             files = save(drawn, _stem(session, wanted, condition, name), wanted.formats, force=wanted.force)
             yield from files
             kept.append(_picture(drawn, files))
@@ -77,9 +81,13 @@ def write_session(session: Session, wanted: Wanted, library: TypeLibrary, settin
         yield from files
         whole.append(_picture(drawn, files))
     pictures[""] = tuple(whole)
-    yield from _unit_figures(session, wanted)
+    unit_files: dict[tuple[str, str], tuple[str, ...]] = {}
+    for key, files in _unit_figures(session, wanted):
+        yield from files
+        unit_files[key] = _links(files)
     page = wanted.folder / f"{session.stem}.html"
-    text = session_html(SessionPage(session.recording, session.result, session.labels, pictures), library, settings)
+    text = session_html(SessionPage(session.recording, session.result, session.labels, pictures, unit_files), library,
+                        settings)
     write_page(page, text, force=wanted.force)
     yield page
 
@@ -103,10 +111,14 @@ def typed_units(result: SessionResult, labels: Labels) -> Iterator[TypedUnit]:
                         is_decided=label is not None and bool(label.type))
 
 
-def _condition_figures(session: Session, condition: ConditionResult,
-                       order: Sequence[str]) -> Iterator[tuple[str, Drawn]]:
-    if condition.nerve_cycles.cycles.n_cycles:
+def _condition_figures(session: Session, condition: ConditionResult, order: Sequence[str],
+                       stretches_s: Sequence[tuple[float, float]]) -> Iterator[tuple[str, Drawn]]:
+    cycles = condition.nerve_cycles.cycles
+    if cycles.n_cycles:
         yield "cycles", cycles_figure(session.recording, condition)
+        for start, stop in stretches_s:
+            if start < float(cycles.end_s[-1]) and stop > float(cycles.onset_s[0]):
+                yield f"cycles-{start:g}-{stop:g}", cycles_figure(session.recording, condition, (start, stop))
     if any(unit.n_spikes for unit in condition.units):
         yield "population", population_figure(condition, session.labels, order)
 
@@ -127,13 +139,14 @@ def steps_of(changes: Sequence[TypeChange]) -> tuple[tuple[str, str], ...]:
     return tuple(dict.fromkeys((c.condition_before, c.condition_after) for c in changes))
 
 
-def _unit_figures(session: Session, wanted: Wanted) -> Iterator[Path]:
+def _unit_figures(session: Session, wanted: Wanted) -> Iterator[tuple[tuple[str, str], list[Path]]]:
+    """Draw the units asked for; yield each one's key with its files."""
     for condition in session.result.conditions:
         for unit in condition.units:
             if wanted.wants(unit.unit):
                 drawn = unit_figure(Shown(session.recording, condition, unit, session.labels.get(unit.key)))
-                yield from save(drawn, _stem(session, wanted, condition, f"unit-{_safe(unit.unit)}"), wanted.formats,
-                                force=wanted.force)
+                yield unit.key, save(drawn, _stem(session, wanted, condition, f"unit-{_safe(unit.unit)}"), wanted.formats,
+                                     force=wanted.force)
 
 
 def _stem(session: Session, wanted: Wanted, condition: ConditionResult, name: str) -> Path:
@@ -142,9 +155,16 @@ def _stem(session: Session, wanted: Wanted, condition: ConditionResult, name: st
 
 
 def _safe(name: str) -> str:
-    """Return a name that any file system takes."""
-    return "".join(c if c.isalnum() or c in "-_." else "_" for c in name)[:60]
+    """Return a name that any file system takes; one that had to be changed ends in a digest, so that none meet."""
+    plain = "".join(c if c.isalnum() or c in "-_." else "_" for c in name)[:60]
+    if plain == name.replace(" ", "_"):
+        return plain
+    return f"{plain}-{sha256(name.encode(errors='surrogatepass')).hexdigest()[:6]}"
 
 
 def _picture(drawn: Drawn, files: Sequence[Path]) -> Picture:
-    return Picture(as_svg(drawn), drawn.caption, tuple(f"{FIGURES}/{file.name}" for file in files))
+    return Picture(as_svg(drawn), drawn.caption, _links(files))
+
+
+def _links(files: Sequence[Path]) -> tuple[str, ...]:
+    return tuple(f"{FIGURES}/{quote(file.name)}" for file in files)

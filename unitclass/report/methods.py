@@ -25,8 +25,8 @@ inspiration were set where the burst passes a tenth of its peak, free of the smo
 activity was integrated ({smoother}, time constant {tau:g} ms). Sighs and the {after_sigh} after each, apnoeas,
 doublets and cycles touching an excluded window were left out of histograms. Each cycle was mapped onto
 {n_bins} bins, half of them inspiration and half expiration; firing rates are spike counts divided by the
-seconds observed in each bin, with 95 % limits by bootstrap over cycles (Davison and Hinkley 1997; Kass et al.
-2014). Modulation was tested by eta squared (Orem and Dick 1983) against {n_shifts} circular shifts in time,
+seconds observed in each bin, with 95 % limits from {n_bootstrap} bootstrap resamples of cycles (Davison and Hinkley
+1997; Kass et al. 2014).{membrane} Modulation was tested by eta squared (Orem and Dick 1983) against {n_shifts} circular shifts in time,
 with the false discovery rate controlled over the units of a condition (Benjamini and Hochberg 1995). The
 probability of each firing type is the posterior of template families (each {n_draws} profiles drawn from
 stated ranges of onset, peak, end and shape) given the counts, under a multinomial likelihood tempered by the
@@ -37,14 +37,20 @@ Labels are those of the reviewers named in the tables.
 """
 
 
-def methods_paragraph(results: Sequence[SessionResult], library: TypeLibrary, settings: Settings) -> str:
-    """Return how the results were made, in words that can stand in a paper."""
+_OF_MEMBRANE = """ Spikes of impaled cells were detected on the membrane potential by a filter matched to the cell's
+own spike in its noise; for the mean potential by phase, spikes were cut out and bridged."""
+
+
+def methods_paragraph(results: Sequence[SessionResult], library: TypeLibrary, settings: Settings, *,
+                      with_membrane: bool = False) -> str:
+    """Return how the results were made, in words that can stand in a paper; of impaled cells only when there are some."""
     n, c, p, m, k = settings.nerve, settings.cycles, settings.phase, settings.modulation, settings.classify
     version = ", ".join(sorted({r.program_version for r in results})) or "unknown"
     return " ".join(_MADE_WITH.format(
         version=version, digest=settings.digest(), changed=changed_words(settings), library=library.name,
         n_families=len(library.families), library_digest=library.digest(), low=n.low_cut_hz, high=n.high_cut_hz,
         smoother=n.smoother, tau=n.tau_ms, after_sigh=_plural(c.after_sigh, "cycle"), n_bins=p.n_bins,
+        n_bootstrap=p.n_bootstrap, membrane=_OF_MEMBRANE if with_membrane else "",
         n_shifts=m.n_shifts, n_draws=k.n_draws, concentration=k.concentration, other=k.other_prior,
         min_spikes=m.min_spikes, min_cycles=m.min_cycles).split())
 

@@ -275,10 +275,10 @@ def _ordered(names: set[str], order: Sequence[str]) -> list[str]:
 
 # --------------------------------------------------------------------------------- counts
 
-def counts_figure(counts: Sequence[TypeCount]) -> Drawn:
+def counts_figure(counts: Sequence[TypeCount], order: Sequence[str] = ()) -> Drawn:
     """Return the share of every type per animal and condition, with 95 % intervals."""
     groups = list(dict.fromkeys((c.animal, c.condition) for c in counts))
-    types = list(dict.fromkeys(c.type for c in counts))
+    types = _ordered({c.type for c in counts}, order)
     with drawing():
         figure = new_figure(TWO_COLUMNS, 62 * MM)
         axes = figure.subplots()

@@ -94,7 +94,8 @@ def _moved(field: Field, u: FloatArray, onset: FloatArray, offset: FloatArray, t
     length = offset - onset
     rows = field.rows(onset[:, None] + length[:, None] * u)
     rows = np.where(_own(u, onset, offset), rows, np.nan)
-    gain = np.nanmean(np.where((u > 0) & (u < 1), rows, np.nan), axis=1)
+    inside = np.isfinite(rows) & (u > 0) & (u < 1)
+    gain = np.where(inside, rows, 0.0).sum(axis=1) / np.maximum(inside.sum(axis=1), 1)
     gain = np.where(np.isfinite(gain) & (gain > 0), gain, np.nan)
     template = average(rows / gain[:, None], typical)
     slope = np.gradient(template, u)

@@ -48,31 +48,47 @@ def first_peak(trace: FloatArray, rate_hz: float) -> FloatArray:
 def floor_between(trace: FloatArray, in_burst: BoolArray, rate_hz: float, window_s: float) -> FloatArray:
     """Return the running median of a trace outside its bursts, shape (n_samples,)."""
     quiet = np.where(in_burst, np.nan, trace)
-    return _windowed(quiet, rate_hz, window_s, lambda part: float(np.median(part)))
+    return _windowed(quiet, rate_hz, window_s, lambda part: float(np.median(part)), with_ends=True)
 
 
 def running_median(values: FloatArray, n: int) -> FloatArray:
-    """Return the median of each value and its `n` nearest, shape (n_values,); windows cut at the ends."""
+    """Return the median of each value and its `n` nearest, shape (n_values,); windows shrink at the ends.
+
+    A slow drift is followed to the last value, but no window holds fewer than five.
+    """
     if values.size <= n:
         return np.full(values.size, np.median(values)) if values.size else values
-    half = n // 2
+    half, least = n // 2, min(n, 5)
     inner = np.median(np.lib.stride_tricks.sliding_window_view(values, 2 * half + 1), axis=1)
-    return np.concatenate([np.full(half, inner[0]), inner, np.full(half, inner[-1])])
+    reach = [max(2 * i + 1, least) for i in range(half)]
+    return np.concatenate([[np.median(values[:k]) for k in reach], inner,
+                           [np.median(values[-k:]) for k in reversed(reach)]])
 
 
 def _windowed(trace: FloatArray, rate_hz: float, window_s: float, statistic: Callable[[FloatArray], float],
-              neighbours: int = 3) -> FloatArray:
+              neighbours: int = 3, *, with_ends: bool = False) -> FloatArray:
+    """Return a statistic of half-overlapping windows, read off between their centres.
+
+    Beyond the outermost centres it stays as it is there or, `with_ends`, follows windows of half the
+    length: a drift does not stop before the recording does.
+    """
     step = max(1, int(rate_hz // COARSE_HZ))
     coarse = trace[::step]
     width = max(4, round(window_s * rate_hz / step))
     n_windows = max(1, round(2 * coarse.size / width) - 1)
     starts = np.linspace(0, max(0, coarse.size - width), n_windows).astype(int)
-    found = np.full(n_windows, np.nan)
-    for i, start in enumerate(starts):
-        part = coarse[start : start + width]
-        part = part[np.isfinite(part)]
-        if part.size >= min(4, width // 8):
-            found[i] = statistic(part)
+    found = np.array([_of_finite(coarse[start : start + width], statistic, width) for start in starts])
     smooth = running_median(filled(found), neighbours) if n_windows > 2 else filled(found)
     centres = (starts + min(width, coarse.size) / 2) * step
+    if with_ends and n_windows > 2:
+        half = width // 2
+        ends = [_of_finite(part, statistic, width) for part in (coarse[:half], coarse[-half:])]
+        smooth = np.concatenate([[ends[0]], smooth, [ends[1]]])
+        centres = np.concatenate([[half / 2 * step], centres, [(coarse.size - half / 2) * step]])
+        smooth = filled(smooth)
     return np.interp(np.arange(trace.size), centres, smooth)
+
+
+def _of_finite(part: FloatArray, statistic: Callable[[FloatArray], float], width: int) -> float:
+    finite = part[np.isfinite(part)]
+    return statistic(finite) if finite.size >= min(4, width // 8) else np.nan
