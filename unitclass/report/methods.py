@@ -23,17 +23,17 @@ filtered ({low:g} Hz to {high:g} Hz or 0.45 times the sampling rate, whichever i
 were detected on a smoothed trace with a threshold taken from the trace itself, and the onset and end of
 inspiration were set where the burst passes a tenth of its peak, free of the smoother's delay. For display
 activity was integrated ({smoother}, time constant {tau:g} ms). Sighs and the {after_sigh} after each, apnoeas,
-doublets and cycles touching an excluded window were left out of histograms. Each cycle was mapped onto
-{n_bins} bins, half of them inspiration and half expiration; firing rates are spike counts divided by the
-seconds observed in each bin, with 95 % limits from {n_bootstrap} bootstrap resamples of cycles (Davison and Hinkley
-1997; Kass et al. 2014).{membrane} Modulation was tested by eta squared (Orem and Dick 1983) against {n_shifts} circular shifts in time,
-with the false discovery rate controlled over the units of a condition (Benjamini and Hochberg 1995). The
-probability of each firing type is the posterior of template families (each {n_draws} profiles drawn from
-stated ranges of onset, peak, end and shape) given the counts, under a multinomial likelihood tempered by the
-unit's over-dispersion and saturating at {concentration:g} spikes, in competition with a family of arbitrary
-profiles (prior {other:g}; Bishop 2006), with priors averaged over the probabilities of the rhythm (three-,
-two- or one-phase). Units with fewer than {min_spikes} spikes or {min_cycles} cycles were not classified.
-Labels are those of the reviewers named in the tables.
+doublets and cycles touching an excluded window were left out of histograms. Each cycle was mapped onto {n_bins}
+bins, half of them inspiration and half expiration; firing rates are spike counts divided by the seconds
+observed in each bin, with 95 % limits from {n_bootstrap} bootstrap resamples of cycles (Davison and Hinkley
+1997; Kass et al. 2014).{membrane} Modulation was tested by eta squared (Orem and Dick 1983) against {n_shifts}
+circular shifts in time, with the false discovery rate controlled over the units of a condition (Benjamini and
+Hochberg 1995). The probability of each firing type is the posterior of template families (each {n_draws}
+profiles drawn from stated ranges of onset, peak, end and shape) given the counts, under a multinomial
+likelihood tempered by the unit's over-dispersion and saturating at {concentration:g} spikes, in competition
+with a family of arbitrary profiles (prior {other:g}; Bishop 2006), with priors averaged over the probabilities
+of the rhythm (three-, two- or one-phase). Units with fewer than {min_spikes} spikes or {min_cycles} cycles were
+not classified. Labels are those of the reviewers named in the tables.
 """
 
 
