@@ -96,9 +96,10 @@ def activity(signal: Signal, settings: NerveSettings, *, start_s: float, stop_s:
     if not signal.is_integrated:
         return _checked(_rectified(signal, settings, start_s, stop_s))
     from unitclass.signals.unlag import without_lag
+    from unitclass.signals.upright import upright
 
     made = _checked(_stored(signal, start_s, stop_s))
-    return without_lag(made, signal.description) if signal.role not in SLOW_ROLES else made
+    return without_lag(upright(made), signal.description) if signal.role not in SLOW_ROLES else made
 
 
 def as_recorded(signal: Signal, *, start_s: float, stop_s: float) -> Activity:
