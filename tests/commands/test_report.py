@@ -4,16 +4,18 @@ from __future__ import annotations
 
 import re
 import shutil
-import subprocess
 from pathlib import Path
+from urllib.parse import unquote
 
+import numpy as np
 import pytest
+from pypdf import PdfReader
 
+from tests.commands.browser import CHROMIUM, look
 from tests.commands.program import rows_of, run
+from tests.layouts import new_file, write
 from unitclass.io.decisions import DecisionStore
 from unitclass.io.resolver import samples_folder
-
-CHROMIUM = shutil.which("chromium") or shutil.which("chromium-browser")
 
 
 @pytest.fixture(scope="module")
@@ -82,7 +84,72 @@ def test_labels_with_reviewer_and_note_stand_in_the_page_and_text_is_escaped(tmp
     assert "no unit was judged by two people" not in index
 
 
-def test_one_cycle_no_units_and_an_existing_or_unwritable_target(tmp_path, report):
+def tiny_session(path: Path, *, bursts_s: tuple[float, ...], trains: tuple[tuple[float, ...], ...]) -> Path:
+    """Write a raw phrenic of 30 s with a burst of 1 s at each of the times, and units with the trains given."""
+    from pynwb import TimeSeries
+
+    rng = np.random.default_rng(4)
+    time_s = np.arange(60_000) / 2000.0
+    nerve = rng.normal(0, 2e-6, time_s.size)
+    for start in bursts_s:
+        inside = (time_s >= start) & (time_s < start + 1.0)
+        nerve[inside] += rng.normal(0, 3e-5, inside.sum()) * (time_s[inside] - start + 0.2)
+    nwb = new_file("tiny <b>rig</b>")
+    nwb.add_acquisition(TimeSeries("phrenic", nerve, "V", rate=2000.0, description="raw phrenic nerve"))
+    for train in trains:
+        nwb.add_unit(spike_times=list(train))
+    nwb.add_epoch(0.0, 30.0, ["<img src=x>"])
+    return write(nwb, path)
+
+
+@pytest.mark.parametrize("bursts_s", [(5.0, 9.0), tuple(np.arange(1.0, 28.0, 3.0))])
+def test_a_session_of_one_cycle_and_a_unit_without_spikes_have_a_page(tmp_path, bursts_s):
+    trains = ((), (5.5, 6.0, 9.3))
+    path = tiny_session(tmp_path / "tiny #1.nwb", bursts_s=bursts_s, trains=trains)
+    ran = run("report", path, "--out", tmp_path / "out", "--unit", "all", "--format", "svg", "--quiet")
+    assert ran.code == 0, ran.err
+    page = (tmp_path / "out" / "tiny #1.html").read_text(encoding="utf-8")
+    assert page.count('<article class="unit">') == len(trains)
+    assert "<b>rig" not in page
+    assert "<img" not in page
+    links = re.findall(r'href="(figures/[^"]+)"', page)
+    assert links
+    assert all((tmp_path / "out" / unquote(link)).exists() for link in links)
+    index = (tmp_path / "out" / "index.html").read_text(encoding="utf-8")
+    assert 'href="tiny%20%231.html"' in index
+
+
+def test_a_session_without_units_is_one_line(tmp_path):
+    path = tiny_session(tmp_path / "none.nwb", bursts_s=(5.0, 9.0, 13.0), trains=())
+    ran = run("report", path, "--out", tmp_path / "out", "--quiet")
+    assert ran.code == 3
+    assert "none.nwb: holds no units" in ran.err
+
+
+def test_full_figures_are_linked_from_their_unit_and_a_unit_that_no_session_has_is_said(report, tmp_path):
+    page = (report / "bramble-pons-removed.html").read_text(encoding="utf-8")
+    card = next(part for part in page.split("<article")[1:] if ">unit 5<" in part)
+    assert 'href="figures/bramble-pons-removed-baseline-unit-5.pdf"' in card
+    ran = run("report", samples_folder() / "tansy-cell-a.nwb", "--out", tmp_path, "--unit", "77", "--format", "svg",
+              "--quiet")
+    assert ran.code == 1
+    assert "no unit 77" in ran.err
+
+
+def test_cycle_detection_of_a_stretch_has_its_tags_and_an_empty_stretch_is_refused(tmp_path):
+    session = samples_folder() / "bramble-pons-removed.nwb"
+    assert run("report", session, "--out", tmp_path, "--stretch", "40", "75", "--format", "pdf", "--quiet").code == 0
+    figure = tmp_path / "figures" / "bramble-pons-removed-baseline-cycles-40-75.pdf"
+    words = PdfReader(figure).pages[0].extract_text()
+    assert "after a sigh" in words
+    assert "excluded" in words
+    assert not list(tmp_path.glob("figures/*pons_removed-cycles-40-75*"))  # lies in the other condition
+    refused = run("report", session, "--out", tmp_path / "other", "--stretch", "75", "40", "--quiet")
+    assert refused.code == 2
+    assert "does not end after it starts" in refused.err
+
+
+def test_an_existing_or_unwritable_target_and_nothing_readable(tmp_path, report):
     again = run("report", samples_folder() / "tansy-cell-a.nwb", "--out", report, "--quiet")
     assert again.code == 1
     assert "exists already" in again.err
@@ -95,21 +162,21 @@ def test_one_cycle_no_units_and_an_existing_or_unwritable_target(tmp_path, repor
 @pytest.mark.skipif(CHROMIUM is None, reason="no chromium on this machine")
 @pytest.mark.parametrize("width", [390, 1280])
 @pytest.mark.parametrize("page", ["index.html", "bramble-pons-removed.html"])
-def test_a_real_browser_shows_the_page_without_errors_and_nothing_wider_than_the_window(report, page, width, tmp_path):
-    probe = tmp_path / "probe.html"
-    probe.write_text((report / page).read_text(encoding="utf-8").replace("</body>", (
-        "<script>const root = document.documentElement; document.title = JSON.stringify({wide: root.scrollWidth, "
-        "window: window.innerWidth, svg: [...document.querySelectorAll('svg')].filter(s => s.getBoundingClientRect()"
-        ".height > 5).length, all: document.querySelectorAll('svg').length})</script></body>")), encoding="utf-8")
-    ran = subprocess.run(
-        [str(CHROMIUM), "--headless", "--no-sandbox", "--disable-gpu", "--enable-logging=stderr",
-         f"--window-size={width},900", "--dump-dom", probe.as_uri()],
-        capture_output=True, text=True, timeout=90, check=False)
-    assert ran.returncode == 0
-    assert "CONSOLE" not in ran.stderr
-    told = re.search(r'<title>\{"wide":(\d+),"window":(\d+),"svg":(\d+),"all":(\d+)\}</title>',
-                     ran.stdout.replace("&quot;", '"'))
-    assert told, ran.stdout[:300]
-    wide, window, shown, every = map(int, told.groups())
-    assert wide <= window
-    assert shown == every > 0
+def test_a_real_browser_shows_the_page_without_errors_or_requests_and_nothing_wider_than_the_window(report, page, width):
+    seen = look(report, page, width)
+    assert seen.requests == [f"127.0.0.1/{page}"]
+    assert seen.console == []
+    assert seen.wide <= seen.window == width
+    assert seen.pictures_seen == seen.pictures > 0
+
+
+@pytest.mark.skipif(CHROMIUM is None, reason="no chromium on this machine")
+def test_the_look_through_the_browser_notices_requests_errors_and_width(tmp_path):
+    (tmp_path / "bad.html").write_text(
+        '<!doctype html><link rel="icon" href="data:,"><img src="near.png"><img src="http://elsewhere.example/far.png">'
+        '<div style="width:700px">wide</div><svg height="0"></svg><script>console.error("no")</script>')
+    seen = look(tmp_path, "bad.html", 390)
+    assert sorted(seen.requests) == ["127.0.0.1/bad.html", "127.0.0.1/near.png", "elsewhere.example/far.png"]
+    assert seen.console
+    assert seen.wide > seen.window == 390
+    assert seen.pictures_seen < seen.pictures

@@ -10,13 +10,14 @@ import numpy as np
 import pytest
 from pypdf import PdfReader
 
-from tests.results import session_result
+from tests.results import nerve_cycles, session_result
 from unitclass.analysis.changes import type_changes
 from unitclass.batch import Plan, analyse_file, read_planned
 from unitclass.io.resolver import samples_folder
 from unitclass.io.template_files import read_library
-from unitclass.records import Cycles, Recording, SessionResult
+from unitclass.records import ArrayChunks, Cycles, Recording, SessionResult, Signal
 from unitclass.report.counts import TypedUnit, type_counts
+from unitclass.report.making import safe_name
 from unitclass.report.saving import Drawn, as_svg, save
 from unitclass.report.session_figures import (
     changes_figure,
@@ -24,6 +25,7 @@ from unitclass.report.session_figures import (
     counts_figure,
     cycles_figure,
     population_figure,
+    tag_of,
 )
 from unitclass.report.stretch import usual_stretch
 from unitclass.report.style import nice_length, quantity
@@ -136,3 +138,31 @@ def test_a_usual_stretch_is_of_consecutive_cycles_in_use():
 def test_scale_bars_carry_a_round_length_with_its_unit(value, unit, words):
     assert quantity(value, unit) == words
     assert [nice_length(span) for span in (10, 33, 0.7)] == pytest.approx([2, 5, 0.1])
+
+
+def test_cycles_in_a_row_share_one_tag_and_every_odd_cycle_has_one():
+    plain = Cycles.plain(np.arange(6.0), np.arange(6.0) + 0.4, np.arange(6.0) + 1)
+    cycles = replace(plain, accepted=np.array([True, False, False, True, False, True]),
+                     kind=("breath", "sigh", "breath", "breath", "breath", "doublet"),
+                     reason=("", "sigh: 2.0 x the usual", "after a sigh", "", "", ""))
+    assert [tag_of(cycles, i) for i in range(6)] == ["", "sigh", "after a sigh", "", "not used", "doublet"]
+    run = replace(plain, accepted=np.zeros(6, bool), reason=("excluded: nerve moistened",) * 6)
+    condition = session_result().conditions[0]
+    condition = replace(condition, nerve_cycles=replace(condition.nerve_cycles, cycles=run))
+    recording = Recording("a.nwb", "a", "a", "a", "heron", 0.0, 60.0, nerves=(ramps(),))
+    svg = as_svg(cycles_figure(recording, condition, (0.0, 6.0)))
+    assert svg.count(">excluded<") == 1
+
+
+def ramps() -> Signal:
+    envelope = nerve_cycles().envelopes[0]
+    return Signal(name="PNA", role="phrenic", unit="V", rate_hz=envelope.rate_hz, start_s=0.0,
+                  stop_s=envelope.values.size / envelope.rate_hz, is_integrated=True, form_reason="made so",
+                  location="/acquisition/PNA", reason="made so",
+                  reader=ArrayChunks(envelope.values.astype(float), envelope.rate_hz))
+
+
+def test_names_that_a_file_system_cannot_take_do_not_meet():
+    assert safe_name("aug-E 12") == "aug-E_12"
+    assert len({safe_name(name) for name in ("1/2", "1:2", "1_2", "x" * 70, "x" * 71)}) == 5
+    assert all("/" not in safe_name(name) and len(safe_name(name)) < 70 for name in ("../../etc", "a/b" * 40))

@@ -131,7 +131,7 @@ def _session_figures(session: Session, order: Sequence[str], wanted: Wanted) -> 
         for name in dict.fromkeys(unit.unit for _, unit in session.result.units()):
             if wanted.wants(name):
                 mine = [unit for _, unit in session.result.units() if unit.unit == name]
-                yield f"unit-{_safe(name)}-conditions", conditions_figure(mine, session.labels)
+                yield f"unit-{safe_name(name)}-conditions", conditions_figure(mine, session.labels)
 
 
 def steps_of(changes: Sequence[TypeChange]) -> tuple[tuple[str, str], ...]:
@@ -145,16 +145,16 @@ def _unit_figures(session: Session, wanted: Wanted) -> Iterator[tuple[tuple[str,
         for unit in condition.units:
             if wanted.wants(unit.unit):
                 drawn = unit_figure(Shown(session.recording, condition, unit, session.labels.get(unit.key)))
-                yield unit.key, save(drawn, _stem(session, wanted, condition, f"unit-{_safe(unit.unit)}"), wanted.formats,
-                                     force=wanted.force)
+                stem = _stem(session, wanted, condition, f"unit-{safe_name(unit.unit)}")
+                yield unit.key, save(drawn, stem, wanted.formats, force=wanted.force)
 
 
 def _stem(session: Session, wanted: Wanted, condition: ConditionResult, name: str) -> Path:
-    where = f"-{_safe(condition.condition.name)}" if condition.condition.name else ""
+    where = f"-{safe_name(condition.condition.name)}" if condition.condition.name else ""
     return wanted.folder / FIGURES / f"{session.stem}{where}-{name}"
 
 
-def _safe(name: str) -> str:
+def safe_name(name: str) -> str:
     """Return a name that any file system takes; one that had to be changed ends in a digest, so that none meet."""
     plain = "".join(c if c.isalnum() or c in "-_." else "_" for c in name)[:60]
     if plain == name.replace(" ", "_"):
