@@ -40,9 +40,9 @@ class SpikeTimes:
         stamp = os.stat(self.path) if os.path.exists(self.path) else None
         version = (stamp.st_mtime_ns, stamp.st_size) if stamp else (0, 0)
         places = range(self.first // BLOCK, (self.stop - 1) // BLOCK + 1)
-        whole = np.concatenate([_block(self.path, version, self.dataset, place) for place in places])
-        skip = self.first - places.start * BLOCK
-        times = whole[skip : skip + self.stop - self.first]
+        parts = [_block(self.path, version, self.dataset, place)[max(0, self.first - place * BLOCK):
+                                                                self.stop - place * BLOCK] for place in places]
+        times = parts[0] if len(parts) == 1 else np.concatenate(parts)
         times = times[np.isfinite(times)]
         return times if np.all(times[1:] >= times[:-1]) else np.sort(times)
 

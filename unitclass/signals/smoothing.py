@@ -74,5 +74,8 @@ def _window_sum(values: FloatArray, half: int) -> FloatArray:
 
 
 def _window_length(n: int, half: int) -> FloatArray:
-    at = np.arange(n)
-    return (np.minimum(at + half + 1, n) - np.maximum(at - half, 0)).astype(float)
+    length = np.full(n, min(2 * half + 1, n), dtype=float)
+    at = np.arange(min(half, n))  # windows are cut at the ends only
+    length[: at.size] = np.minimum(at + half + 1, n)
+    length[n - at.size :] = np.minimum(length[n - at.size :], np.minimum(at + half + 1, n)[::-1])
+    return length
