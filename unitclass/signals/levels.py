@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
-
 import numpy as np
 
 from unitclass.records import BoolArray, FloatArray
@@ -37,18 +35,18 @@ def restored(level: FloatArray | float, floor: FloatArray | float, is_power: boo
 
 def first_floor(trace: FloatArray, rate_hz: float) -> FloatArray:
     """Return a running low percentile of a smoothed trace, shape (n_samples,): a first guess."""
-    return _windowed(trace, rate_hz, FLOOR_WINDOW_S, lambda part: float(np.percentile(part, FLOOR_PERCENT)))
+    return _windowed(trace, rate_hz, FLOOR_WINDOW_S, FLOOR_PERCENT / 100)
 
 
 def first_peak(trace: FloatArray, rate_hz: float) -> FloatArray:
     """Return the running maximum of a trace over windows that hold at least one burst each."""
-    return _windowed(trace, rate_hz, PEAK_WINDOW_S, lambda part: float(np.max(part)), neighbours=7)
+    return _windowed(trace, rate_hz, PEAK_WINDOW_S, 1.0, neighbours=7)
 
 
 def floor_between(trace: FloatArray, in_burst: BoolArray, rate_hz: float, window_s: float) -> FloatArray:
     """Return the running median of a trace outside its bursts, shape (n_samples,)."""
     quiet = np.where(in_burst, np.nan, trace)
-    return _windowed(quiet, rate_hz, window_s, lambda part: float(np.median(part)), with_ends=True)
+    return _windowed(quiet, rate_hz, window_s, 0.5, with_ends=True)
 
 
 def running_median(values: FloatArray, n: int) -> FloatArray:
@@ -65,30 +63,39 @@ def running_median(values: FloatArray, n: int) -> FloatArray:
                            [np.median(values[-k:]) for k in reversed(reach)]])
 
 
-def _windowed(trace: FloatArray, rate_hz: float, window_s: float, statistic: Callable[[FloatArray], float],
-              neighbours: int = 3, *, with_ends: bool = False) -> FloatArray:
-    """Return a statistic of half-overlapping windows, read off between their centres.
+def _windowed(trace: FloatArray, rate_hz: float, window_s: float, share: float, neighbours: int = 3, *,
+              with_ends: bool = False) -> FloatArray:
+    """Return the quantile `share` of half-overlapping windows, read off between their centres.
 
     Beyond the outermost centres it stays as it is there or, `with_ends`, follows windows of half the
     length: a drift does not stop before the recording does.
     """
+    if not trace.size:
+        return trace
     step = max(1, int(rate_hz // COARSE_HZ))
     coarse = trace[::step]
     width = max(4, round(window_s * rate_hz / step))
     n_windows = max(1, round(2 * coarse.size / width) - 1)
     starts = np.linspace(0, max(0, coarse.size - width), n_windows).astype(int)
-    found = np.array([_of_finite(coarse[start : start + width], statistic, width) for start in starts])
+    windows = coarse[starts[:, None] + np.arange(min(width, coarse.size))]
+    found = _quantile(windows, share, width)
     smooth = running_median(filled(found), neighbours) if n_windows > 2 else filled(found)
     centres = (starts + min(width, coarse.size) / 2) * step
     if with_ends and n_windows > 2:
         half = width // 2
-        ends = [_of_finite(part, statistic, width) for part in (coarse[:half], coarse[-half:])]
+        ends = _quantile(np.stack([coarse[:half], coarse[-half:]]), share, width)
         smooth = np.concatenate([[ends[0]], smooth, [ends[1]]])
         centres = np.concatenate([[half / 2 * step], centres, [(coarse.size - half / 2) * step]])
         smooth = filled(smooth)
     return np.interp(np.arange(trace.size), centres, smooth)
 
 
-def _of_finite(part: FloatArray, statistic: Callable[[FloatArray], float], width: int) -> float:
-    finite = part[np.isfinite(part)]
-    return statistic(finite) if finite.size >= min(4, width // 8) else np.nan
+def _quantile(windows: FloatArray, share: float, width: int) -> FloatArray:
+    """Return the quantile of the finite values of each row, linear between ranks; NaN where they are too few."""
+    ordered = np.sort(np.where(np.isfinite(windows), windows, np.nan), axis=1)  # NaN comes last
+    n_finite = np.count_nonzero(np.isfinite(ordered), axis=1)
+    place = share * np.maximum(n_finite - 1, 0)
+    below = np.floor(place).astype(int)
+    rows = np.arange(len(ordered))
+    low, high = ordered[rows, below], ordered[rows, np.ceil(place).astype(int)]
+    return np.where(n_finite >= min(4, width // 8), low + (place - below) * (high - low), np.nan)
