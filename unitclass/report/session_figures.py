@@ -41,6 +41,7 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
 
 LabelsOf = Mapping[tuple[str, str], Label]
+NERVE_MM = 16
 LEAST_MM = 1.6  # the height of rows that have room for their type's name
 
 
@@ -142,15 +143,16 @@ def population_figure(condition: ConditionResult, labels: LabelsOf, order: Seque
     """Return every unit's profile as one row, grouped by type, within it by the phase of its peak."""
     units = _sorted_units(condition.units, labels, order)
     with drawing():
-        figure = new_figure(TWO_COLUMNS, (38 + min(2.6 * len(units), 192)) * MM)
-        nerve, heat = figure.subplots(2, 1, sharex=True, height_ratios=(1, max(1.5, len(units) / 6)))
+        rows_mm = min(max(2.6 * len(units), 14), 192)
+        figure = new_figure(TWO_COLUMNS, (NERVE_MM + 22 + rows_mm) * MM)
+        nerve, heat = figure.subplots(2, 1, sharex=True, height_ratios=(NERVE_MM, rows_mm))
         _draw_nerves(nerve, condition)
         table = _scaled(units)
         if len(units):
             image = heat.imshow(doubled_rows(table), aspect="auto", extent=(0, 4, len(units), 0), cmap="Greys",
                                 vmin=0, vmax=1, interpolation="nearest")
-            bar = figure.colorbar(image, ax=[nerve, heat], shrink=0.6, location="right", pad=0.01,
-                                  ticks=[0, 1])
+            bar = figure.colorbar(image, ax=[nerve, heat], shrink=min(0.6, 30 / (NERVE_MM + rows_mm)),
+                                  location="right", pad=0.01, fraction=0.03, aspect=12, anchor=(0.0, 0.5), ticks=[0, 1])
             bar.ax.set_yticklabels(["0", "peak"])
             bar.set_label("rate")
             _type_brackets(heat, [type_of(u, labels) for u in units])

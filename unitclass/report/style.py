@@ -54,9 +54,10 @@ def settle(figure: Figure) -> None:
     The layout's solver leaves the last bits of a position to chance, and SVG names its clips by them:
     rounded, the same numbers give the same file.
     """
-    if type(figure.get_layout_engine()).__name__ != "ConstrainedLayoutEngine":
+    engine = figure.get_layout_engine()
+    if type(engine).__name__ != "ConstrainedLayoutEngine":
         return  # laid out before
-    figure.draw_without_rendering()
+    engine.execute(figure)  # type: ignore[union-attr]  # what a first drawing would do, without drawing
     figure.set_layout_engine("none")
     for axes in figure.axes:
         x, y, width, height = (round(float(v), 5) for v in axes.get_position().bounds)

@@ -233,14 +233,18 @@ def _draw_histogram(axes: Axes, shown: Shown, *, with_words: bool) -> None:
 
 
 def _draw_locked(unit: UnitResult, figure: Figure, place: SubplotSpec) -> None:
-    shown = unit.locked[:2]
+    shown = [locked for locked in unit.locked[:2] if locked.centres_ms.size]
     if not shown:
         return
     grid = place.subgridspec(len(shown), 1, hspace=0.1)
     for i, locked in enumerate(shown):
         axes = figure.add_subplot(grid[i])
         width = float(np.median(np.diff(locked.centres_ms))) if locked.centres_ms.size > 1 else 1.0
-        axes.bar(locked.centres_ms, np.nan_to_num(locked.rate_hz), width=width, color=PALE, edgecolor=FIRING, linewidth=0.3)
+        borders = np.r_[locked.centres_ms - width / 2, locked.centres_ms[-1:] + width / 2]
+        axes.stairs(np.nan_to_num(locked.rate_hz), borders, fill=True, color=PALE)
+        axes.stairs(np.nan_to_num(locked.rate_hz), borders, color=FIRING, linewidth=0.7)
+        axes.set_xlim(borders[0], borders[-1])
+        axes.set_ylim(bottom=0)
         axes.axvline(0, color=MARK, linewidth=0.9)
         axes.set_xlabel(f"time from {LOCKS.get(locked.lock, locked.lock)} (ms)")
         axes.set_ylabel("rate (spikes/s)")
