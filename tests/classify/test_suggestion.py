@@ -131,7 +131,7 @@ def test_a_temperature_over_one_flattens_the_probabilities():
 
 # ------------------------------------------------------------------- membrane potential
 
-POST_I = MembraneLevels({"early I": -7.0, "late I": -7.0, "post-I": 6.0, "E2": 1.0},
+POST_I = MembraneLevels({"early I": -7.0, "late I": -7.0, "post-I": 6.0, "E2": -2.0},
                         {"early I": 0.5, "late I": 0.5, "post-I": 0.5, "E2": 0.5})
 
 

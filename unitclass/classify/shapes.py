@@ -92,7 +92,7 @@ def cosine(p: Parameters, phase: FloatArray) -> FloatArray:
 
     `depth` is (max - min)/(max + min). A third of the draws step at the transitions themselves.
     """
-    is_step = p["step"] < 0.33
+    is_step = p["step"] < 0.2
     at = np.where(is_step, np.where(p["at"] < 1.0, 0.5, 1.5), p["at"])
     angle = np.pi * (phase - at)
     wave = np.cos(angle) + p["harmonic"] * np.cos(2 * angle + np.pi * at)
