@@ -42,7 +42,8 @@ def main(argv: Sequence[str] | None = None) -> int:
         print(f"unitclass: {error}", file=sys.stderr)
         return error.exit_code
     except KeyboardInterrupt:
-        print("unitclass: interrupted; results that were finished are whole", file=sys.stderr)
+        print("unitclass: interrupted; what was finished is whole, and the same command goes on from there",
+              file=sys.stderr)
         return INTERRUPTED
     except BrokenPipeError:
         # The reader of a pipe went away (`| head`): not an error. Python would complain at exit.

@@ -27,7 +27,8 @@ def progress(n_steps: int, *, quiet: bool) -> Iterator[Step]:
 
     columns = (TextColumn("{task.description}", markup=False), BarColumn(), MofNCompleteColumn(),
                TimeRemainingColumn())
-    with Progress(*columns, console=Console(stderr=True), transient=True) as bar:
+    # Lines printed meanwhile go above the bar; what is piped away goes where it is piped.
+    with Progress(*columns, console=Console(stderr=True), transient=True, redirect_stdout=sys.stdout.isatty()) as bar:
         task = bar.add_task("reading", total=n_steps)
 
         def step(name: str) -> None:
