@@ -13,6 +13,8 @@ from unitclass.settings import Settings
 HALVES_R = 0.5  # histograms of odd and even cycles that agree less than this are unsteady
 MUCH_DRIFT = 0.5  # of the mean rate, from the first third to the last
 UNSURE = 0.6
+MUCH_FOREIGN = 0.25  # sorting always leaves some foreign spikes: common practice
+LEAST_VIOLATIONS = 3
 
 
 def unit_flags(profile: UnitProfile, suggestion: Suggestion, cell: Cell, settings: Settings) -> tuple[str, ...]:
@@ -21,9 +23,10 @@ def unit_flags(profile: UnitProfile, suggestion: Suggestion, cell: Cell, setting
     flags = []
     if profile.histogram.n_cycles < floor.few_cycles:
         flags.append(f"few cycles ({profile.histogram.n_cycles})")
-    if f.refractory_violations > floor.max_violations:
+    foreign = foreign_share(profile, floor.refractory_ms)
+    if f.refractory_violations > floor.max_violations or foreign > MUCH_FOREIGN:
         flags.append(f"{100 * f.refractory_violations:.1f} % of intervals under {floor.refractory_ms:g} ms: "
-                     "perhaps not one cell")
+                     f"perhaps not one cell{_foreign_words(foreign)}")
     if suggestion.probabilities:
         flags += _suggestion_flags(profile, suggestion, settings)
     if np.isfinite(f.drift) and abs(f.drift) > MUCH_DRIFT:
@@ -33,6 +36,35 @@ def unit_flags(profile: UnitProfile, suggestion: Suggestion, cell: Cell, setting
     if suggestion.type == NOT_MODULATED and not m.depth_high <= settings.classify.nrm_depth:
         flags.append("depth of modulation not bounded")
     return tuple(flags)
+
+
+def foreign_share(profile: UnitProfile, refractory_ms: float) -> float:
+    """Return the share of spikes that another cell would have to fire to make the refractory violations seen.
+
+    Two trains that know nothing of each other, f of the spikes from the lesser, break the refractory
+    period in 2 f (1 - f) rate x period of the intervals [1]_; the rate is that at the time of a spike, since
+    cells fire in bursts. Fewer than three violations tell nothing: 0.
+
+    References
+    ----------
+    .. [1] D. N. Hill, S. B. Mehta, D. Kleinfeld, "Quality metrics to accompany spike sorting of
+       extracellular signals", J Neurosci 31:8699, 2011.
+    """
+    h, violations = profile.histogram, profile.features.refractory_violations
+    if not np.isfinite(violations) or violations * h.n_spikes < LEAST_VIOLATIONS:
+        return 0.0
+    seen = h.exposure_s > 0
+    rate_hz = float(np.sum(h.counts[seen] ** 2 / h.exposure_s[seen]) / max(h.counts.sum(), 1))
+    mixed = 2 * violations / max(rate_hz * refractory_ms / 1e3, 1e-12)
+    return 0.5 if mixed >= 1 else 0.5 * (1 - float(np.sqrt(1 - mixed)))
+
+
+def _foreign_words(share: float) -> str:
+    if share <= MUCH_FOREIGN:
+        return ""
+    if share >= 0.5:
+        return ", as if it were two mixed half and half"
+    return f", as if {100 * share:.0f} % of the spikes were another's"
 
 
 def _suggestion_flags(profile: UnitProfile, suggestion: Suggestion, settings: Settings) -> list[str]:
