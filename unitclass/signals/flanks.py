@@ -115,10 +115,23 @@ def _on_average(flank: _Flank, *, allow_knee: bool) -> tuple[float, int, bool]:
         trace = boxcar(flank.strength, width)
         steep = crossed(trace, _inside(flank, trace), flank.level(STEEP), -1)
         shelf = crossed(trace, int(np.ceil(steep)), flank.level(SHELF), -1)
-        at = crossed(trace, int(np.ceil(shelf)), flank.level(EDGE), -1)
+        at = crossed(trace, int(np.ceil(shelf)), flank.level(EDGE) + _raised(trace, at, width, flank), -1)
         width = max(3, round(min(0.6 * (shelf - at), 3 * (steep - shelf), 0.15 * flank.usual))) | 1
     knee = _knee(flank, at) if allow_knee else None
     return (at, width, False) if knee is None else (knee, width, True)
+
+
+def _raised(trace: FloatArray, at: float, width: int, flank: _Flank) -> float:
+    """Return by how much smoothing lifts the trace near the edge: a curved foot is not its own mean.
+
+    A moving average of n samples adds n² / 24 times the second derivative; a burst that begins
+    gently, the more so in power, would be found early without this.
+    """
+    k = round(at)
+    if not width <= k < trace.size - width:
+        return 0.0
+    bend = trace[k + width] - 2 * trace[k] + trace[k - width]
+    return float(np.clip(bend / 24, 0.0, 0.5 * flank.level(EDGE)))
 
 
 def _knee(flank: _Flank, at: float) -> float | None:

@@ -79,7 +79,9 @@ def heard_lag(made: Activity, description: str = "") -> Lag | None:
     quiet = quiet_floor(made.values, made.rate_hz)
     steady = boxcar(made.values, round(RIPPLE_S * made.rate_hz))
     slow = boxcar(np.where(quiet, steady, np.nan), round(DRIFT_S * made.rate_hz))
-    tau_s = integrator_tau_s(variogram(steady - slow, quiet, made.rate_hz, longest_s=VARIOGRAM_S))
+    width = round(RIPPLE_S * made.rate_hz)
+    tau_s = integrator_tau_s(variogram(steady - slow, quiet, made.rate_hz, longest_s=VARIOGRAM_S),
+                             averaged_s=width / made.rate_hz if width > 1 else 0.0)
     if not SHORTEST_S <= tau_s <= LONGEST_S:
         return None
     return Lag(tau_s, f"the floor's noise is that of a leaky integrator with a time constant of {1e3 * tau_s:.0f} ms: "

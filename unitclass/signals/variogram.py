@@ -19,8 +19,9 @@ from unitclass.signals.smoothing import smooth, widened
 TAU_S = (0.008, 0.4)
 MIN_PAIRS = 400
 SMOOTH_S = 0.1
-CLEAR_S = 0.15
-"""Kept clear of bursts on either side."""
+CLEAR_S = (0.4, 0.25, 0.15)
+"""Kept clear of bursts on either side, the longest that leaves enough: a burst's own decay is no noise."""
+ENOUGH_S = 8.0
 MIN_SHARE = 0.5
 """The correlated share of the floor's noise that makes an integrator worth believing in."""
 
@@ -40,7 +41,12 @@ def quiet_floor(values: FloatArray, rate_hz: float) -> BoolArray:
     floor, top = np.quantile(finite, [0.1, 0.98])
     with np.errstate(invalid="ignore"):
         loud = ~(trace < floor + 0.2 * (top - floor))
-    return ~widened(loud, round(CLEAR_S * rate_hz))
+    quiet = ~loud
+    for clear_s in CLEAR_S:
+        quiet = ~widened(loud, round(clear_s * rate_hz))
+        if quiet.sum() >= ENOUGH_S * rate_hz:
+            break
+    return quiet
 
 
 def variogram(values: FloatArray, quiet: BoolArray, rate_hz: float, *, longest_s: float) -> Variogram:
@@ -64,8 +70,20 @@ def _robust_power(values: FloatArray) -> float:
     return float(np.mean(power[power <= np.quantile(power, 0.95)])) / 0.759
 
 
-def integrator_tau_s(found: Variogram) -> float:
+def _averaged_rise(lag_s: FloatArray, tau_s: float, width_s: float) -> FloatArray:
+    """Return the variogram of leakily integrated noise after a moving average of `width_s`, variance 1 before it."""
+    def covariance(h: FloatArray) -> FloatArray:
+        gap = np.maximum(width_s - h, 0.0)
+        far = np.exp(-(h + width_s) / tau_s) + np.exp(-np.abs(h - width_s) / tau_s) - 2 * np.exp(-h / tau_s)
+        return (tau_s / width_s) ** 2 * (2 * gap / tau_s + far)
+
+    return np.asarray(covariance(np.zeros(1)) - covariance(lag_s))
+
+
+def integrator_tau_s(found: Variogram, averaged_s: float = 0.0) -> float:
     """Return the time constant of a leaky integrator, or NaN where the noise does not speak of one.
+
+    `averaged_s` is the moving average that the trace went through since, s.
 
     The exponential must explain the variogram better than a moving average (a straight rise to a
     corner) and than a smooth bell-shaped kernel (a parabola at the start). In a short recording
@@ -74,7 +92,8 @@ def integrator_tau_s(found: Variogram) -> float:
     """
     if found.lag_s.size < 6:
         return np.nan
-    tau, error, share = _best(found, lambda h, tau: 1 - np.exp(-h / tau))
+    rise = (lambda h, tau: _averaged_rise(h, tau, averaged_s)) if averaged_s else (lambda h, tau: 1 - np.exp(-h / tau))
+    tau, error, share = _best(found, rise)
     _, corner, _ = _best(found, lambda h, width: np.minimum(h / (2 * width), 1))
     _, bell, _ = _best(found, lambda h, width: 1 - np.exp(-((h / (1.5 * width)) ** 2)))
     total = float(np.sum((found.gamma - found.gamma.mean()) ** 2))
