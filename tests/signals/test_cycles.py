@@ -42,6 +42,15 @@ def test_at_a_signal_to_noise_of_six_onsets_and_offsets_are_within_15_ms(form, s
     assert np.median(np.abs(e.offset_ms)) < 15
 
 
+@pytest.mark.parametrize("shape", ["ramp", "square"])
+def test_heart_beats_smeared_by_an_integrator_are_cut_out_once_it_is_undone(shape):
+    truth, rng = drawn(shape=shape, n_cycles=40)
+    e = errors(truth, found_in(nerves.integrated(truth, replace(RIG, rate_hz=10000.0, trouble=("heart",)), rng)), 3.0)
+    assert e.f1 == 1.0
+    assert np.median(np.abs(e.onset_ms)) < 15
+    assert np.median(np.abs(e.offset_ms)) < 15
+
+
 @pytest.mark.parametrize("trouble", ["", "hum", "heart", "drift"])
 def test_at_a_signal_to_noise_of_two_they_are_within_40_ms(trouble):
     truth, rng = drawn(n_cycles=40)

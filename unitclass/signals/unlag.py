@@ -15,6 +15,7 @@ import numpy as np
 
 from unitclass.records import FloatArray
 from unitclass.signals.neurogram import Activity
+from unitclass.signals.rectified import is_rectified
 from unitclass.signals.smoothing import boxcar
 from unitclass.signals.variogram import integrator_tau_s, quiet_floor, variogram
 
@@ -50,14 +51,14 @@ def without_lag(made: Activity, description: str) -> Activity:
     """
     lag = stated_lag(description) or heard_lag(made, description) or seen_lag(made.values, made.rate_hz, description)
     if lag.tau_s * made.rate_hz < 0.5:
-        return replace(made, words=(*made.words, *((lag.words,) if lag.words else ())))
+        return replace(made, is_power=is_rectified(made.values, made.rate_hz),
+                       words=(*made.words, *((lag.words,) if lag.words else ())))
     keep = float(np.exp(-1.0 / (made.rate_hz * lag.tau_s)))
     before = np.concatenate([made.values[:1], made.values[:-1]])
     undone = (made.values - keep * before) / (1 - keep)
     # Each value is now the mean of the input since the sample before, hence half a sample earlier.
-    has_zero = bool(np.nanmin(made.values) >= 0.0)  # rectified: floor and burst then add as powers
-    return replace(made, values=undone, start_s=made.start_s - 0.5 / made.rate_hz, is_power=has_zero,
-                   words=(*made.words, lag.words))
+    return replace(made, values=undone, start_s=made.start_s - 0.5 / made.rate_hz,
+                   is_power=is_rectified(made.values, made.rate_hz), words=(*made.words, lag.words))
 
 
 def stated_lag(description: str) -> Lag | None:
