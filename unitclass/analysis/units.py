@@ -19,7 +19,7 @@ from unitclass.classify.suggestion import UnitFacts, suggest
 from unitclass.classify.templates import TypeLibrary
 from unitclass.classify.unit_counts import CountRow, count_row, stacked
 from unitclass.phase.multiple_testing import benjamini_hochberg
-from unitclass.phase.profiles import Train, UnitProfile, unit_profiles
+from unitclass.phase.profiles import CountedProfile, Train, UnitProfile, unit_profiles
 from unitclass.records import Cycles, Suggestion, UnitResult, VmProfile
 from unitclass.settings import Settings
 
@@ -83,12 +83,12 @@ def _seen(cells: Sequence[Cell], cycles: Cycles, settings: Settings, beats: Sequ
     seen = []
     for i, (cell, profile) in enumerate(zip(cells, profiles, strict=True)):
         potential = mean_potential(cell, cycles, settings)
-        seen.append(_Seen(cell, digests[i], profile, _row(profile), potential, membrane_levels(cell, potential, cycles),
-                          follows[i]))
+        levels = membrane_levels(cell, potential, cycles)
+        seen.append(_Seen(cell, digests[i], profile.without_counts(), _row(profile), potential, levels, follows[i]))
     return seen
 
 
-def _row(profile: UnitProfile) -> CountRow:
+def _row(profile: CountedProfile) -> CountRow:
     return count_row(profile.by_phase, profile.exposure.seconds, profile.modulation.eta_squared_p)
 
 

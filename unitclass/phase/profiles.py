@@ -29,22 +29,32 @@ Train = tuple[ArrayLike, ArrayLike | None]
 
 @dataclass(frozen=True)
 class UnitProfile:
-    """What the phase layer says of one unit in one condition.
-
-    `by_phase` (n_cycles, n_bins) and `exposure.seconds` of the same shape are what the classifier
-    counts on; units observed over the same time share one exposure.
-    """
+    """What the phase layer says of one unit in one condition."""
 
     histogram: PhaseHistogram
     locked: tuple[LockedHistogram, LockedHistogram]
     modulation: Modulation
     features: Features
     raster: Raster
+
+
+@dataclass(frozen=True)
+class CountedProfile(UnitProfile):
+    """The same with the counts of every cycle.
+
+    `by_phase` (n_cycles, n_bins) and `exposure.seconds` of the same shape are what the classifier
+    counts on; units observed over the same time share one exposure.
+    """
+
     by_phase: NDArray[np.float32]
     exposure: Exposure
 
+    def without_counts(self) -> UnitProfile:
+        """Return what stays when the counts have been used: they grow with the recording."""
+        return UnitProfile(self.histogram, self.locked, self.modulation, self.features, self.raster)
 
-def unit_profiles(trains: Iterable[Train], cycles: Cycles, *, settings: Settings, seed: int) -> Iterator[UnitProfile]:
+
+def unit_profiles(trains: Iterable[Train], cycles: Cycles, *, settings: Settings, seed: int) -> Iterator[CountedProfile]:
     """Yield the profile of each unit, in the order given.
 
     A unit's profile depends on its own spikes, the cycles, the settings and the seed only. Trains
@@ -104,14 +114,14 @@ def _frame(observed_s: ArrayLike | None, known: dict[bytes, _Frame], cycles: Cyc
 class _Draft:
     """A profile that waits for the null which units share."""
 
-    profile: UnitProfile
+    profile: CountedProfile
     by_fraction: NDArray[np.uint16]
 
 
 def _draft(times_s: ArrayLike, frame: _Frame, settings: Settings) -> _Draft:
     counts = count_cycles(times_s, frame.exposure, n_fractions=settings.modulation.n_fractions)
     histogram = histogram_of(counts, frame.resamples)
-    profile = UnitProfile(
+    profile = CountedProfile(
         histogram=histogram,
         locked=(locked_of(counts.time_s, frame.locked[0]), locked_of(counts.time_s, frame.locked[1])),
         modulation=described_modulation(counts, histogram, frame.resamples),
@@ -123,7 +133,7 @@ def _draft(times_s: ArrayLike, frame: _Frame, settings: Settings) -> _Draft:
     return _Draft(profile, counts.by_fraction)
 
 
-def _with_eta_squared(batch: list[_Draft], cycles: Cycles, settings: Settings, seed: int) -> Iterator[UnitProfile]:
+def _with_eta_squared(batch: list[_Draft], cycles: Cycles, settings: Settings, seed: int) -> Iterator[CountedProfile]:
     null = shift_null(np.stack([d.by_fraction for d in batch]), settings.modulation.n_shifts, seed,
                       cycle_s=cycles.ttot_s, used=np.stack([d.profile.exposure.is_whole for d in batch]))
     for row, draft in enumerate(batch):

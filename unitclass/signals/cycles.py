@@ -19,6 +19,7 @@ from unitclass.signals.summary import summarised
 from unitclass.signals.tags import Draft, drafted, edited, tagged
 
 N_THREADS = 2
+LONG_S = 3000.0
 
 
 def find_cycles(reference: Signal, others: Sequence[Signal], *, start_s: float, stop_s: float, settings: Settings,
@@ -53,9 +54,13 @@ def find_cycles(reference: Signal, others: Sequence[Signal], *, start_s: float, 
     SignalError
         When the nerve holds no usable sample here or no burst stands clear of its floor.
     """
-    # Nerves do not need each other until here, and reading and arithmetic let other threads run.
-    with ThreadPoolExecutor(N_THREADS) as pool:
+    # Nerves do not need each other until here, and reading and arithmetic let other threads run. The
+    # reference comes last: its traces stay, those of the others are let go.
+    is_long = stop_s - start_s > LONG_S
+    with ThreadPoolExecutor(1 if is_long else N_THREADS) as pool:
         looking = [pool.submit(_read_other, signal, settings, start_s, stop_s) for signal in others]
+        if is_long:
+            pool.shutdown()  # of long stretches one nerve at a time is in memory
         marks = find_marks(reference, settings, start_s=start_s, stop_s=stop_s, threshold_scale=_threshold_scale(edits))
         nerves, notes = _seen([future.result() for future in looking])
     draft = drafted(marks, stop_s)

@@ -18,7 +18,7 @@ from unitclass.signals.smoothing import boxcar
 
 
 @dataclass(frozen=True)
-class Marks:
+class BurstTimes:
     """Onset, offset and height of every burst of one nerve; arrays of shape (n_bursts,).
 
     `height` is the trace above its floor, in the nerve's unit. `is_cut_before`, `is_cut_after` tell
@@ -30,14 +30,24 @@ class Marks:
     height: FloatArray
     is_cut_before: BoolArray
     is_cut_after: BoolArray
-    fine: Activity
-    bursts: Bursts
-    has_after_discharge: bool
 
     @property
     def n_bursts(self) -> int:
         """Return the number of bursts."""
         return int(self.onset_s.size)
+
+
+@dataclass(frozen=True)
+class Marks(BurstTimes):
+    """The same with the activity and the traces on which the bursts were found."""
+
+    fine: Activity
+    bursts: Bursts
+    has_after_discharge: bool
+
+    def times(self) -> BurstTimes:
+        """Return the bursts without the traces, which are as long as the nerve itself."""
+        return BurstTimes(self.onset_s, self.offset_s, self.height, self.is_cut_before, self.is_cut_after)
 
 
 def find_marks(signal: Signal, settings: Settings, *, start_s: float, stop_s: float,

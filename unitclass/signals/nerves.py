@@ -10,7 +10,7 @@ from unitclass.errors import SignalError
 from unitclass.records import Cycles, FloatArray, IntArray, Signal
 from unitclass.settings import Settings
 from unitclass.signals.levels import excess, first_floor
-from unitclass.signals.marks import Marks, marks_of, peak_and_area, span_indices
+from unitclass.signals.marks import BurstTimes, marks_of, peak_and_area, span_indices
 from unitclass.signals.neurogram import Activity
 from unitclass.signals.smoothing import filled, smooth
 
@@ -22,7 +22,7 @@ class OtherNerve:
     """One more nerve of the same stretch: its activity, and its bursts where it has any."""
 
     fine: Activity
-    marks: Marks | None
+    marks: BurstTimes | None
     note: str = ""
 
 
@@ -38,7 +38,7 @@ class Coupling:
 def looked_at(fine: Activity, settings: Settings) -> OtherNerve:
     """Return a nerve's bursts, or why it has none."""
     try:
-        return OtherNerve(fine, marks_of(fine, settings))
+        return OtherNerve(fine, marks_of(fine, settings).times())
     except SignalError as error:
         return OtherNerve(fine, None, f"{fine.name}: {error.what}")
 
@@ -58,7 +58,7 @@ def measured(cycles: Cycles, nerve: OtherNerve, settings: Settings) -> Cycles:
     return out
 
 
-def lead_ms(cycles: Cycles, marks: Marks | None) -> FloatArray:
+def lead_ms(cycles: Cycles, marks: BurstTimes | None) -> FloatArray:
     """Return how long before the reference onset the nerve's burst begins, ms, shape (n_cycles,).
 
     The burst is the one whose onset lies nearest, within half an expiration before and one
@@ -140,7 +140,7 @@ def coupling(late: IntArray) -> Coupling:
     return Coupling(n, float((counts[n] + 1) / (intervals.size + 2)), share)
 
 
-def agreement(cycles: Cycles, marks: Marks | None) -> float:
+def agreement(cycles: Cycles, marks: BurstTimes | None) -> float:
     """Return the share of cycles in which the nerve bursts exactly once; NaN when it never does."""
     if marks is None or not cycles.n_cycles:
         return np.nan

@@ -21,7 +21,8 @@ from unitclass.signals.highpass import HighPass
 from unitclass.signals.mains import HumFit, find_hum
 from unitclass.signals.smoothing import boxcar, filled
 
-GRID_HZ = 500.0
+GRID_HZ, LEAST_GRID_HZ = 500.0, 125.0
+MOST_SAMPLES = 1_500_000  # 50 minutes at 500 Hz: longer stretches are kept coarser, so memory does not grow with them
 ENVELOPE_HZ = 250.0
 WARM_UP_S = 0.25
 RECURSION = 64
@@ -102,6 +103,14 @@ def activity(signal: Signal, settings: NerveSettings, *, start_s: float, stop_s:
     return without_lag(upright(made), signal.description) if signal.role not in SLOW_ROLES else made
 
 
+def grid_hz(stretch_s: float) -> float:
+    """Return the rate at which the activity of a stretch is kept: 500 Hz, halved for hours."""
+    rate_hz = GRID_HZ
+    while rate_hz > LEAST_GRID_HZ and stretch_s * rate_hz > MOST_SAMPLES:
+        rate_hz /= 2
+    return rate_hz
+
+
 def as_recorded(signal: Signal, *, start_s: float, stop_s: float) -> Activity:
     """Return a stretch as it was recorded, averaged down to about 500 Hz, neither filtered nor rectified.
 
@@ -169,7 +178,7 @@ def _recursed(values: FloatArray, keep: float) -> FloatArray:
 def _rectified(signal: Signal, settings: NerveSettings, start_s: float, stop_s: float) -> Activity:
     low_hz, high_hz = _band(signal.rate_hz, settings)
     coarse = decimated(signal, high_hz)
-    block = max(1, round(coarse.rate_hz / GRID_HZ))
+    block = max(1, round(coarse.rate_hz / grid_hz(stop_s - start_s)))
     warm_up = int(min(WARM_UP_S, start_s - signal.start_s) * coarse.rate_hz / block)
     from_s = start_s - warm_up * block / coarse.rate_hz
     hum = find_hum(coarse, start_s=start_s, stop_s=stop_s, low_hz=low_hz, high_hz=0.45 * coarse.rate_hz)
@@ -220,7 +229,7 @@ def _held(values: FloatArray, missing: np.ndarray, last: float) -> FloatArray:
 # ------------------------------------------------------------------------------ integrated
 
 def _stored(signal: Signal, start_s: float, stop_s: float) -> Activity:
-    block = max(1, round(signal.rate_hz / GRID_HZ))
+    block = max(1, round(signal.rate_hz / grid_hz(stop_s - start_s)))
     origin_s, parts = start_s, []
     for frame in frames(signal, start_s=start_s, stop_s=stop_s, multiple=block):
         origin_s = frame.origin_s
