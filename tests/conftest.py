@@ -2,10 +2,17 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
+
+from unitclass.__main__ import ONE_THREAD
+
+# As the program does, before numpy is loaded: this process and its workers then add up in the same order.
+for _name in ONE_THREAD:
+    os.environ.setdefault(_name, "1")
 
 
 @pytest.fixture(scope="session", autouse=True)

@@ -79,6 +79,16 @@ def test_with_one_of_two_workers_killed_the_cluster_gives_what_this_process_give
     assert got == expected
 
 
+def test_files_named_by_a_short_path_are_found_by_workers_elsewhere_and_keep_that_name(cluster, archive, monkeypatch):
+    monkeypatch.chdir(Path(archive[0]).parent)
+    names = [Path(archive[0]).name, "not-there.nwb"]
+    with runner_for(2, scheduler=cluster.address) as runner:
+        good, bad = analyse_files(names, PLAN, runner)
+    assert good.result is not None
+    assert (good.path, good.result.path) == (names[0], names[0])
+    assert bad.problem.startswith("not-there.nwb: ")
+
+
 def test_a_scheduler_that_goes_away_is_one_line_and_what_was_finished_is_kept(cluster, archive, tmp_path):
     from unitclass.io.result_cache import ResultCache
 

@@ -148,7 +148,7 @@ def _begin(path: str, plan: Plan, runner: Runner, cache: ResultCache | None) -> 
         found = cache.find(path, plan.key, edits_digest_of=lambda *names: edits_digest(plan, *names))
         if found is not None:
             return _Begun(path, stamp, known=Outcome(path, found.session_result(), is_kept=True))
-    return _Begun(path, stamp, task=runner.submit(analyse_file, path, plan))
+    return _Begun(path, stamp, task=runner.submit(analyse_file, runner.path_there(path), plan))
 
 
 def _finished(one: _Begun, plan: Plan, runner: Runner, cache: ResultCache | None) -> Outcome:
@@ -161,10 +161,19 @@ def _finished(one: _Begun, plan: Plan, runner: Runner, cache: ResultCache | None
         raise
     except UnitclassError as error:
         return Outcome(one.path, problem=f"{one.path}: {error}")
+    outcome = _as_named(outcome, one.path)
     if cache is not None and one.stamp is not None and outcome.result is not None:
         result = outcome.result
         cache.put(result, one.stamp, plan.key, edits_digest=edits_digest(plan, result.identifier, result.object_id))
     return outcome
+
+
+def _as_named(outcome: Outcome, path: str) -> Outcome:
+    """Return the outcome under the name that the user gave the file."""
+    if outcome.path == path:
+        return outcome
+    result = None if outcome.result is None else replace(outcome.result, path=path)
+    return Outcome(path, result, outcome.problem.replace(outcome.path, path))
 
 
 def _stamp(path: str) -> FileStamp | None:

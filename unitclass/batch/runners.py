@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Iterator
 from concurrent.futures import Future, ProcessPoolExecutor
 from contextlib import contextmanager
@@ -27,6 +28,10 @@ class Runner(Protocol):
 
     n_ahead: int
 
+    def path_there(self, path: str) -> str:
+        """Return the path by which whoever does the work finds a file."""
+        ...
+
     def submit(self, *call: Any) -> Task:
         """Hand over a function and its arguments."""
         ...
@@ -40,6 +45,10 @@ class Here:
     """This process, at once."""
 
     n_ahead = 0
+
+    def path_there(self, path: str) -> str:
+        """Return the path as it is."""
+        return path
 
     def submit(self, *call: Any) -> Task:
         """Call now."""
@@ -59,6 +68,10 @@ class Processes:
         self.n_ahead = AHEAD * n_workers
         self._n_workers = n_workers
         self._pool = self._made()
+
+    def path_there(self, path: str) -> str:
+        """Return the path as it is: workers start in the same folder."""
+        return path
 
     def _made(self) -> ProcessPoolExecutor:
         import multiprocessing
@@ -107,6 +120,10 @@ class Cluster:
         self._address = address
         self._client = _client(address)
         self.n_ahead = AHEAD * max(1, sum(self._client.nthreads().values()))
+
+    def path_there(self, path: str) -> str:
+        """Return the whole path: workers started elsewhere."""
+        return os.path.abspath(path)
 
     def submit(self, *call: Any) -> Task:
         """Hand over to the scheduler, which tries again elsewhere when a worker is lost."""

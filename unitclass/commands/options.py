@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import os
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
@@ -69,7 +70,7 @@ def plan_from(args: argparse.Namespace) -> Plan:
 
     store = existing_store(args.paths, args.store)
     return Plan(settings=settings_from(args), library=read_library(args.templates), nerve=args.nerve,
-                condition_column=args.condition_column, only=args.only, store=str(store or ""),
+                condition_column=args.condition_column, only=args.only, store=os.path.abspath(store) if store else "",
                 condition_table=read_condition_table(args.conditions) if args.conditions else None,
                 condition_text=condition_text(args), is_debug=getattr(args, "debug", False))
 
