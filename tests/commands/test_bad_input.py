@@ -253,3 +253,12 @@ def test_an_unknown_role_in_the_settings_is_refused_with_those_there_are(tmp_pat
     ran = run("classify", good, "--settings", settings)
     assert ran.code == 2
     assert "phrenic" in ran.err
+
+
+def test_a_table_of_conditions_that_is_not_there_is_one_line_in_every_command(tmp_path, good):
+    for command in (("classify", good), ("cycles", good), ("export", good, "--out", tmp_path / "o"),
+                    ("report", good, "--out", tmp_path / "r")):
+        ran = run(*command, "--conditions", tmp_path / "none.csv")
+        assert ran.code == 2
+        assert len(said(ran)) == 1
+        assert "none.csv" in said(ran)[0]

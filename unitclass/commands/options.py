@@ -76,7 +76,20 @@ def plan_from(args: argparse.Namespace) -> Plan:
 
 
 def condition_text(args: argparse.Namespace) -> str:
-    """Return the table of conditions as it stands in its file; empty when there is none."""
+    """Return the table of conditions as it stands in its file; empty when none is named.
+
+    Raises
+    ------
+    UsageError
+        When it cannot be read.
+    """
     from pathlib import Path
 
-    return Path(args.conditions).read_text("utf-8-sig") if args.conditions else ""
+    from unitclass.errors import UsageError
+
+    if not args.conditions:
+        return ""
+    try:
+        return Path(args.conditions).read_text("utf-8-sig")
+    except (OSError, UnicodeDecodeError) as error:
+        raise UsageError("cannot be read", where=args.conditions, remedy="check --conditions") from error
