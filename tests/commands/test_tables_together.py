@@ -120,3 +120,12 @@ def test_export_writes_the_changes_where_there_are_two_conditions(tmp_path):
     assert run("export", BASELINE, "--out", tmp_path / "one", "--quiet").code == 0
     assert (tmp_path / "two" / "changes.csv").exists()
     assert not (tmp_path / "one" / "changes.csv").exists()
+
+
+def test_with_json_export_and_report_print_one_list_of_what_they_wrote(tmp_path):
+    for words in (("export", BASELINE, "--out", tmp_path / "e"),
+                  ("report", BASELINE, "--out", tmp_path / "r", "--format", "svg")):
+        ran = run(*words, "--json", "--quiet")
+        files = json.loads(ran.out)
+        assert len(files) >= 2
+        assert all(Path(file).exists() for file in files)

@@ -70,4 +70,5 @@ def _say_what_next(session: Path, table: Path, target: str) -> None:
     print("next:")
     print(f"  unitclass inventory {session}")
     print(f"  unitclass review {session}")
+    print(f"  unitclass report {session} --out {session.parent / 'report'}")
     print("  unitclass classify YOUR_FILE.nwb --table units.csv")

@@ -28,7 +28,7 @@ def run(args: argparse.Namespace) -> int:
     from unitclass.analysis.changes import type_changes
     from unitclass.commands.labels import in_words
     from unitclass.commands.progress import say
-    from unitclass.commands.runs import exit_code, run_files
+    from unitclass.commands.runs import Written, exit_code, run_files
     from unitclass.errors import UnitclassError
     from unitclass.io.atomic import check_target, made_folder
     from unitclass.io.table_files import write_table
@@ -47,6 +47,7 @@ def run(args: argparse.Namespace) -> int:
         check_target(str(folder / name), force=args.force)
     units, cycles, changes, failed = [], [], [], 0
     written: dict[str, str] = {}
+    told = Written(args)
     for outcome in run_files(args):
         if outcome.result is None:
             failed += 1
@@ -61,13 +62,14 @@ def run(args: argparse.Namespace) -> int:
         units += classify_rows(result, labels)
         cycles += cycle_rows(result)
         changes += change_rows(type_changes(result, labels))
-        print(target, flush=True)
+        told.add(target)
     if written:
         for (name, columns), rows in zip(tables.items(), (units, cycles, changes), strict=True):
             if name == CHANGES and not rows:
                 continue
             write_table(str(folder / name), rows, force=args.force, columns=columns)
-            print(folder / name)
+            told.add(folder / name)
+    told.end()
     return exit_code(failed, len(written))
 
 

@@ -11,6 +11,7 @@ from unitclass.commands.options import add_crosswalk, add_paths, add_run_options
 if TYPE_CHECKING:
     from unitclass.analysis.changes import TypeChange
     from unitclass.batch import Plan
+    from unitclass.commands.runs import Written
     from unitclass.records import SessionResult
     from unitclass.report.counts import TypedUnit
     from unitclass.report.document import SessionLine
@@ -39,6 +40,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
 class _Collected:
     """What the page over all sessions needs, kept small."""
 
+    told: Written
     lines: list[SessionLine] = field(default_factory=list)
     units: list[TypedUnit] = field(default_factory=list)
     changes: list[TypeChange] = field(default_factory=list)
@@ -71,7 +73,7 @@ def run(args: argparse.Namespace) -> int:
     """Classify, then write the pages, figures and tables."""
     from unitclass.commands.options import plan_from
     from unitclass.commands.progress import say
-    from unitclass.commands.runs import exit_code, run_files
+    from unitclass.commands.runs import Written, exit_code, run_files
     from unitclass.errors import UnitclassError
     from unitclass.io.atomic import check_target, made_folder
     from unitclass.report.document import SessionLine
@@ -81,7 +83,7 @@ def run(args: argparse.Namespace) -> int:
     made_folder(str(folder / FIGURES))
     for name in ("index.html", "animals.csv"):
         check_target(str(folder / name), force=args.force)
-    plan, found = plan_from(args), _Collected()
+    plan, found = plan_from(args), _Collected(Written(args))
     wanted = Wanted(folder, tuple(args.format) or FORMATS, tuple(args.unit), args.force, _stretches(args))
     for outcome in run_files(args):
         problem = outcome.problem
@@ -90,12 +92,19 @@ def run(args: argparse.Namespace) -> int:
                 _one(outcome.result, args, plan, wanted, found)
             except UnitclassError as error:
                 problem = str(error)
-                say(f"unitclass: {error}")
+            except Exception as error:
+                if args.debug:
+                    raise
+                problem = (f"{outcome.path}: could not be drawn ({type(error).__name__}: {error}); "
+                           "run it alone with --debug and report what it prints")
+            if problem:
+                say(f"unitclass: {problem}")
         if problem:
             found.n_failed += 1
             found.lines.append(SessionLine("", outcome.path, "", (), 0, 0, problem=problem))
     if found.n_done:
         _write_index(found, args, plan, wanted)
+    found.told.end()
     absent = [unit for unit in args.unit if unit != "all" and unit not in {u.unit for u in found.units}]
     if absent:
         say(f"unitclass: no unit {', '.join(absent)} in any session; the pages name every unit")
@@ -127,7 +136,7 @@ def _one(result: SessionResult, args: argparse.Namespace, plan: Plan, wanted: Wa
                           remedy="report it into another folder")
     for file in write_session(session, wanted, plan.library, plan.settings):
         if file.name == page or "unit-" in file.name:
-            print(file, flush=True)
+            found.told.add(file)
     found.add(session, page)
 
 
@@ -157,8 +166,8 @@ def _write_index(found: _Collected, args: argparse.Namespace, plan: Plan, wanted
         methods=methods_paragraph(found.results, plan.library, plan.settings, with_membrane=found.has_membrane),
         settings=plan.settings,
         library=plan.library), force=args.force)
-    print(wanted.folder / "animals.csv")
-    print(wanted.folder / "index.html")
+    found.told.add(wanted.folder / "animals.csv")
+    found.told.add(wanted.folder / "index.html")
 
 
 def _agreement(args: argparse.Namespace, results: list[SessionResult]) -> tuple[tuple[str, ...], list[dict[str, Any]]]:

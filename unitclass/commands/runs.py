@@ -5,6 +5,7 @@ from __future__ import annotations
 import argparse
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import replace
+from pathlib import Path
 from typing import TYPE_CHECKING
 
 from unitclass.commands.options import plan_from
@@ -86,3 +87,24 @@ def write_table_said(table: str, rows: Sequence[Mapping[str, Cell]], args: argpa
     form = "json" if args.json and table == "-" else ""
     write_table(table, rows, force=args.force, columns=columns, form=form)
     say(f"wrote {table}", quiet=args.quiet or table == "-")
+
+
+class Written:
+    """The files that a run has written: a line each as they are there, or, with --json, one list at the end."""
+
+    def __init__(self, args: argparse.Namespace) -> None:
+        self._is_json = args.json
+        self._files: list[str] = []
+
+    def add(self, file: str | Path) -> None:
+        """Take a file in that is whole now."""
+        self._files.append(str(file))
+        if not self._is_json:
+            print(file, flush=True)
+
+    def end(self) -> None:
+        """Say what is left to be said."""
+        if self._is_json:
+            import json
+
+            print(json.dumps(self._files, ensure_ascii=False, indent=1))
