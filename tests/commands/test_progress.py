@@ -66,7 +66,8 @@ def test_ctrl_c_ends_in_one_line_and_the_next_run_goes_on_from_there(archive, tm
         time.sleep(0.05)
     os.killpg(process.pid, signal.SIGINT)
     shown = seen(terminal)
-    assert process.wait() == 130
+    # A shell shows 130 for both: Python may end by the signal itself when it struck while code was being made.
+    assert process.wait() in (130, -signal.SIGINT)
     assert "Traceback" not in shown
     assert "the same command goes on from there" in shown
     assert not (tmp_path / "t.csv").exists()

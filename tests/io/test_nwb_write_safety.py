@@ -74,6 +74,7 @@ def test_a_real_limit_on_the_file_size_is_one_line_and_leaves_nothing(source, ou
     limit = int((source.stat().st_size if not link_raw else 500_000) * share)
     code = f"""
 import resource, signal, sys
+import pynwb  # may keep a file of its own in the user's cache, which the limit would cut
 signal.signal(signal.SIGXFSZ, signal.SIG_IGN)
 resource.setrlimit(resource.RLIMIT_FSIZE, ({limit}, {limit}))
 from pathlib import Path

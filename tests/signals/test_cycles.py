@@ -38,7 +38,8 @@ def test_at_a_signal_to_noise_of_six_onsets_and_offsets_are_within_15_ms(form, s
     truth, rng = drawn(shape=shape)
     e = errors(truth, found_in(form(truth, replace(RIG, rate_hz=10000.0), rng)), 3.0)
     assert e.f1 == 1.0
-    assert np.median(np.abs(e.onset_ms)) < (30 if shape in ("gentle", "bell") else 15)
+    assert np.median(np.abs(e.onset_ms)) < 15
+    assert abs(np.median(e.onset_ms)) < 8
     assert np.median(np.abs(e.offset_ms)) < 15
 
 
@@ -84,14 +85,14 @@ def test_trouble_costs_no_cycles_outside_itself(trouble):
 def test_an_after_discharge_of_a_quarter_of_the_burst_is_expiration():
     truth, rng = drawn(after_discharge=0.25, after_tau_s=0.25, n_cycles=40)
     e = errors(truth, found_in(nerves.raw(truth, replace(RIG, rate_hz=10000.0), rng)), 3.0)
-    assert np.median(np.abs(e.offset_ms)) < 40
+    assert np.median(np.abs(e.offset_ms)) < 15
 
 
 def test_noise_alone_hum_alone_and_heart_beats_alone_yield_no_cycles():
     rng = np.random.default_rng(3)
     t = np.arange(300_000) / 5000.0
     floor = nerves.noise(t.size, RIG, rng)
-    for values in (floor, floor + nerves.hum(t, RIG, rng)):
+    for values in (floor, floor + nerves.hum(t, RIG, rng), floor + nerves.heart(t, RIG, rng)):
         with pytest.raises(SignalError):
             found_in(nerves.as_signal(values, 5000.0))
 
@@ -203,7 +204,7 @@ def test_n_to_one_coupling_of_late_expiratory_bursts_is_counted(n):
     assert found.confidence > 0.9
     assert coupling(np.zeros(60, int)).n == 0
     ragged = coupling((np.random.default_rng(1).random(200) < 0.3).astype(int))
-    assert ragged.confidence < 0.6
+    assert ragged.confidence < 0.6  # bursts at random: no n is common
 
 
 def test_a_vagus_gives_the_end_of_post_inspiration_and_one_without_it_gives_none():
@@ -212,8 +213,8 @@ def test_a_vagus_gives_the_end_of_post_inspiration_and_one_without_it_gives_none
     hit, false, bias_ms, spread_ms = post_i(25, n_runs=2)
     assert hit > 0.9
     assert false < 0.05
-    assert abs(bias_ms) < 100
-    assert spread_ms < 120
+    assert abs(bias_ms) < 50
+    assert spread_ms < 80
 
 
 def test_noise_as_a_second_nerve_is_a_note_and_not_a_failure():

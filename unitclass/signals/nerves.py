@@ -15,6 +15,8 @@ from unitclass.signals.neurogram import Activity
 from unitclass.signals.smoothing import filled, smooth
 
 MAX_N = 8
+SEEN_S = 0.04  # smoothing on which post-inspiration is seen at all
+DECLINE, DECLINE_S = 0.05, (0.04, 0.3)  # smoothing on which its end is read: share of expiration, and limits
 
 
 @dataclass(frozen=True)
@@ -81,28 +83,38 @@ def lead_ms(cycles: Cycles, marks: BurstTimes | None) -> FloatArray:
 
 def post_i_end_s(cycles: Cycles, fine: Activity) -> FloatArray:
     """Return where post-inspiratory activity of a vagus ends in each cycle, s; NaN where there is none."""
-    trace = smooth(fine.values, 0.04 * fine.rate_hz)
-    floor = first_floor(trace, fine.rate_hz)
-    over = filled(excess(trace, floor, fine.is_power))
     out = np.full(cycles.n_cycles, np.nan)
+    if not cycles.n_cycles:
+        return out
+    over = _over_floor(fine, SEEN_S)
+    # Noise makes a slow decline pass a tenth of its height too early: the end is read on a trace
+    # that is smoothed by the decline's own length.
+    slow = _over_floor(fine, float(np.clip(DECLINE * np.nanmedian(cycles.te_s), *DECLINE_S)))
     for i in range(cycles.n_cycles):
         if np.isfinite(cycles.offset_s[i]):
-            out[i] = _post_i_end(over, fine, cycles.onset_s[i], cycles.offset_s[i], cycles.end_s[i])
+            out[i] = _post_i_end(over, slow, fine, cycles.onset_s[i], cycles.offset_s[i], cycles.end_s[i])
     return out
 
 
-def _post_i_end(over: FloatArray, fine: Activity, onset_s: float, offset_s: float, end_s: float) -> float:
+def _over_floor(fine: Activity, width_s: float) -> FloatArray:
+    trace = smooth(fine.values, width_s * fine.rate_hz)
+    return filled(excess(trace, first_floor(trace, fine.rate_hz), fine.is_power))
+
+
+def _post_i_end(over: FloatArray, slow: FloatArray, fine: Activity, onset_s: float, offset_s: float,
+                end_s: float) -> float:
     te = end_s - offset_s
     spans = span_indices(fine, np.array([onset_s, offset_s + min(0.03, 0.1 * te), end_s - 0.3 * te]),
                          np.array([offset_s, offset_s + 0.8 * te, end_s - 0.05 * te]))
     inspiratory, early, late = (over[a:b] for a, b in spans)
-    height = float(early[: max(1, early.size // 4)].max())
+    first = early[: max(1, early.size // 4)]
+    height = float(first.max())
     if height < max(0.2 * float(inspiratory.max()), 4 * float(late.std()) + float(late.mean())):
         return np.nan
-    low = np.flatnonzero(early[int(early[: max(1, early.size // 4)].argmax()):] < 0.1 * height)
-    if not low.size:
-        return np.nan
-    return fine.start_s + (spans[1, 0] + int(early[: max(1, early.size // 4)].argmax()) + int(low[0])) / fine.rate_hz
+    top = int(first.argmax())
+    decline = slow[spans[1, 0] + top : spans[1, 1]]
+    low = np.flatnonzero(decline < 0.1 * float(decline[: max(1, decline.size // 4)].max()))
+    return fine.start_s + (spans[1, 0] + top + int(low[0])) / fine.rate_hz if low.size else np.nan
 
 
 def late_e(cycles: Cycles, nerve: OtherNerve) -> IntArray:
