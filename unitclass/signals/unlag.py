@@ -24,7 +24,9 @@ _STATED = re.compile(r"(?:time[ -]?constants?|tau|τ|TC)\D{0,12}(\d+(?:\.\d+)?)\
 _CENTRED = re.compile(r"moving[ -]average|centred|centered|zero[ -]phase|gaussian|filtfilt|boxcar|savitzky", re.I)
 SHORTEST_S, LONGEST_S = 0.015, 0.15  # time constants in use: common practice
 STEP_S = 0.02  # over which a fall is measured
-STEADY = 1.35  # ratio of the rates of fall high up and low down within which they are an exponential's
+BANDS = (((0.55, 2.0), (0.15, 0.4), 1.35), ((0.2, 0.3), (0.1, 0.2), 1.1))
+"""Levels, as shares of the top, between which falls are compared, and the ratio of their rates within
+which they are an exponential's: whole bursts, then what is smaller (bursts that end low, heart beats)."""
 VARIOGRAM_S = 0.25
 RIPPLE_S = 0.02  # a mains period: ripple of the rectified hum averages out
 DRIFT_S = 3.0
@@ -98,15 +100,18 @@ def seen_lag(values: FloatArray, rate_hz: float, description: str = "") -> Lag:
     if _CENTRED.search(description):
         return Lag(0.0, "")
     level, rates = _fall_rates(values, rate_hz)
-    high, low = rates[level > 0.55], rates[(level > 0.15) & (level < 0.4)]
-    if min(high.size, low.size) < LEAST:
-        return Lag(0.0, "")
-    fast_high, fast_low = _fastest(high), _fastest(low)
-    tau_s = 2.0 / (fast_high + fast_low)
-    # A straight or a steep fall is slower, by its level, high up than low down; an exponential is not.
-    if not SHORTEST_S <= tau_s <= LONGEST_S or not 1 / STEADY <= fast_low / fast_high <= STEADY:
-        return Lag(0.0, "")
-    return Lag(tau_s, f"falls like a leaky integrator with a time constant of {1e3 * tau_s:.0f} ms: its lag is undone")
+    for (high_from, high_to), (low_from, low_to), steady in BANDS:
+        high = rates[(level > high_from) & (level < high_to)]
+        low = rates[(level > low_from) & (level < low_to)]
+        if min(high.size, low.size) < LEAST:
+            continue
+        fast_high, fast_low = _fastest(high), _fastest(low)
+        tau_s = 2.0 / (fast_high + fast_low)
+        # A straight or a steep fall is slower, by its level, high up than low down; an exponential is not.
+        if SHORTEST_S <= tau_s <= LONGEST_S and 1 / steady <= fast_low / fast_high <= steady:
+            return Lag(tau_s, "falls like a leaky integrator with a time constant of "
+                              f"{1e3 * tau_s:.0f} ms: its lag is undone")
+    return Lag(0.0, "")
 
 
 def _fastest(rates: FloatArray) -> float:
