@@ -2,7 +2,9 @@
 
 `python -m tests.benchmarks.cycles [--cycles N]` prints, for the grid signal-to-noise x shape x trouble x
 form, F1 of cycles, bias and median absolute error of onsets and offsets; then hit and false rates of
-every tag, of post-inspiration, of n:1 coupling and of the rhythm regime.
+every tag, of post-inspiration, of n:1 coupling and of the rhythm regime. `--speed FILE` prints instead how long
+the reference nerve of a file takes to cycles, against a plain h5py read of it (a file of an hour is made by
+`python -m tests.benchmarks.main_job FOLDER`).
 """
 
 from __future__ import annotations
@@ -224,11 +226,42 @@ def regimes(n_runs: int = 6) -> list[tuple[str, float, float]]:
     return rows
 
 
+def speed(path: str) -> str:
+    """Return the seconds of a plain read of the reference nerve and of finding its cycles."""
+    import time
+
+    import h5py
+
+    from unitclass.io.nwb_read import read_recording
+
+    recording = read_recording(path, rig=SETTINGS.rig)
+    signal = recording.nerve(recording.reference)
+    times = []
+    for _ in range(3):
+        start = time.perf_counter()
+        with h5py.File(path, "r") as file:
+            data = file[f"{signal.location}/data"]
+            for first in range(0, data.shape[0], 2_000_000):
+                data[first : first + 2_000_000]
+        read = time.perf_counter() - start
+        start = time.perf_counter()
+        find_cycles(signal, (), start_s=signal.start_s, stop_s=signal.stop_s, settings=SETTINGS)
+        times.append((read, time.perf_counter() - start))
+    read, found = (min(values) for values in zip(*times, strict=True))
+    hours = (signal.stop_s - signal.start_s) / 3600
+    return f"{hours:.2f} h at {signal.rate_hz:g} Hz: plain read {read:.2f} s, to cycles {found:.2f} s, {found / read:.1f} x"
+
+
 def main() -> None:
     """Print the tables."""
     parser = argparse.ArgumentParser(description=__doc__)
     parser.add_argument("--cycles", type=int, default=40)
-    n_cycles = parser.parse_args().cycles
+    parser.add_argument("--speed", default="", metavar="FILE")
+    args = parser.parse_args()
+    if args.speed:
+        print(speed(args.speed))
+        return
+    n_cycles = args.cycles
     print(f"{os.cpu_count()} cores; {n_cycles} cycles of 3 s a cell; bias and median absolute error in ms")
     print("form        SNR  shape         trouble    F1   onset bias  error  offset bias  error")
     for (form, snr, shape, trouble), e in grid(n_cycles):
