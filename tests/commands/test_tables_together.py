@@ -129,3 +129,28 @@ def test_with_json_export_and_report_print_one_list_of_what_they_wrote(tmp_path)
         files = json.loads(ran.out)
         assert len(files) >= 2
         assert all(Path(file).exists() for file in files)
+
+
+def test_against_the_store_the_suggestions_that_people_saw_are_compared(tmp_path):
+    import shutil
+
+    from unitclass.batch import Plan, analyse_file
+    from unitclass.io.decisions import DecisionStore
+    from unitclass.io.template_files import read_library
+    from unitclass.review.session import ReviewSession
+    from unitclass.settings import Settings
+
+    session = tmp_path / "quill.nwb"
+    shutil.copyfile(BASELINE, session)
+    result = analyse_file(str(session), Plan(Settings(), read_library())).result
+    assert result is not None
+    with DecisionStore(tmp_path / "unitclass.sqlite") as store:
+        review = ReviewSession(store, "anna")
+        review.add_result(result)
+        for _ in range(4):
+            review.accept()
+    assert "0 moved, 4 did not" in run("classify", session, "--against", "store", "--quiet").out
+    (tmp_path / "odd.toml").write_text("[classify]\nconcentration = 10.0\nother_prior = 0.9\n")
+    ran = run("classify", session, "--against", "store", "--settings", tmp_path / "odd.toml", "--quiet")
+    assert "other settings" in ran.out
+    assert run("classify", BASELINE, "--against", "store", "--quiet").code == 2  # nobody has decided anything here

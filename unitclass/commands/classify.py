@@ -14,6 +14,8 @@ if TYPE_CHECKING:
     from unitclass.io.table_files import Cell
     from unitclass.records import Labels, SessionResult
 
+STORE = "store"
+
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
     """Declare the options."""
@@ -22,8 +24,9 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("--changes", default="", metavar="FILE",
                         help="write what becomes of each unit from one condition to the next")
     parser.add_argument("--groups", action="store_true", help="group all units by shape, whatever the templates say")
-    parser.add_argument("--against", default="", metavar="OLD.csv",
-                        help="list what moved since an older table, and because of what")
+    parser.add_argument("--against", default="", metavar="OLD.csv|store",
+                        help="list what moved since an older table, or since the reviewers' decisions in the store, "
+                             "and because of what")
     add_crosswalk(parser)
     add_session_options(parser)
     add_run_options(parser)
@@ -55,7 +58,7 @@ class _Collected:
 
 def run(args: argparse.Namespace) -> int:
     """Classify, then print or write the table."""
-    from unitclass.commands.labels import in_words
+    from unitclass.commands.labels import in_words, seen_rows
     from unitclass.commands.runs import check_table, exit_code, run_files
     from unitclass.commands.views import print_units
 
@@ -67,6 +70,8 @@ def run(args: argparse.Namespace) -> int:
             continue
         result, labels = in_words(outcome.result, args)
         found.add(result, labels, with_shapes=args.groups)
+        if args.against == STORE:
+            older += seen_rows(outcome.result, args)
         if _is_shown(args):
             print_units(result, labels)
     if found.n_done:
@@ -79,7 +84,7 @@ def _is_shown(args: argparse.Namespace) -> bool:
 
 
 def _older(args: argparse.Namespace) -> list[dict[str, str]]:
-    if not args.against:
+    if args.against in ("", STORE):
         return []
     from unitclass.io.against import read_older
 

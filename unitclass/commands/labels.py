@@ -45,3 +45,25 @@ def _words(crosswalk: str, templates: str) -> Mapping[str, str]:
 
     known = [family.id for family in read_library(templates).families]
     return read_crosswalk(crosswalk, (*known, OTHER, SILENT, UNDETERMINED))
+
+
+def seen_rows(result: SessionResult, args: argparse.Namespace) -> list[dict[str, str]]:
+    """Return the suggestions that people saw when they decided, the newest of each unit, as rows of an older table."""
+    from unitclass.io.store_place import existing_store
+
+    file = existing_store(args.paths, args.store)
+    if file is None:
+        return []
+    from unitclass.io.decisions import DecisionStore
+
+    with DecisionStore(file, is_read_only=True) as store:
+        log = store.read(result.identifier, result.object_id)
+    newest: dict[tuple[str, str], dict[str, str]] = {}
+    for logged in sorted(log.decisions, key=lambda one: one.act):
+        d = logged.decision
+        p = d.suggested_probability
+        if d.suggested_type:
+            newest[d.unit, d.condition] = {
+                "file": result.path, "unit": d.unit, "condition": d.condition, "suggested_type": d.suggested_type,
+                "probability": f"{p:.6g}" if p == p else "", "settings_digest": d.settings_digest, "template_digest": d.template_digest}
+    return list(newest.values())
