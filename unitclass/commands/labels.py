@@ -65,5 +65,6 @@ def seen_rows(result: SessionResult, args: argparse.Namespace) -> list[dict[str,
         if d.suggested_type:
             newest[d.unit, d.condition] = {
                 "file": result.path, "unit": d.unit, "condition": d.condition, "suggested_type": d.suggested_type,
-                "probability": f"{p:.6g}" if p == p else "", "settings_digest": d.settings_digest, "template_digest": d.template_digest}
+                "probability": f"{p:.6g}" if p == p else "", "settings_digest": d.settings_digest,
+                "template_digest": d.template_digest}
     return list(newest.values())
