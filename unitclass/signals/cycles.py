@@ -18,7 +18,7 @@ from unitclass.signals.rhythm import burst_shape, rhythm_evidence
 from unitclass.signals.summary import summarised
 from unitclass.signals.tags import Draft, drafted, edited, tagged
 
-N_THREADS = 2
+N_THREADS = 1  # beside the one that looks at the reference
 LONG_S = 3000.0
 
 
@@ -57,7 +57,7 @@ def find_cycles(reference: Signal, others: Sequence[Signal], *, start_s: float, 
     # Nerves do not need each other until here, and reading and arithmetic let other threads run. The
     # reference comes last: its traces stay, those of the others are let go.
     is_long = stop_s - start_s > LONG_S
-    with ThreadPoolExecutor(1 if is_long else N_THREADS) as pool:
+    with ThreadPoolExecutor(N_THREADS) as pool:
         looking = [pool.submit(_read_other, signal, settings, start_s, stop_s) for signal in others]
         if is_long:
             pool.shutdown()  # of long stretches one nerve at a time is in memory
