@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import tomllib
 
 import pytest
@@ -58,3 +59,10 @@ def test_too_few_units_an_existing_file_and_no_labels_are_one_line_each(learned,
         assert words in ran.err
         assert len(ran.err.strip().splitlines()) == 1
     assert not (tmp_path / "x.toml").exists()
+
+
+def test_every_form_of_the_command_speaks_json(learned, session, tmp_path):
+    target, units, _ = learned
+    for words in (("list",), ("show", "ramp-I"), ("check",), ("check", target), (
+            "learn", "x", session, "--units", ",".join(units), "--out", tmp_path / "x.toml")):
+        assert json.loads(run("types", *words, "--json").out)

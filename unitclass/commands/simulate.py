@@ -17,6 +17,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("--n-units", type=int, default=0, metavar="N", help="number of units")
     parser.add_argument("--raw-rate-hz", type=float, default=0.0, metavar="HZ", help="sampling rate of raw nerves")
     parser.add_argument("--cell", default="", metavar="TYPE", help="type of the impaled cell (intracellular only)")
+    parser.add_argument("--json", action="store_true", help="JSON on stdout")
     parser.add_argument("--quiet", action="store_true", help="no messages")
     parser.add_argument("--force", action="store_true", help="replace files that exist")
 
@@ -26,6 +27,7 @@ def run(args: argparse.Namespace) -> int:
     from pathlib import Path
 
     from unitclass.commands.progress import say
+    from unitclass.commands.runs import Written
     from unitclass.simulate.samples import write_samples
     from unitclass.simulate.session import simulate_session
     from unitclass.simulate.write import write_session
@@ -37,7 +39,9 @@ def run(args: argparse.Namespace) -> int:
         session = simulate_session(args.kind, seed=args.seed, seconds=args.seconds, n_units=args.n_units,
                                    raw_rate_hz=args.raw_rate_hz, cell=args.cell)
         written = [write_session(session, folder / f"{session.scenario.stem}.nwb", force=args.force)]
+    told = Written(args)
     for path in written:
-        print(path)
+        told.add(path)
+    told.end()
     say("the true types stand beside each session in STEM.truth.csv", quiet=args.quiet)
     return 0

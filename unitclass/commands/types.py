@@ -24,10 +24,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
             command.add_argument("type", metavar="TYPE", help="id of the type, e.g. early-I")
         if name == "check":
             command.add_argument("files", nargs="*", metavar="FILE", help="family files; none checks the set in force")
-        if name == "list":
-            command.add_argument("--json", action="store_true", help="JSON on stdout")
-
-
+        command.add_argument("--json", action="store_true", help="JSON on stdout")
     learn = sub.add_parser("learn", help="a new family from units that belong together",
                            description="Write a template family made from labelled units, a shape group or units named.")
     types_learn.add_arguments(learn)
@@ -47,11 +44,17 @@ def _list(args: argparse.Namespace) -> int:
 
     families = read_library(args.templates).families
     if args.json:
-        print(json.dumps([{"type": f.id, "form": f.form, "words": f.words, "also": list(f.also),
-                           "prior": dict(f.prior), "sources": list(f.sources)} for f in families], indent=1))
+        print(json.dumps([_as_json(f) for f in families], ensure_ascii=False, indent=1))
         return 0
     print_table(("type", "fires", "also called"), [(f.id, f.words, ", ".join(f.also)) for f in families], sys.stdout)
     return 0
+
+
+def _as_json(family: Family) -> dict[str, object]:
+    return {"type": family.id, "form": family.form, "words": family.words, "also": list(family.also),
+            "prior": dict(family.prior), "membrane": dict(family.membrane),
+            "ranges": {name: list(span) for name, span in family.ranges.items()},
+            "points": [list(point) for point in family.points], "sources": list(family.sources)}
 
 
 def _show(args: argparse.Namespace) -> int:
@@ -64,6 +67,11 @@ def _show(args: argparse.Namespace) -> int:
     except KeyError:
         raise UsageError(f"no type called {args.type!r}",
                          remedy="the types are: " + ", ".join(f.id for f in library.families)) from None
+    if args.json:
+        import json
+
+        print(json.dumps(_as_json(family), ensure_ascii=False, indent=1))
+        return 0
     print(f"{family.id}: {family.words}")
     if family.also:
         print(f"also called {', '.join(family.also)}")
@@ -100,10 +108,16 @@ def _check(args: argparse.Namespace) -> int:
 
     from unitclass.io.template_files import read_family, read_library
 
-    if args.files:
-        for file in args.files:
-            print(f"{file}: {read_family(Path(file)).id} is right")
+    right = [(file, read_family(Path(file)).id) for file in args.files]
+    library = None if right else read_library(args.templates)
+    if args.json:
+        import json
+
+        print(json.dumps([{"file": file, "type": name} for file, name in right] if library is None else {
+            "templates": library.name, "n_families": len(library.families), "digest": library.digest()}))
         return 0
-    library = read_library(args.templates)
-    print(f"{library.name}: {len(library.families)} families are right, digest {library.digest()}")
+    for file, name in right:
+        print(f"{file}: {name} is right")
+    if library is not None:
+        print(f"{library.name}: {len(library.families)} families are right, digest {library.digest()}")
     return 0

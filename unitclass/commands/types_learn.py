@@ -55,6 +55,11 @@ def run(args: argparse.Namespace) -> int:
         words=args.words or f"like the {len(units)} units it was learned from",
         source=f"{len(units)} units of {len(results)} files, {_said(args)}")
     write_family(family, target, force=args.force)
+    if args.json:
+        import json
+
+        print(json.dumps({"file": target, "type": args.type, "n_units": len(units)}, ensure_ascii=False))
+        return code
     print(f"{target}: {args.type} from {len(units)} units; read it, then use it with --templates {target}")
     return code
 
