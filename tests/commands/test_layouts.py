@@ -63,6 +63,17 @@ def test_a_plain_table_gives_conditions_to_a_file_that_has_none(tmp_path, sessio
     assert set(column(rows, "animal")) == {"hare-1"}
 
 
+def test_a_table_of_conditions_may_come_from_a_spreadsheet_with_decimal_commas(tmp_path, session):
+    path = LAYOUTS["integrated"](session, tmp_path / "a.nwb")
+    table = tmp_path / "conditions.csv"
+    half = f"{session.stop_s / 2:.1f}".replace(".", ",")
+    table.write_bytes(f"file;start_s;stop_s;condition\r\na.nwb;0;{half};Kälte\r\na.nwb;{half};;drug\r\n".encode("cp1252"))
+    for command in ("classify", "cycles"):
+        ran = run(command, path, "--table", tmp_path / f"{command}.csv", "--conditions", table)
+        assert ran.code == 0, ran.err
+        assert set(column(rows_of(tmp_path / f"{command}.csv"), "condition")) == {"Kälte", "drug"}
+
+
 def test_a_condition_asked_for_is_the_only_one(tmp_path, session):
     path = LAYOUTS["channels"](session, tmp_path / "a.nwb")
     run("classify", path, "--table", tmp_path / "units.csv", "--only", "high CO2")

@@ -11,17 +11,16 @@ from tests.commands.program import rows_of
 
 SESSION = Path(__file__).parents[2] / "sample_nwb" / "bramble-pons-removed.nwb"
 PROGRAM = """
-import sys, unitclass.signals.cycles as cycles
+import sys
 from unitclass.__main__ import main
-cycles.N_THREADS = int(sys.argv[1])
-sys.exit(main(["classify", *sys.argv[2:]]))
+sys.exit(main(["classify", *sys.argv[1:]]))
 """
 
 
 def _table(folder, n_threads):
     path = folder / f"threads-{n_threads}.csv"
     algebra = dict.fromkeys(("OPENBLAS_NUM_THREADS", "OMP_NUM_THREADS", "MKL_NUM_THREADS"), str(n_threads))
-    subprocess.run([sys.executable, "-c", PROGRAM, str(n_threads), str(SESSION), "--table", str(path), "--quiet",
+    subprocess.run([sys.executable, "-c", PROGRAM, str(SESSION), "--table", str(path), "--quiet",
                     "--fresh"], check=True, capture_output=True, env={**os.environ, **algebra}, timeout=100)
     return rows_of(path)
 

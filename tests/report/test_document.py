@@ -10,7 +10,8 @@ import numpy as np
 from tests.results import labels_for, session_result, vm_result
 from unitclass.io.template_files import read_library
 from unitclass.records import Cycles, Exclusion, Finding, Label, Recording, SessionResult
-from unitclass.report.document import Picture, SessionLine, SessionPage, index_html, session_html
+from unitclass.report.document import SessionLine, SessionPage, index_html, session_html
+from unitclass.report.saving import Picture
 from unitclass.settings import Settings
 
 HOSTILE = '"><script>alert(1)</script><img src=x onerror=alert(2)>\x1b[31m{{ 7 * 7 }}&amp;'

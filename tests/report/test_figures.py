@@ -17,16 +17,11 @@ from unitclass.io.resolver import samples_folder
 from unitclass.io.template_files import read_library
 from unitclass.records import ArrayChunks, Cycles, Recording, SessionResult, Signal
 from unitclass.report.counts import TypedUnit, type_counts
+from unitclass.report.cycles_figure import cycles_figure, tag_of
 from unitclass.report.making import safe_name
-from unitclass.report.saving import Drawn, as_svg, save
-from unitclass.report.session_figures import (
-    changes_figure,
-    conditions_figure,
-    counts_figure,
-    cycles_figure,
-    population_figure,
-    tag_of,
-)
+from unitclass.report.population_figure import population_figure
+from unitclass.report.saving import Drawn, picture, save
+from unitclass.report.session_figures import changes_figure, conditions_figure, counts_figure
 from unitclass.report.stretch import usual_stretch
 from unitclass.report.style import nice_length, quantity
 from unitclass.report.unit_figure import Shown, unit_figure
@@ -42,6 +37,10 @@ def session(request) -> tuple[Recording, SessionResult]:
     result = analyse_file(path, PLAN).result
     assert result is not None
     return read_planned(path, PLAN), result
+
+
+def as_svg(drawn: Drawn) -> str:
+    return picture(drawn, []).svg
 
 
 def saved_rows(drawn: Drawn, folder: Path) -> list[dict[str, str]]:

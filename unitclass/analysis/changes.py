@@ -7,7 +7,7 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from itertools import pairwise
 
-from unitclass.records import Label, SessionResult
+from unitclass.records import Label, SessionResult, UnitResult
 
 UnitLabels = Mapping[tuple[str, str], Label]
 
@@ -43,13 +43,18 @@ class ChangeCount:
     n_units: int
 
 
+def type_of(unit: UnitResult, labels: UnitLabels) -> str:
+    """Return what a person decided, else the suggestion."""
+    label = labels.get(unit.key)
+    return label.type if label is not None and label.type else unit.suggestion.type
+
+
 def type_changes(result: SessionResult, labels: UnitLabels) -> tuple[TypeChange, ...]:
     """Return every unit's step from each condition to the next, in the order of the recording."""
     order = [c.condition.name for c in sorted(result.conditions, key=lambda c: c.condition.start_s)]
     by_unit: dict[str, dict[str, tuple[str, float]]] = {}
     for _, unit in result.units():
-        label = labels.get(unit.key)
-        named = label.type if label is not None and label.type else unit.suggestion.type
+        named = type_of(unit, labels)
         by_unit.setdefault(unit.unit, {})[unit.condition] = (named, unit.suggestion.probabilities.get(named, float("nan")))
     return tuple(
         TypeChange(result.path, result.session, result.animal, unit, before, after, *_pair(types[before], types[after]))

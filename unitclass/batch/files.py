@@ -9,6 +9,7 @@ from __future__ import annotations
 from collections import deque
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
+from functools import cached_property
 
 from unitclass import __version__
 from unitclass.batch.runners import Runner, SchedulerLostError, Task
@@ -30,17 +31,16 @@ class Plan:
     nerve: str = ""
     condition_column: str = ""
     condition_table: ConditionTable | None = None
-    condition_text: str = ""
     only: str = ""
     store: str = ""
     cycles_only: bool = False
     is_debug: bool = False
 
-    @property
+    @cached_property
     def key(self) -> CacheKey:
         """Return what besides a file shapes its results."""
         return CacheKey(self.settings.digest(), self.library.digest(),
-                        cache_options(self.nerve, self.condition_column, self.only, self.condition_text,
+                        cache_options(self.nerve, self.condition_column, self.only, self.condition_table,
                                       is_cycles_only=self.cycles_only))
 
 

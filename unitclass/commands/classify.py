@@ -58,20 +58,22 @@ class _Collected:
 
 def run(args: argparse.Namespace) -> int:
     """Classify, then print or write the table."""
-    from unitclass.commands.labels import in_words, seen_rows
+    from unitclass.commands.labels import in_words, seen_rows, words_of
+    from unitclass.commands.options import plan_from
     from unitclass.commands.runs import check_table, exit_code, run_files
     from unitclass.commands.views import print_units
 
     check_table(args, args.changes)
-    found, older = _Collected(), _older(args)
-    for outcome in run_files(args):
+    plan, found, older = plan_from(args), _Collected(), _older(args)
+    words = words_of(args, plan)
+    for outcome in run_files(args, plan):
         if outcome.result is None:
             found.n_failed += 1
             continue
-        result, labels = in_words(outcome.result, args)
+        result, labels = in_words(outcome.result, plan, words)
         found.add(result, labels, with_shapes=args.groups)
         if args.against == STORE:
-            older += seen_rows(outcome.result, args)
+            older += seen_rows(outcome.result, plan, words)
         if _is_shown(args):
             print_units(result, labels)
     if found.n_done:

@@ -17,12 +17,15 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
 
 def run(args: argparse.Namespace) -> int:
     """Find the cycles, then print or write them."""
+    from dataclasses import replace
+
+    from unitclass.commands.options import plan_from
     from unitclass.commands.runs import exit_code, run_files, write_rows
     from unitclass.commands.views import print_cycles
     from unitclass.io.tables import CYCLE_COLUMNS, cycle_rows
 
     rows, n_done, failed = [], 0, 0
-    for outcome in run_files(args, cycles_only=True):
+    for outcome in run_files(args, replace(plan_from(args), cycles_only=True)):
         if outcome.result is None:
             failed += 1
             continue

@@ -23,6 +23,7 @@ def run(args: argparse.Namespace) -> int:
     """Copy the sample, classify it, review it where there is a terminal, write the labelled NWB."""
     from unitclass.commands.export import write_copy
     from unitclass.commands.labels import labels_of
+    from unitclass.commands.options import plan_from
     from unitclass.commands.parser import parse
     from unitclass.commands.runs import run_files, write_rows
     from unitclass.commands.views import print_units
@@ -35,14 +36,15 @@ def run(args: argparse.Namespace) -> int:
         review = parse(["review", str(session)])
         review.run(review)
     job = parse(["export", str(session), "--out", str(folder), "--force", *(["--quiet"] if args.quiet else [])])
-    for outcome in run_files(job):
+    plan = plan_from(job)
+    for outcome in run_files(job, plan):
         if outcome.result is None:
             return 1
-        labels = labels_of(outcome.result, job)
+        labels = labels_of(outcome.result, plan)
         print_units(outcome.result, labels)
         job.table = str(table)
         write_rows(classify_rows(outcome.result, labels), job, columns=CLASSIFY_COLUMNS)
-        target = write_copy(outcome.result, labels, job, {})
+        target = write_copy(outcome.result, labels, job, plan, {})
     _say_what_next(session, table, target)
     return 0
 

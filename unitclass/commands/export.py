@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 from unitclass.commands.options import add_crosswalk, add_paths, add_run_options, add_session_options
 
 if TYPE_CHECKING:
+    from unitclass.batch import Plan
     from unitclass.records import Labels, SessionResult
 
 CHANGES = "changes.csv"  # written when some session has several conditions
@@ -26,7 +27,8 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
 def run(args: argparse.Namespace) -> int:
     """Classify, write a labelled copy of every session, and the two tables."""
     from unitclass.analysis.changes import type_changes
-    from unitclass.commands.labels import in_words
+    from unitclass.commands.labels import in_words, words_of
+    from unitclass.commands.options import plan_from
     from unitclass.commands.progress import say
     from unitclass.commands.runs import Written, exit_code, run_files
     from unitclass.errors import UnitclassError
@@ -48,13 +50,15 @@ def run(args: argparse.Namespace) -> int:
     units, cycles, changes, failed = [], [], [], 0
     written: dict[str, str] = {}
     told = Written(args)
-    for outcome in run_files(args):
+    plan = plan_from(args)
+    words = words_of(args, plan)
+    for outcome in run_files(args, plan):
         if outcome.result is None:
             failed += 1
             continue
-        result, labels = in_words(outcome.result, args)
+        result, labels = in_words(outcome.result, plan, words)
         try:
-            target = write_copy(result, labels, args, written)
+            target = write_copy(result, labels, args, plan, written)
         except UnitclassError as error:
             failed += 1
             say(f"unitclass: {error}")
@@ -73,7 +77,8 @@ def run(args: argparse.Namespace) -> int:
     return exit_code(failed, len(written))
 
 
-def write_copy(result: SessionResult, labels: Labels, args: argparse.Namespace, written: dict[str, str]) -> str:
+def write_copy(result: SessionResult, labels: Labels, args: argparse.Namespace, plan: Plan,
+               written: dict[str, str]) -> str:
     """Write one labelled copy and return its path.
 
     `written`, target to source, holds the copies of this run and gains the new one.
@@ -87,7 +92,6 @@ def write_copy(result: SessionResult, labels: Labels, args: argparse.Namespace, 
     from pathlib import Path
 
     from unitclass.batch import read_planned
-    from unitclass.commands.options import plan_from
     from unitclass.errors import TargetError
     from unitclass.io.nwb_write import labelled_name, write_labelled
 
@@ -95,7 +99,6 @@ def write_copy(result: SessionResult, labels: Labels, args: argparse.Namespace, 
     if target in written:
         raise TargetError(f"has the name of {written[target]}, exported just now", where=result.path,
                           remedy="export it into another folder")
-    plan = plan_from(args)
     write_labelled(result.path, target, read_planned(result.path, plan), result, labels, only=args.only,
                    link_raw=args.link_raw, force=args.force, settings=plan.settings)
     written[target] = result.path

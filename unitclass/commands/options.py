@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
     from unitclass.batch import Plan
+    from unitclass.io.condition_table import ConditionTable
     from unitclass.settings import Settings
 
 
@@ -64,32 +65,17 @@ def settings_from(args: argparse.Namespace) -> Settings:
 def plan_from(args: argparse.Namespace) -> Plan:
     """Return how every file of this run is read and judged."""
     from unitclass.batch import Plan
-    from unitclass.io.condition_table import read_condition_table
     from unitclass.io.store_place import existing_store
     from unitclass.io.template_files import read_library
 
     store = existing_store(args.paths, args.store)
     return Plan(settings=settings_from(args), library=read_library(args.templates), nerve=args.nerve,
                 condition_column=args.condition_column, only=args.only, store=os.path.abspath(store) if store else "",
-                condition_table=read_condition_table(args.conditions) if args.conditions else None,
-                condition_text=condition_text(args), is_debug=getattr(args, "debug", False))
+                condition_table=condition_table(args), is_debug=getattr(args, "debug", False))
 
 
-def condition_text(args: argparse.Namespace) -> str:
-    """Return the table of conditions as it stands in its file; empty when none is named.
+def condition_table(args: argparse.Namespace) -> ConditionTable | None:
+    """Return the plain table of conditions; None when none is named."""
+    from unitclass.io.condition_table import read_condition_table
 
-    Raises
-    ------
-    UsageError
-        When it cannot be read.
-    """
-    from pathlib import Path
-
-    from unitclass.errors import UsageError
-
-    if not args.conditions:
-        return ""
-    try:
-        return Path(args.conditions).read_text("utf-8-sig")
-    except (OSError, UnicodeDecodeError) as error:
-        raise UsageError("cannot be read", where=args.conditions, remedy="check --conditions") from error
+    return read_condition_table(args.conditions) if args.conditions else None

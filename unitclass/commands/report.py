@@ -9,6 +9,8 @@ from typing import TYPE_CHECKING, Any
 from unitclass.commands.options import add_crosswalk, add_paths, add_run_options, add_session_options
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping
+
     from unitclass.analysis.changes import TypeChange
     from unitclass.batch import Plan
     from unitclass.commands.runs import Written
@@ -71,25 +73,28 @@ class _Collected:
 
 def run(args: argparse.Namespace) -> int:
     """Classify, then write the pages, figures and tables."""
+    from unitclass.commands.labels import words_of
     from unitclass.commands.options import plan_from
     from unitclass.commands.progress import say
     from unitclass.commands.runs import Written, exit_code, run_files
     from unitclass.errors import UnitclassError
     from unitclass.io.atomic import check_target, made_folder
     from unitclass.report.document import SessionLine
-    from unitclass.report.making import FIGURES, Wanted
+    from unitclass.report.making import Wanted
+    from unitclass.report.saving import FIGURES
 
     folder = made_folder(args.out)
     made_folder(str(folder / FIGURES))
     for name in ("index.html", "animals.csv"):
         check_target(str(folder / name), force=args.force)
     plan, found = plan_from(args), _Collected(Written(args))
+    words = words_of(args, plan)
     wanted = Wanted(folder, tuple(args.format) or FORMATS, tuple(args.unit), args.force, _stretches(args))
-    for outcome in run_files(args):
+    for outcome in run_files(args, plan):
         problem = outcome.problem
         if outcome.result is not None:
             try:
-                _one(outcome.result, args, plan, wanted, found)
+                _one(outcome.result, plan, words, wanted, found)
             except UnitclassError as error:
                 problem = str(error)
             except Exception as error:
@@ -103,7 +108,7 @@ def run(args: argparse.Namespace) -> int:
             found.n_failed += 1
             found.lines.append(SessionLine("", outcome.path, "", (), 0, 0, problem=problem))
     if found.n_done:
-        _write_index(found, args, plan, wanted)
+        _write_index(found, plan, wanted)
     found.told.end()
     absent = [unit for unit in args.unit if unit != "all" and unit not in {u.unit for u in found.units}]
     if absent:
@@ -122,13 +127,13 @@ def _stretches(args: argparse.Namespace) -> tuple[tuple[float, float], ...]:
     return tuple((start, stop) for start, stop in args.stretch)
 
 
-def _one(result: SessionResult, args: argparse.Namespace, plan: Plan, wanted: Wanted, found: _Collected) -> None:
+def _one(result: SessionResult, plan: Plan, words: Mapping[str, str], wanted: Wanted, found: _Collected) -> None:
     from unitclass.batch import read_planned
     from unitclass.commands.labels import in_words
     from unitclass.errors import TargetError
     from unitclass.report.making import Session, write_session
 
-    result, labels = in_words(result, args)
+    result, labels = in_words(result, plan, words)
     session = Session(read_planned(result.path, plan), result, labels)
     page = f"{session.stem}.html"
     if page in {line.link for line in found.lines}:
@@ -140,13 +145,13 @@ def _one(result: SessionResult, args: argparse.Namespace, plan: Plan, wanted: Wa
     found.add(session, page)
 
 
-def _write_index(found: _Collected, args: argparse.Namespace, plan: Plan, wanted: Wanted) -> None:
+def _write_index(found: _Collected, plan: Plan, wanted: Wanted) -> None:
     from unitclass.io.table_files import write_table
     from unitclass.report.counts import animal_rows, type_counts
-    from unitclass.report.document import Picture, index_html
-    from unitclass.report.making import FIGURES, steps_of, type_order, write_page
+    from unitclass.report.document import index_html
+    from unitclass.report.making import steps_of, type_order, write_page
     from unitclass.report.methods import methods_paragraph
-    from unitclass.report.saving import as_svg, save
+    from unitclass.report.saving import FIGURES, picture, save
     from unitclass.report.session_figures import changes_figure, counts_figure
 
     order = type_order(plan.library)
@@ -156,31 +161,27 @@ def _write_index(found: _Collected, args: argparse.Namespace, plan: Plan, wanted
                 for i, step in enumerate(steps_of(found.changes))]
     pictures = []
     for name, drawn in figures:
-        files = save(drawn, wanted.folder / FIGURES / f"all-{name}", wanted.formats, force=args.force)
-        pictures.append(Picture(as_svg(drawn), drawn.caption, tuple(f"{FIGURES}/{file.name}" for file in files)))
+        files = save(drawn, wanted.folder / FIGURES / f"all-{name}", wanted.formats, force=wanted.force)
+        pictures.append(picture(drawn, files))
     animals = animal_rows(found.units, order)
-    write_table(str(wanted.folder / "animals.csv"), animals, force=args.force)
-    reviewers, agreement = _agreement(args, found.results)
+    write_table(str(wanted.folder / "animals.csv"), animals, force=wanted.force)
+    reviewers, agreement = _agreement(plan, found.results)
     write_page(wanted.folder / "index.html", index_html(
         found.lines, pictures=pictures, animals=animals, agreement=agreement, reviewers=reviewers,
         methods=methods_paragraph(found.results, plan.library, plan.settings, with_membrane=found.has_membrane),
-        settings=plan.settings,
-        library=plan.library), force=args.force)
+        settings=plan.settings, library=plan.library), force=wanted.force)
     found.told.add(wanted.folder / "animals.csv")
     found.told.add(wanted.folder / "index.html")
 
 
-def _agreement(args: argparse.Namespace, results: list[SessionResult]) -> tuple[tuple[str, ...], list[dict[str, Any]]]:
+def _agreement(plan: Plan, results: list[SessionResult]) -> tuple[tuple[str, ...], list[dict[str, Any]]]:
     """Return who labelled, and how far each pair agrees; nothing without a store."""
-    from unitclass.io.store_place import existing_store
-
-    file = existing_store(args.paths, args.store)
-    if file is None:
+    if not plan.store:
         return (), []
     from unitclass.io.decisions import DecisionStore
     from unitclass.review.agreement import StoredSession, agreement, rated_units
 
-    with DecisionStore(file, is_read_only=True) as store:
+    with DecisionStore(plan.store, is_read_only=True) as store:
         report = agreement(rated_units(store, [StoredSession(r.path, r.identifier, r.object_id) for r in results]))
     return report.reviewers, [
         {"condition": pair.condition, "first": pair.confusion.first, "second": pair.confusion.second,

@@ -115,10 +115,10 @@ class _Work:
 
 def cache_key(args: argparse.Namespace, settings_digest: str, template_digest: str) -> CacheKey:
     """Return what besides the file shapes its results."""
-    from unitclass.commands.options import condition_text
+    from unitclass.commands.options import condition_table
     from unitclass.io.result_cache import CacheKey, cache_options
 
-    options = cache_options(args.nerve, args.condition_column, args.only, condition_text(args))
+    options = cache_options(args.nerve, args.condition_column, args.only, condition_table(args))
     return CacheKey(settings_digest, template_digest, options)
 
 

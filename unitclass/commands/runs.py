@@ -4,27 +4,25 @@ from __future__ import annotations
 
 import argparse
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from unitclass.commands.options import plan_from
 from unitclass.commands.progress import progress, say
 from unitclass.errors import NoUsableFileError
 
 if TYPE_CHECKING:
-    from unitclass.batch import Outcome
+    from unitclass.batch import Outcome, Plan
     from unitclass.io.result_cache import ResultCache
     from unitclass.io.table_files import Cell
 
 
-def run_files(args: argparse.Namespace, *, cycles_only: bool = False) -> Iterator[Outcome]:
+def run_files(args: argparse.Namespace, plan: Plan) -> Iterator[Outcome]:
     """Yield the outcome of every file named; failures are said on stderr as they come."""
     from unitclass.batch import analyse_files, runner_for
     from unitclass.io.paths import find_files
 
     check_table(args)
-    paths, plan = find_files(args.paths), replace(plan_from(args), cycles_only=cycles_only)
+    paths = find_files(args.paths)
     runner = runner_for(len(paths), workers=args.workers, scheduler=args.scheduler)
     with progress(len(paths), quiet=args.quiet) as step, runner as who:
         for outcome in analyse_files(paths, plan, who, known_results(args)):

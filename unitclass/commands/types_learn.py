@@ -35,6 +35,7 @@ def run(args: argparse.Namespace) -> int:
 
     from unitclass.classify.family_making import LEAST_UNITS, family_from_units
     from unitclass.commands.labels import labels_of
+    from unitclass.commands.options import plan_from
     from unitclass.commands.runs import exit_code, run_files
     from unitclass.errors import UsageError
     from unitclass.io.atomic import check_target
@@ -42,10 +43,11 @@ def run(args: argparse.Namespace) -> int:
 
     target = args.out or f"{args.type}.toml"
     check_target(target, force=args.force)
-    outcomes = list(run_files(args))
+    plan = plan_from(args)
+    outcomes = list(run_files(args, plan))
     results = [outcome.result for outcome in outcomes if outcome.result is not None]
     code = exit_code(len(outcomes) - len(results), len(results))
-    units, regimes = _chosen(results, [labels_of(result, args) for result in results], args)
+    units, regimes = _chosen(results, [labels_of(result, plan) for result in results], args)
     if len(units) < LEAST_UNITS:
         raise UsageError(f"{len(units)} units are too few for a family", where=_said(args),
                          remedy=f"choose {LEAST_UNITS} or more with --labelled, --group or --units")

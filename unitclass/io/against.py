@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-import csv
 import math
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
-from pathlib import Path, PurePath
+from pathlib import PurePath
 
 from unitclass.errors import UsageError
+from unitclass.io.plain_tables import read_plain_table
 from unitclass.io.table_files import Cell
 
 NEEDED = ("file", "unit", "condition", "suggested_type", "probability")
@@ -49,16 +49,8 @@ def read_older(path: str) -> list[dict[str, str]]:
     UsageError
         When it cannot be read or lacks a column that is needed.
     """
-    try:
-        with Path(path).open(encoding="utf-8-sig", newline="") as file:
-            reader = csv.DictReader(file)
-            lost = [name for name in NEEDED if name not in (reader.fieldnames or ())]
-            if lost:
-                raise UsageError(f"has no column {lost[0]!r}", where=path,
-                                 remedy="give a table that `unitclass classify --table` wrote")
-            return list(reader)
-    except (OSError, UnicodeDecodeError, csv.Error) as error:
-        raise UsageError("cannot be read", where=path, remedy=str(error)) from error
+    table = read_plain_table(path, NEEDED, remedy="give a table that `unitclass classify --table` wrote")
+    return [row.cells | {"probability": table.point(row.cells["probability"])} for row in table.rows]
 
 
 def compared(rows: Sequence[Row], older: Sequence[Mapping[str, str]], where: str) -> Comparison:

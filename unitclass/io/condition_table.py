@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-import csv
 import math
 import os
 from collections.abc import Mapping
 from dataclasses import dataclass
 
 from unitclass.errors import UsageError
+from unitclass.io.plain_tables import PlainRow, PlainTable, read_plain_table
 
 COLUMNS = ("file", "start_s", "stop_s", "condition", "animal", "cell")
 NEEDED = ("file", "condition")
@@ -53,53 +53,24 @@ def read_condition_table(path: str) -> ConditionTable:
     UsageError
         When it cannot be read, lacks a column, or a time is not a number; the line is named.
     """
-    lines = _lines(path)
-    dialect = _delimiter(lines[0] if lines else "")
-    reader = csv.DictReader(lines, delimiter=dialect)
-    names = [(name or "").strip().lower() for name in reader.fieldnames or ()]
-    reader.fieldnames = names
-    missing = [name for name in NEEDED if name not in names]
-    if missing:
-        raise UsageError(f"has no column {missing[0]!r}", where=path, remedy="the columns are " + ", ".join(COLUMNS))
-    is_comma_decimal = dialect != ","
-    rows = [(line, f"{path} line {reader.line_num}") for line in reader]
-    return ConditionTable(path, tuple(_row(line, where, is_comma_decimal) for line, where in rows
-                                      if any(isinstance(v, str) and v.strip() for v in line.values())))
+    table = read_plain_table(path, NEEDED, remedy="the columns are " + ", ".join(COLUMNS))
+    return ConditionTable(path, tuple(_row(row, table) for row in table.rows))
 
 
-def _lines(path: str) -> list[str]:
-    """Return the lines of a table in UTF-8, or in the code page that spreadsheets still write."""
-    try:
-        with open(path, "rb") as file:
-            content = file.read()
-    except OSError as error:
-        raise UsageError(f"cannot be read ({error.strerror})", where=path, remedy="check the name of the table") from error
-    if b"\x00" in content:
-        raise UsageError("is not a plain table", where=path, remedy="save it as CSV")
-    try:
-        return content.decode("utf-8-sig").splitlines()
-    except UnicodeDecodeError:
-        return content.decode("cp1252", errors="replace").splitlines()
-
-
-def _delimiter(header: str) -> str:
-    return max(",;\t", key=header.count) if header else ","
-
-
-def _row(line: Mapping[str, str | None], where: str, is_comma_decimal: bool) -> ConditionRow:
-    start_s, stop_s = (_time(line, name, where, is_comma_decimal) for name in ("start_s", "stop_s"))
+def _row(row: PlainRow, table: PlainTable) -> ConditionRow:
+    words = {name: row.cells.get(name, "").strip() for name in COLUMNS}
+    start_s, stop_s = (_time(words, name, row.where, table) for name in ("start_s", "stop_s"))
     if stop_s <= start_s:
-        raise UsageError(f"stop_s {stop_s:g} is not after start_s {start_s:g}", where=where, remedy="swap or mend them")
-    words = {name: (line.get(name) or "").strip() for name in ("file", "condition", "animal", "cell")}
+        raise UsageError(f"stop_s {stop_s:g} is not after start_s {start_s:g}", where=row.where, remedy="swap or mend them")
     if not words["file"]:
-        raise UsageError("names no file", where=where, remedy="fill the column 'file'")
+        raise UsageError("names no file", where=row.where, remedy="fill the column 'file'")
     return ConditionRow(words["file"], start_s, stop_s, words["condition"], words["animal"], words["cell"])
 
 
-def _time(line: Mapping[str, str | None], name: str, where: str, is_comma_decimal: bool) -> float:
-    said = (line.get(name) or "").strip()
+def _time(words: Mapping[str, str], name: str, where: str, table: PlainTable) -> float:
+    said = words[name]
     try:
-        value = float(said.replace(",", ".") if is_comma_decimal else said) if said else math.nan
+        value = float(table.point(said)) if said else math.nan
     except ValueError:
         raise UsageError(f"{name} = {said!r} is not a number of seconds", where=where, remedy="give seconds") from None
     if math.isinf(value):

@@ -2,18 +2,17 @@
 
 from __future__ import annotations
 
-import csv
 from collections.abc import Collection
-from pathlib import Path
 
 from unitclass.errors import UsageError
+from unitclass.io.plain_tables import read_plain_table
 from unitclass.io.safe_text import safe_text
 
 COLUMNS = ("type", "word")
 
 
 def read_crosswalk(path: str, known: Collection[str]) -> dict[str, str]:
-    """Return type id to word from a table (CSV, UTF-8) with the columns `type` and `word`.
+    """Return type id to word from a plain table with the columns `type` and `word`.
 
     Parameters
     ----------
@@ -24,20 +23,14 @@ def read_crosswalk(path: str, known: Collection[str]) -> dict[str, str]:
     Raises
     ------
     UsageError
-        When it cannot be read, has other columns, or names an unknown type.
+        When it cannot be read, lacks a column, or names an unknown type.
     """
-    try:
-        with Path(path).open(encoding="utf-8-sig", newline="") as file:
-            reader = csv.DictReader(file)
-            if tuple(reader.fieldnames or ())[:2] != COLUMNS:
-                raise UsageError(f"has the columns {', '.join(reader.fieldnames or ()) or 'none'}", where=path,
-                                 remedy="make the first line: type,word")
-            rows = [(str(row["type"]).strip(), safe_text(str(row["word"] or "").strip())) for row in reader]
-    except (OSError, UnicodeDecodeError, csv.Error) as error:
-        raise UsageError("cannot be read", where=path, remedy=str(error)) from error
-    for name, word in rows:
+    words = {}
+    for row in read_plain_table(path, COLUMNS, remedy="make the first line: type,word").rows:
+        name, word = row.cells["type"].strip(), safe_text(row.cells["word"].strip())
         if name not in known:
-            raise UsageError(f"{name!r} is no type", where=path, remedy="use " + ", ".join(known))
+            raise UsageError(f"{name!r} is no type", where=row.where, remedy="use " + ", ".join(known))
         if not word:
-            raise UsageError(f"{name!r} has no word", where=path, remedy="give one or leave the line out")
-    return dict(rows)
+            raise UsageError(f"{name!r} has no word", where=row.where, remedy="give one or leave the line out")
+        words[name] = word
+    return words

@@ -23,6 +23,7 @@ from unitclass.io import cached_pieces
 from unitclass.io.cache_file import open_cache
 from unitclass.io.cached_session import CachedSession
 from unitclass.io.codec import layout_digest
+from unitclass.io.condition_table import ConditionTable
 from unitclass.io.store_text import storable
 from unitclass.records import SessionResult
 
@@ -75,10 +76,11 @@ class CacheKey:
     program: str = field(default_factory=lambda: f"{__version__} {layout_digest()} {program_stamp()}")
 
 
-def cache_options(nerve: str, condition_column: str, only: str, condition_text: str, *,
+def cache_options(nerve: str, condition_column: str, only: str, conditions: ConditionTable | None, *,
                   is_cycles_only: bool = False) -> str:
     """Return the text for `CacheKey.options`: the command's words, and the table of conditions in full."""
-    return repr((nerve, condition_column, only, condition_text, *(("cycles",) if is_cycles_only else ())))
+    rows = conditions.rows if conditions is not None else ()
+    return repr((nerve, condition_column, only, rows, is_cycles_only))
 
 
 class ResultCache:

@@ -12,25 +12,17 @@ from typing import Any
 import numpy as np
 
 from unitclass import __version__
+from unitclass.analysis.changes import type_of
 from unitclass.classify.templates import TypeLibrary
 from unitclass.io.safe_text import safe_text
 from unitclass.records import ConditionResult, Cycles, Labels, Recording, SessionResult, UnitResult
 from unitclass.report.glance import glance
 from unitclass.report.methods import REFERENCES, methods_paragraph
-from unitclass.report.session_figures import type_of
+from unitclass.report.saving import Picture
 from unitclass.settings import Settings
 from unitclass.signals.summary import MEASURES
 
 PAGES = Path(__file__).parent / "pages"
-
-
-@dataclass(frozen=True)
-class Picture:
-    """A figure in a page: its SVG, its caption, and the files that hold it at full size."""
-
-    svg: str
-    caption: str
-    files: tuple[str, ...] = ()
 
 
 @dataclass(frozen=True)
@@ -41,7 +33,9 @@ class SessionPage:
     result: SessionResult
     labels: Labels
     pictures: Mapping[str, tuple[Picture, ...]]
-    """Condition to its figures; "" holds those of the whole session."""
+    """Condition to its figures."""
+    whole: tuple[Picture, ...] = ()
+    """Figures of the whole session."""
     unit_files: Mapping[tuple[str, str], tuple[str, ...]] = field(default_factory=dict)
     """Key of a unit to the files of its full figure."""
 
@@ -64,7 +58,7 @@ def session_html(page: SessionPage, library: TypeLibrary, settings: Settings) ->
     decided = sum(bool(label.type) for label in page.labels.values())
     return str(_environment().get_template("session.html").render(
         version=__version__, result=page.result, recording=page.recording, n_decided=decided,
-        conditions=[_condition(c, page) for c in page.result.conditions], whole=page.pictures.get("", ()),
+        conditions=[_condition(c, page) for c in page.result.conditions], whole=page.whole,
         methods=methods_paragraph([page.result], library, settings, with_membrane=has_membrane(page.result)),
         references=REFERENCES,
         settings=list(settings.tunables()), templates=_template_rows(library)))
@@ -104,7 +98,7 @@ def _condition(condition: ConditionResult, page: SessionPage) -> dict[str, Any]:
     name = condition.condition.name
     return {
         "it": condition, "name": name or "whole session", "n_used": int(cycles.accepted.sum()),
-        "n_all": cycles.n_cycles, "left_out": _left_out(cycles), "pictures": page.pictures.get(name or " ", ()),
+        "n_all": cycles.n_cycles, "left_out": _left_out(cycles), "pictures": page.pictures.get(name, ()),
         "summary": _summary(condition.nerve_cycles.summary),
         "units": [_unit(unit, page, glance(unit, nerve)) for unit in condition.units],
         "counts": Counter(type_of(unit, page.labels) for unit in condition.units).most_common()}

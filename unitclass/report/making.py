@@ -6,26 +6,19 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from hashlib import sha256
 from pathlib import Path, PurePath
-from urllib.parse import quote
 
-from unitclass.analysis.changes import TypeChange, type_changes
+from unitclass.analysis.changes import TypeChange, type_changes, type_of
 from unitclass.classify.templates import TypeLibrary
 from unitclass.io.atomic import written_whole
 from unitclass.records import ConditionResult, Labels, Recording, SessionResult
 from unitclass.report.counts import TypedUnit
-from unitclass.report.document import Picture, SessionPage, session_html
-from unitclass.report.saving import Drawn, as_svg, save
-from unitclass.report.session_figures import (
-    changes_figure,
-    conditions_figure,
-    cycles_figure,
-    population_figure,
-    type_of,
-)
+from unitclass.report.cycles_figure import cycles_figure
+from unitclass.report.document import SessionPage, session_html
+from unitclass.report.population_figure import population_figure
+from unitclass.report.saving import FIGURES, Drawn, Picture, links, picture, save
+from unitclass.report.session_figures import changes_figure, conditions_figure
 from unitclass.report.unit_figure import Shown, unit_figure
 from unitclass.settings import Settings
-
-FIGURES = "figures"
 
 
 @dataclass(frozen=True)
@@ -73,21 +66,20 @@ def write_session(session: Session, wanted: Wanted, library: TypeLibrary, settin
         for name, drawn in _condition_figures(session, condition, order, wanted.stretches_s):
             files = save(drawn, _stem(session, wanted, condition, name), wanted.formats, force=wanted.force)
             yield from files
-            kept.append(_picture(drawn, files))
-        pictures[condition.condition.name or " "] = tuple(kept)
+            kept.append(picture(drawn, files))
+        pictures[condition.condition.name] = tuple(kept)
     whole = []
     for name, drawn in _session_figures(session, order, wanted):
         files = save(drawn, wanted.folder / FIGURES / f"{session.stem}-{name}", wanted.formats, force=wanted.force)
         yield from files
-        whole.append(_picture(drawn, files))
-    pictures[""] = tuple(whole)
+        whole.append(picture(drawn, files))
     unit_files: dict[tuple[str, str], tuple[str, ...]] = {}
     for key, files in _unit_figures(session, wanted):
         yield from files
-        unit_files[key] = _links(files)
+        unit_files[key] = links(files)
     page = wanted.folder / f"{session.stem}.html"
-    text = session_html(SessionPage(session.recording, session.result, session.labels, pictures, unit_files), library,
-                        settings)
+    text = session_html(SessionPage(session.recording, session.result, session.labels, pictures, tuple(whole), unit_files),
+                        library, settings)
     write_page(page, text, force=wanted.force)
     yield page
 
@@ -160,11 +152,3 @@ def safe_name(name: str) -> str:
     if plain == name.replace(" ", "_"):
         return plain
     return f"{plain}-{sha256(name.encode(errors='surrogatepass')).hexdigest()[:6]}"
-
-
-def _picture(drawn: Drawn, files: Sequence[Path]) -> Picture:
-    return Picture(as_svg(drawn), drawn.caption, _links(files))
-
-
-def _links(files: Sequence[Path]) -> tuple[str, ...]:
-    return tuple(f"{FIGURES}/{quote(file.name)}" for file in files)

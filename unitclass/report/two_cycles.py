@@ -14,13 +14,18 @@ if TYPE_CHECKING:
 
 
 def doubled(values: FloatArray) -> FloatArray:
-    """Return a profile over one cycle twice."""
-    return np.concatenate([values, values])
+    """Return profiles over one cycle (last axis) twice."""
+    return np.concatenate([values, values], axis=-1)
 
 
 def edges(n_bins: int) -> FloatArray:
     """Return the bin edges over two cycles, canonical phase, shape (2 n_bins + 1,)."""
     return np.linspace(0.0, 4.0, 2 * n_bins + 1)
+
+
+def centres(n_bins: int) -> FloatArray:
+    """Return the bin centres over two cycles, canonical phase, shape (2 n_bins,)."""
+    return np.asarray((np.arange(2 * n_bins) + 0.5) * (2.0 / n_bins))
 
 
 def phase_axis(axes: Axes, *, with_words: bool = True) -> None:

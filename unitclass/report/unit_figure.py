@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from unitclass.io.table_files import Cell
+from unitclass.io.tables import number
 from unitclass.records import ConditionResult, Envelope, FloatArray, Label, Membrane, Recording, UnitResult
 from unitclass.report.saving import Drawn
 from unitclass.report.stretch import Trace, trace_of, usual_stretch
@@ -20,17 +21,16 @@ from unitclass.report.style import (
     MM,
     NERVE,
     PALE,
-    SERIES,
     TWO_COLUMNS,
     above_axes,
     bare,
     drawing,
     new_figure,
     nice_length,
-    quantity,
     scale_bar,
 )
-from unitclass.report.two_cycles import doubled, phase_axis, steps
+from unitclass.report.traces import draw_envelope, draw_trace, within
+from unitclass.report.two_cycles import centres, doubled, phase_axis, steps
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -132,42 +132,18 @@ def _draw_stretch(s: _Stretch, figure: Figure, place: SubplotSpec) -> None:
         for start, stop in s.inspirations:
             axes.axvspan(start, stop, color=INSPIRATION, linewidth=0, zorder=0)
     if s.raw is not None:
-        _draw_trace(rows[0], s.raw, f"{s.raw.name}, raw", GREY)
+        draw_trace(rows[0], s.raw, f"{s.raw.name}, raw", GREY)
     for axes, envelope in zip(rows[s.raw is not None:], s.envelopes, strict=False):
-        _draw_envelope(axes, envelope, s)
-    _draw_cell(rows[-1], s)
+        draw_envelope(axes, envelope, s.start_s, s.stop_s)
+    _drawnumber(rows[-1], s)
     length = nice_length(s.stop_s - s.start_s)
     low, high = rows[-1].get_ylim()
     scale_bar(rows[-1], length, f"{length:g} s", at=(s.stop_s - length, low - 0.12 * (high - low)))
 
 
-def _draw_trace(axes: Axes, trace: Trace, words: str, color: str) -> None:
-    axes.fill_between(trace.times_s, trace.low, trace.high, color=color, linewidth=0.3)
-    axes.set_ylabel(words, rotation=0, ha="right", va="center")
-    _height_bar(axes, trace.low, trace.high, trace.unit)
-
-
-def _height_bar(axes: Axes, low: FloatArray, high: FloatArray, unit: str) -> None:
-    if not low.size or not np.isfinite(high).any():
-        return
-    span = float(np.nanmax(high) - np.nanmin(low))
-    length = nice_length(2 * span)
-    right = axes.get_xlim()[1]
-    scale_bar(axes, length, quantity(length, unit), at=(right, float(np.nanmin(low))), is_vertical=True)
-
-
-def _draw_envelope(axes: Axes, envelope: Envelope, s: _Stretch) -> None:
-    times = envelope.times_s
-    inside = (times >= s.start_s) & (times < s.stop_s)
-    values = envelope.values[inside]
-    axes.plot(times[inside], values, color=SERIES[0])
-    axes.set_ylabel(f"\u222b {envelope.name}", rotation=0, ha="right", va="center")
-    _height_bar(axes, values, values, envelope.unit)
-
-
-def _draw_cell(axes: Axes, s: _Stretch) -> None:
+def _drawnumber(axes: Axes, s: _Stretch) -> None:
     if s.potential is not None:
-        _draw_trace(axes, s.potential, "Vm", FIRING)
+        draw_trace(axes, s.potential, "Vm", FIRING)
         return
     axes.eventplot([s.spikes_s], lineoffsets=0.5, linelengths=0.9, linewidths=0.5, colors=FIRING)
     axes.set_ylim(0, 1)
@@ -186,9 +162,9 @@ def _draw_cycle(shown: Shown, figure: Figure, place: SubplotSpec) -> None:
     if unit.vm is not None:
         potential = figure.add_subplot(grid[2])
         mean, sd = doubled(unit.vm.mean_mv), doubled(unit.vm.sd_mv)
-        centres = (np.arange(mean.size) + 0.5) * (4.0 / mean.size)
-        potential.fill_between(centres, mean - sd, mean + sd, color=PALE, linewidth=0)
-        potential.plot(centres, mean, color=FIRING)
+        at = centres(unit.vm.mean_mv.size)
+        potential.fill_between(at, mean - sd, mean + sd, color=PALE, linewidth=0)
+        potential.plot(at, mean, color=FIRING)
         phase_axis(potential)
         potential.set_ylabel("Vm (mV)")
 
@@ -210,20 +186,20 @@ def _draw_histogram(axes: Axes, shown: Shown, *, with_words: bool) -> None:
     top = float(np.nanmax(np.r_[rate, unit.suggestion.fitted_high_hz, 1e-9]))
     steps(axes, rate, fill=True, color=PALE, label="spikes")
     steps(axes, rate, color=FIRING, linewidth=0.7)
-    centres = (np.arange(2 * h.n_bins) + 0.5) * (2.0 / h.n_bins)
+    at = centres(h.n_bins)
     if np.isfinite(h.low_hz).any():
-        axes.vlines(centres, doubled(h.low_hz), doubled(h.high_hz), color=GREY, linewidth=0.4)
+        axes.vlines(at, doubled(h.low_hz), doubled(h.high_hz), color=GREY, linewidth=0.4)
     s = unit.suggestion
     if s.fitted_rate_hz.size == h.n_bins:
-        axes.fill_between(centres, doubled(s.fitted_low_hz), doubled(s.fitted_high_hz), color=FAMILY, alpha=0.2,
+        axes.fill_between(at, doubled(s.fitted_low_hz), doubled(s.fitted_high_hz), color=FAMILY, alpha=0.2,
                           linewidth=0)
-        axes.plot(centres, doubled(s.fitted_rate_hz), color=FAMILY, linestyle="--", label=f"family {s.type}, 90 %")
+        axes.plot(at, doubled(s.fitted_rate_hz), color=FAMILY, linestyle="--", label=f"family {s.type}, 90 %")
     for profile in shown.condition.nerve_profiles[:1]:
         mean = doubled(profile.mean)
         spread = np.nanmax(mean) - np.nanmin(mean)
         if spread > 0:
             scaled = top * (mean - np.nanmin(mean)) / spread
-            axes.plot((np.arange(mean.size) + 0.5) * (4.0 / mean.size), scaled, color=NERVE, linewidth=1.0,
+            axes.plot(centres(profile.mean.size), scaled, color=NERVE, linewidth=1.0,
                       label=f"{profile.name}, mean")
     phase_axis(axes, with_words=with_words)
     highest = float(np.nanmax(np.r_[top, h.high_hz]))
@@ -269,20 +245,15 @@ def _rows(shown: Shown, s: _Stretch) -> list[dict[str, Cell]]:
     h = unit.histogram
     fitted = unit.suggestion.fitted_rate_hz
     for i in range(h.n_bins):
-        rows.append({"panel": "phase", "x": float(h.centres[i]), "unit_of_x": "canonical phase", "y": _cell(h.rate_hz[i]),
-                     "unit_of_y": "spikes/s", "low": _cell(h.low_hz[i]), "high": _cell(h.high_hz[i]),
-                     "family": _cell(fitted[i]) if fitted.size == h.n_bins else None})
+        rows.append({"panel": "phase", "x": float(h.centres[i]), "unit_of_x": "canonical phase", "y": number(h.rate_hz[i]),
+                     "unit_of_y": "spikes/s", "low": number(h.low_hz[i]), "high": number(h.high_hz[i]),
+                     "family": number(fitted[i]) if fitted.size == h.n_bins else None})
     for locked in unit.locked[:2]:
-        rows += [{"panel": f"locked to {locked.lock}", "x": float(t), "unit_of_x": "ms", "y": _cell(r),
+        rows += [{"panel": f"locked to {locked.lock}", "x": float(t), "unit_of_x": "ms", "y": number(r),
                   "unit_of_y": "spikes/s"}
                  for t, r in zip(locked.centres_ms, locked.rate_hz, strict=True)]
     rows += [{"panel": "spikes", "x": float(t), "unit_of_x": "s"} for t in s.spikes_s]
     for envelope in s.envelopes:
-        inside = (envelope.times_s >= s.start_s) & (envelope.times_s < s.stop_s)
-        rows += [{"panel": envelope.name, "x": float(t), "unit_of_x": "s", "y": _cell(v), "unit_of_y": envelope.unit}
-                 for t, v in zip(envelope.times_s[inside], envelope.values[inside], strict=True)]
+        rows += [{"panel": envelope.name, "x": float(t), "unit_of_x": "s", "y": number(v), "unit_of_y": envelope.unit}
+                 for t, v in zip(*within(envelope, s.start_s, s.stop_s), strict=True)]
     return rows
-
-
-def _cell(value: float) -> float | None:
-    return float(value) if np.isfinite(value) else None

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from concurrent.futures import ThreadPoolExecutor
 
 import numpy as np
 
@@ -17,9 +16,6 @@ from unitclass.signals.neurogram import Activity, displayed
 from unitclass.signals.rhythm import burst_shape, rhythm_evidence
 from unitclass.signals.summary import summarised
 from unitclass.signals.tags import Draft, drafted, edited, tagged
-
-N_THREADS = 1  # beside the one that looks at the reference
-LONG_S = 3000.0
 
 
 def find_cycles(reference: Signal, others: Sequence[Signal], *, start_s: float, stop_s: float, settings: Settings,
@@ -54,15 +50,9 @@ def find_cycles(reference: Signal, others: Sequence[Signal], *, start_s: float, 
     SignalError
         When the nerve holds no usable sample here or no burst stands clear of its floor.
     """
-    # Nerves do not need each other until here, and reading and arithmetic let other threads run. The
-    # reference comes last: its traces stay, those of the others are let go.
-    is_long = stop_s - start_s > LONG_S
-    with ThreadPoolExecutor(N_THREADS) as pool:
-        looking = [pool.submit(_read_other, signal, settings, start_s, stop_s) for signal in others]
-        if is_long:
-            pool.shutdown()  # of long stretches one nerve at a time is in memory
-        marks = find_marks(reference, settings, start_s=start_s, stop_s=stop_s, threshold_scale=_threshold_scale(edits))
-        nerves, notes = _seen([future.result() for future in looking])
+    # One nerve after the other, the reference last: its traces stay, those of the others are let go.
+    nerves, notes = _seen([_read_other(signal, settings, start_s, stop_s) for signal in others])
+    marks = find_marks(reference, settings, start_s=start_s, stop_s=stop_s, threshold_scale=_threshold_scale(edits))
     draft = drafted(marks, stop_s)
     cycles = _judged(draft, marks, settings, exclusions, start_s)
     for nerve in nerves:
