@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from sklearn.metrics import adjusted_rand_score
 
-from unitclass.classify.clustering import components, shape_groups
+from unitclass.classify.clustering import components, relative_rates, shape_groups
 from unitclass.records import FloatArray
 
 PHASE = (np.arange(40) + 0.5) / 20
@@ -60,7 +60,8 @@ def test_groups_are_named_in_the_order_of_phase_and_do_not_depend_on_the_order_o
 
 def test_a_groups_shape_does_not_depend_on_how_fast_its_units_fire():
     counts, exposure, _ = population(15)
-    assert components(10 * counts, exposure) == pytest.approx(components(counts, exposure))
+    assert components(relative_rates(10 * counts, exposure)) == pytest.approx(
+        components(relative_rates(counts, exposure)))
 
 
 def test_a_group_that_no_type_holds_most_of_is_not_explained():

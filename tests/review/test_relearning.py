@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
@@ -36,6 +38,20 @@ def test_a_habit_seen_in_three_cells_reaches_the_others_of_their_shape(view):
     changed = relearned([view], [Lesson(k, "aug-E", "viewed") for k in cells[:3]], read_library(""), Settings())
     assert changed[cells[3]].type == "aug-E"
     assert not changed.keys() & set(of_type(view, "post-I"))
+
+
+def test_a_condition_without_a_cycle_in_use_is_no_obstacle(view):
+    result = view.session_result()
+    condition = result.conditions[0]
+    cycles = condition.nerve_cycles.cycles
+    nothing = replace(cycles, accepted=np.zeros(cycles.n_cycles, dtype=bool))
+    idle = replace(condition, condition=replace(condition.condition, name="idle"),
+                   nerve_cycles=replace(condition.nerve_cycles, cycles=nothing),
+                   units=tuple(replace(unit, condition="idle") for unit in condition.units))
+    both = MemorySession(replace(result, conditions=(condition, idle)))
+    lessons = [Lesson(k, "aug-E", "viewed") for k in of_type(view, "con-E")[:3]]
+    assert relearned([both], lessons, read_library(""), Settings()).keys() >= relearned(
+        [view], lessons, read_library(""), Settings()).keys()
 
 
 def test_no_labels_change_no_suggestion(view):

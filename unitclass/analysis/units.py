@@ -24,7 +24,6 @@ from unitclass.records import Cycles, Suggestion, UnitResult, VmProfile
 from unitclass.settings import Settings
 
 SEED = 1
-USUAL = Timing(ti_s=1.0, te_s=2.0)  # before any cycle is known
 
 
 @dataclass(frozen=True)
@@ -57,7 +56,7 @@ def judge_units(found: ConditionCycles, cells: Sequence[Cell], library: TypeLibr
                                             other_prior=settings.classify.other_prior))
     cycles = found.brainstem_cycles(settings)
     seen = _seen(cells, cycles, settings, beats)
-    drawn = draw_families(library, _timing(cycles), n_bins=settings.phase.n_bins,
+    drawn = draw_families(library, Timing.of(cycles), n_bins=settings.phase.n_bins,
                           n_draws=settings.classify.n_draws)
     table = stacked([one.row for one in seen], settings.phase.n_bins)
     suggested = suggest([_facts(one) for one in seen], table, found.nerve_cycles.rhythm,
@@ -90,12 +89,6 @@ def _seen(cells: Sequence[Cell], cycles: Cycles, settings: Settings, beats: Sequ
 
 def _row(profile: CountedProfile) -> CountRow:
     return count_row(profile.by_phase, profile.exposure.seconds, profile.modulation.eta_squared_p)
-
-
-def _timing(cycles: Cycles) -> Timing:
-    if not cycles.n_cycles:
-        return USUAL
-    return Timing(float(np.median(cycles.ti_s)), float(np.median(cycles.te_s)))
 
 
 def _facts(one: _Seen) -> UnitFacts:

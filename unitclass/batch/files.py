@@ -18,6 +18,7 @@ from unitclass.errors import FileError, UnitclassError
 from unitclass.io.condition_table import ConditionTable
 from unitclass.io.nwb_read import read_recording
 from unitclass.io.result_cache import CacheKey, FileStamp, ResultCache, cache_options
+from unitclass.io.store_reading import digest_of_edits
 from unitclass.records import CycleEdit, Recording, SessionResult
 from unitclass.settings import Settings
 
@@ -52,6 +53,8 @@ class Outcome:
     result: SessionResult | None = None
     problem: str = ""
     is_kept: bool = False
+    edits_digest: str = ""
+    """Tells apart the cycle edits that the result was made with."""
 
 
 def read_planned(path: str, plan: Plan) -> Recording:
@@ -83,7 +86,7 @@ def edits_of(recording: Recording, plan: Plan) -> tuple[CycleEdit, ...]:
         return store.edits_for(recording.identifier, recording.object_id)
 
 
-def edits_digest(plan: Plan, identifier: str, object_id: str) -> str:
+def _edits_digest(plan: Plan, identifier: str, object_id: str) -> str:
     """Return what tells apart a session's cycle edits; as the review computes it."""
     if not plan.store:
         return ""
@@ -100,8 +103,8 @@ def analyse_file(path: str, plan: Plan) -> Outcome:
     method = cycles_only if plan.cycles_only else analyse
     try:
         recording = read_planned(path, plan)
-        result = method(recording, plan.library, plan.settings, edits=edits_of(recording, plan),
-                        program_version=__version__)
+        edits = edits_of(recording, plan)
+        result = method(recording, plan.library, plan.settings, edits=edits, program_version=__version__)
     except UnitclassError as error:
         return Outcome(path, problem=str(error))
     except Exception as error:
@@ -109,7 +112,7 @@ def analyse_file(path: str, plan: Plan) -> Outcome:
             raise
         return Outcome(path, problem=f"{path}: failed in a way that nobody foresaw ({type(error).__name__}: {error}); "
                                      "run it alone with --debug and report what it prints")
-    return Outcome(path, result)
+    return Outcome(path, result, edits_digest=digest_of_edits(edits))
 
 
 @dataclass(frozen=True)
@@ -145,7 +148,7 @@ def analyse_files(paths: Sequence[str], plan: Plan, runner: Runner, cache: Resul
 def _begin(path: str, plan: Plan, runner: Runner, cache: ResultCache | None) -> _Begun:
     stamp = _stamp(path)
     if cache is not None:
-        found = cache.find(path, plan.key, edits_digest_of=lambda *names: edits_digest(plan, *names))
+        found = cache.find(path, plan.key, edits_digest_of=lambda *names: _edits_digest(plan, *names))
         if found is not None:
             return _Begun(path, stamp, known=Outcome(path, found.session_result(), is_kept=True))
     return _Begun(path, stamp, task=runner.submit(analyse_file, runner.path_there(path), plan))
@@ -163,8 +166,7 @@ def _finished(one: _Begun, plan: Plan, runner: Runner, cache: ResultCache | None
         return Outcome(one.path, problem=f"{one.path}: {error}")
     outcome = _as_named(outcome, one.path)
     if cache is not None and one.stamp is not None and outcome.result is not None:
-        result = outcome.result
-        cache.put(result, one.stamp, plan.key, edits_digest=edits_digest(plan, result.identifier, result.object_id))
+        cache.put(outcome.result, one.stamp, plan.key, edits_digest=outcome.edits_digest)
     return outcome
 
 
@@ -173,7 +175,7 @@ def _as_named(outcome: Outcome, path: str) -> Outcome:
     if outcome.path == path:
         return outcome
     result = None if outcome.result is None else replace(outcome.result, path=path)
-    return Outcome(path, result, outcome.problem.replace(outcome.path, path))
+    return replace(outcome, path=path, result=result, problem=outcome.problem.replace(outcome.path, path))
 
 
 def _stamp(path: str) -> FileStamp | None:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import os
 from collections.abc import Iterator
-from concurrent.futures import Future, ProcessPoolExecutor
+from concurrent.futures import ProcessPoolExecutor
 from contextlib import contextmanager
 from dataclasses import dataclass
 from typing import Any, Protocol
@@ -20,7 +20,8 @@ class Task:
     """One call that was handed over, kept so that it can be handed over again."""
 
     call: tuple[Any, ...]
-    future: Any
+    promise: Any
+    """What the runner gives the result for."""
 
 
 class Runner(Protocol):
@@ -52,13 +53,11 @@ class Here:
 
     def submit(self, *call: Any) -> Task:
         """Call now."""
-        future: Future[Any] = Future()
-        future.set_result(call[0](*call[1:]))
-        return Task(call, future)
+        return Task(call, call[0](*call[1:]))
 
     def result(self, task: Task) -> Any:
         """Return what the call gave."""
-        return task.future.result()
+        return task.promise
 
 
 class Processes:
@@ -99,11 +98,11 @@ class Processes:
         from concurrent.futures.process import BrokenProcessPool
 
         try:
-            return task.future.result()
+            return task.promise.result()
         except BrokenProcessPool:
             pass
         try:
-            return self.submit(*task.call).future.result()
+            return self.submit(*task.call).promise.result()
         except BrokenProcessPool:
             raise UnitclassError("its worker process died", remedy="perhaps memory ran out: try it alone, or with "
                                                                    "fewer --workers") from None
@@ -144,7 +143,7 @@ class Cluster:
         from distributed import KilledWorker
 
         try:
-            return task.future.result()
+            return task.promise.result()
         except KilledWorker:
             raise UnitclassError("the cluster's workers died over it", remedy="perhaps memory ran out") from None
         except (CancelledError, OSError, TimeoutError) as error:

@@ -99,27 +99,27 @@ def shape_groups(counts: FloatArray, exposure_s: FloatArray, types: Sequence[str
     Returns
     -------
     ShapeGroups
-        With fewer than two dozen units there is one group only when they are alike; with fewer
-        than 12 none is named.
+        Without groups where there are fewer than two times UNITS_A_GROUP units.
     """
     n_units = len(counts)
     if n_units < 2 * UNITS_A_GROUP:
         return ShapeGroups(("",) * n_units, (), np.nan, np.nan, {})
     from sklearn.metrics import adjusted_rand_score
 
-    points = components(counts, exposure_s)
+    rate = relative_rates(counts, exposure_s)
+    points = components(rate)
     mixture, criterion = _chosen(points)
-    number = _in_order(mixture.predict(points), _rates(counts, exposure_s))
+    number = _in_order(mixture.predict(points), rate)
     repeated = _repeated(points, mixture.n_components, n_repetitions)
     names = tuple(f"G{k + 1}" for k in number)
-    groups = tuple(_group(k, number, _rates(counts, exposure_s), types, repeated) for k in range(int(number.max()) + 1))
+    groups = tuple(_group(k, number, rate, types, repeated) for k in range(int(number.max()) + 1))
     return ShapeGroups(names, groups, float(np.mean([adjusted_rand_score(number, r) for r in repeated])),
                        float(adjusted_rand_score(list(types), number)), criterion)
 
 
-def components(counts: FloatArray, exposure_s: FloatArray) -> FloatArray:
-    """Return each unit's shape as a few numbers, shape (n_units, n_components)."""
-    shape = np.sqrt(np.maximum(_smoothed(_rates(counts, exposure_s)), 0.0))
+def components(rate: FloatArray) -> FloatArray:
+    """Return each unit's shape, rates of shape (n_units, n_bins), as a few numbers, shape (n_units, n_components)."""
+    shape = np.sqrt(np.maximum(_smoothed(rate), 0.0))
     shape = shape / np.maximum(np.linalg.norm(shape, axis=1, keepdims=True), 1e-12)
     centred = shape - shape.mean(axis=0)
     left, size, _ = np.linalg.svd(centred, full_matrices=False)
@@ -128,7 +128,7 @@ def components(counts: FloatArray, exposure_s: FloatArray) -> FloatArray:
     return np.asarray(left[:, :n] * size[:n])
 
 
-def _rates(counts: FloatArray, exposure_s: FloatArray) -> FloatArray:
+def relative_rates(counts: FloatArray, exposure_s: FloatArray) -> FloatArray:
     """Return rates scaled to a mean of 1; bins never observed take the unit's mean."""
     rate = np.divide(counts, exposure_s, out=np.full(counts.shape, np.nan), where=exposure_s > 0)
     mean = np.nanmean(rate, axis=1, keepdims=True)

@@ -10,7 +10,7 @@ import numpy as np
 
 from unitclass.classify.shapes import FORM_SHAPES, Parameters
 from unitclass.classify.templates import COMMON, FORMS, NEEDED, Family, TypeLibrary
-from unitclass.records import BoolArray, FloatArray, IntArray
+from unitclass.records import BoolArray, Cycles, FloatArray, IntArray
 
 FINE = 4  # points per bin on which a profile is evaluated before it is averaged into bins
 SELDOM_LARGE = ("background", "foreign", "dip", "second_start", "wiggle")  # none, small, now and then large
@@ -25,6 +25,17 @@ class Timing:
 
     ti_s: float
     te_s: float
+
+    @classmethod
+    def of(cls, cycles: Cycles) -> Timing:
+        """Return the medians over cycles in use; a usual breath's where there are none."""
+        used = cycles.used()
+        if not used.n_cycles:
+            return USUAL
+        return cls(float(np.median(used.ti_s)), float(np.median(used.te_s)))
+
+
+USUAL = Timing(ti_s=1.0, te_s=2.0)  # common practice
 
 
 @dataclass(frozen=True)

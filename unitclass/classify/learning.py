@@ -21,7 +21,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from unitclass.classify.draws import DrawnFamilies
-from unitclass.classify.likelihood import evidence_weight, log_likelihood
+from unitclass.classify.likelihood import evidence_weight, log_likelihood, sum_by_family
 from unitclass.records import OTHER, FloatArray, IntArray
 
 SHAPE_SPIKES = 100.0  # a label speaks of cells that this many spikes would not tell from its own
@@ -103,7 +103,7 @@ def learn(lessons: ShapeCounts, labels: Sequence[str], weight: FloatArray, drawn
     Parameters
     ----------
     lessons : ShapeCounts
-        The labelled units.
+        The labelled units, at least one.
     labels : sequence of str, length n_labels
         Ids of families, or "other".
     weight : ndarray, shape (n_labels,)
@@ -118,7 +118,7 @@ def learn(lessons: ShapeCounts, labels: Sequence[str], weight: FloatArray, drawn
     index = np.array([types.index(label) for label in labels], dtype=np.int64)
     named = weight[:, None] * np.eye(len(types))[index]
     log_lik = coarse_log_likelihood(lessons, drawn)
-    closeness = np.exp(log_lik - log_lik.max(axis=1, keepdims=True)) if log_lik.size else log_lik
+    closeness = np.exp(log_lik - log_lik.max(axis=1, keepdims=True))
     family, origin = _family_names(lessons.first, index, named)
     closeness = closeness * origin[:, drawn.owner]
     support = closeness.T @ named
@@ -128,18 +128,16 @@ def learn(lessons: ShapeCounts, labels: Sequence[str], weight: FloatArray, drawn
 
 
 def teach(units: ShapeCounts, learned: Learned, drawn: DrawnFamilies) -> Taught:
-    """Return the probabilities of units once the labels have spoken."""
+    """Return the probabilities of units, at least one, once the labels have spoken."""
     blocks = [_teach_block(units.rows(slice(i, i + BLOCK)), learned, drawn)
               for i in range(0, len(units.counts), BLOCK)]
-    if not blocks:
-        return Taught(units.first, np.zeros((0, learned.labels.size)))
     return Taught(np.concatenate([b.probabilities for b in blocks]), np.concatenate([b.kinship for b in blocks]))
 
 
 def _teach_block(units: ShapeCounts, learned: Learned, drawn: DrawnFamilies) -> Taught:
     log_lik = coarse_log_likelihood(units, drawn)
-    before, owned = _within(log_lik + drawn.log_weight, drawn)
-    after, share = _within(log_lik + learned.log_weight, drawn)
+    before, owned = sum_by_family(log_lik + drawn.log_weight, drawn)
+    after, share = sum_by_family(log_lik + learned.log_weight, drawn)
     joint = units.first * np.exp(np.column_stack([after - before, np.zeros(len(after))]) + learned.log_usual)
     joint = joint / joint.sum(axis=1, keepdims=True)
     on_draws = share * joint[:, drawn.owner]
@@ -151,15 +149,6 @@ def coarse_log_likelihood(units: ShapeCounts, drawn: DrawnFamilies) -> FloatArra
     """Return the log-likelihood of draws, of as few spikes as tell shapes apart roughly."""
     weight = evidence_weight(units.counts.sum(axis=1), np.ones(len(units.counts)), SHAPE_SPIKES)
     return np.asarray(weight[:, None] * log_likelihood(units.counts, units.exposure_s, drawn.rate))
-
-
-def _within(log_joint: FloatArray, drawn: DrawnFamilies) -> tuple[FloatArray, FloatArray]:
-    """Return each family's log evidence, and the share of each draw within its family."""
-    starts = np.searchsorted(drawn.owner, np.arange(len(drawn.types)))
-    top = np.maximum.reduceat(log_joint, starts, axis=1)
-    spread = np.exp(log_joint - top[:, drawn.owner])
-    total = np.add.reduceat(spread, starts, axis=1)
-    return top + np.log(total), spread / total[:, drawn.owner]
 
 
 def _family_names(first: FloatArray, labels: IntArray, named: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -180,7 +169,7 @@ def _family_names(first: FloatArray, labels: IntArray, named: FloatArray) -> tup
 
 
 def _moved_weight(closeness: FloatArray, weight: FloatArray, drawn: DrawnFamilies) -> FloatArray:
-    gained = weight @ closeness if closeness.size else np.zeros(drawn.owner.size)
+    gained = weight @ closeness
     mass = USUAL_SHAPE * np.exp(drawn.log_weight) + gained / np.maximum(_family_sum(closeness.sum(axis=0), drawn), 1.0)
     return np.asarray(np.log(mass / _family_sum(mass, drawn)))
 
@@ -193,5 +182,5 @@ def _family_sum(values: FloatArray, drawn: DrawnFamilies) -> FloatArray:
 def _log_usual(first: FloatArray, weight: FloatArray) -> FloatArray:
     n_types = first.shape[1]
     even = np.full(n_types, 1.0 / n_types)
-    seen = weight @ first if len(first) else np.zeros(n_types)
+    seen = weight @ first
     return np.asarray(np.log((USUAL_TYPE * even + seen) / (USUAL_TYPE + weight.sum()) / even))

@@ -71,8 +71,31 @@ def family_evidence(log_lik: FloatArray, weight: FloatArray, drawn: DrawnFamilie
     ndarray, shape (n_units, n_types)
         Log evidence per family.
     """
-    tempered = weight[:, None] * log_lik + drawn.log_weight
+    top, _, total = _family_sums(weight[:, None] * log_lik + drawn.log_weight, drawn)
+    return np.asarray(top + np.log(total))
+
+
+def sum_by_family(log_joint: FloatArray, drawn: DrawnFamilies) -> tuple[FloatArray, FloatArray]:
+    """Sum over each family's draws.
+
+    Parameters
+    ----------
+    log_joint : ndarray, shape (n_units, n_draws_total)
+        Log of likelihood times share.
+
+    Returns
+    -------
+    log_evidence : ndarray, shape (n_units, n_types)
+    share : ndarray, shape (n_units, n_draws_total)
+        Of each draw within its family.
+    """
+    top, spread, total = _family_sums(log_joint, drawn)
+    return np.asarray(top + np.log(total)), np.asarray(spread / total[:, drawn.owner])
+
+
+def _family_sums(log_joint: FloatArray, drawn: DrawnFamilies) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Return each family's highest value, what each draw is relative to it, and the sums of that."""
     starts = np.searchsorted(drawn.owner, np.arange(len(drawn.types)))
-    top = np.maximum.reduceat(tempered, starts, axis=1)
-    spread = np.exp(tempered - np.repeat(top, np.diff([*starts, drawn.owner.size]), axis=1))
-    return np.asarray(top + np.log(np.add.reduceat(spread, starts, axis=1)))
+    top = np.maximum.reduceat(log_joint, starts, axis=1)
+    spread = np.exp(log_joint - np.repeat(top, np.diff([*starts, drawn.owner.size]), axis=1))
+    return top, spread, np.add.reduceat(spread, starts, axis=1)

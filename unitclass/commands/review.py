@@ -132,7 +132,7 @@ def analysed(args: argparse.Namespace, path: str) -> SessionResult | None:
     FileError
         When the file cannot be used.
     """
-    from unitclass.batch import analyse_file, edits_digest
+    from unitclass.batch import analyse_file
     from unitclass.commands.options import plan_from
     from unitclass.errors import FileError
     from unitclass.io.result_cache import FileStamp, ResultCache
@@ -146,10 +146,8 @@ def analysed(args: argparse.Namespace, path: str) -> SessionResult | None:
     outcome = analyse_file(path, plan)
     if outcome.result is None:
         raise FileError(outcome.problem)
-    result = outcome.result
-    edits = edits_digest(plan, result.identifier, result.object_id)
-    is_kept = ResultCache(cache_path()).put(result, stamp, plan.key, edits_digest=edits)
-    return None if is_kept else result
+    is_kept = ResultCache(cache_path()).put(outcome.result, stamp, plan.key, edits_digest=outcome.edits_digest)
+    return None if is_kept else outcome.result
 
 
 def _taken(work: _Work, store: Any, path: str, result: SessionResult | None) -> Any:

@@ -92,9 +92,9 @@ def _print_picture(family: Family) -> None:
     """Print a few profiles of the family, drawn evenly from its draws, a line each."""
     import numpy as np
 
-    from unitclass.classify.draws import Timing, draw_profiles
+    from unitclass.classify.draws import USUAL, draw_profiles
 
-    profiles = draw_profiles(family, Timing(ti_s=1.0, te_s=2.0), n_bins=40, n_draws=8)
+    profiles = draw_profiles(family, USUAL, n_bins=40, n_draws=8)
     print("eight cells that it would hold (TI 1 s, TE 2 s):")
     print("  " + "inspiration".center(20, "_") + "|" + "expiration".center(20, "_"))
     for profile in profiles:

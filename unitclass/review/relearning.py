@@ -51,7 +51,7 @@ def _gathered(views: Sequence[SessionView]) -> tuple[dict[EntryKey, ShapedUnit],
     units: dict[EntryKey, ShapedUnit] = {}
     timings: dict[EntryKey, Timing] = {}
     for view in views:
-        timing = {name: _timing(view.condition_result(name, with_envelopes=False).nerve_cycles.cycles)
+        timing = {name: _rounded_timing(view.condition_result(name, with_envelopes=False).nerve_cycles.cycles)
                   for name in {light.condition for light in view.units}}
         for key, unit in _shaped(view, several_files=len(views) > 1):
             units[key], timings[key] = unit, timing[key[2]]
@@ -73,9 +73,9 @@ def _title(light: LightUnit, session: str) -> str:
     return f"unit {light.unit}{where}" + (f" ({light.condition})" if light.condition else "")
 
 
-def _timing(cycles: Cycles) -> Timing:
-    used = cycles.used()
-    return Timing(_rounded(float(np.median(used.ti_s))), _rounded(float(np.median(used.te_s))))
+def _rounded_timing(cycles: Cycles) -> Timing:
+    timing = Timing.of(cycles)
+    return Timing(_rounded(timing.ti_s), _rounded(timing.te_s))
 
 
 def _rounded(duration_s: float) -> float:

@@ -86,11 +86,11 @@ class TypesScreen(PageScreen):
         library, current = self.desk.library, self.desk.session.current
         if library is None or current is None or name not in {f.id for f in library.families}:
             return None
-        from unitclass.classify.draws import Timing, draw_profiles
+        from unitclass.classify.draws import USUAL, Timing, draw_profiles
 
         facts = self.desk.condition(current)
         known = facts.ti_s == facts.ti_s and facts.te_s == facts.te_s
-        timing = Timing(facts.ti_s, facts.te_s) if known else Timing(1.0, 2.0)
+        timing = Timing(facts.ti_s, facts.te_s) if known else USUAL
         return family_band(draw_profiles(library.family(name), timing, n_bins=N_BINS, n_draws=N_DRAWS))
 
     def step(self, steps: int) -> None:
