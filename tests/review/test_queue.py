@@ -75,6 +75,15 @@ def test_choices_of_a_filter_come_with_their_numbers(session):
     assert session.choices("regions") == (("caudal", 1), ("rostral column", 7))
 
 
+def test_choices_are_counted_among_what_else_is_asked_for(session):
+    session.show(Filter(regions=("caudal",)))  # unit 5 alone
+    assert dict(session.choices("types")) == {session.current.suggested_type: 1}
+    assert dict(session.choices("regions")) == {"caudal": 1, "rostral column": 7}
+    for name, count in session.choices("regions"):
+        session.show(Filter(regions=(name,)))
+        assert len(session.entries) == count
+
+
 def test_the_cursor_stays_through_filters_and_sorts_or_goes_to_the_next_in_order(session):
     session.go_to(("rig/a.nwb", "7", "baseline"))
     session.show(Filter(types=("aug-E",)))

@@ -252,6 +252,33 @@ def learned(lessons):
                                                                nothing, nothing, nothing)}
 
 
+async def test_shape_groups_come_from_the_background_and_the_queue_can_be_cut_down_to_one(tmp_path):
+    session = session_in(tmp_path, result_of(30))
+    app = app_on(session, group=groups_of_thirty)
+    async with app.run_test(size=(100, 30)) as pilot:
+        here = session.current.key
+        await press(app, pilot, "p")
+        for _ in range(100):
+            await pilot.pause(0.1)
+            if "G2" in shown(app):
+                break
+        text = shown(app)
+        assert "G1" in text
+        assert "G2" in text
+        await press(app, pilot, "escape")
+        assert session.current.key == here
+        await press(app, pilot, "w", *"shape group G2")
+        await press(app, pilot, "enter")
+        assert {e.shape_group for e in session.entries} == {"G2"}
+        assert len(session.entries) == 10
+        assert "G2" in await press(app, pilot, "i")
+
+
+def groups_of_thirty():
+    """Stand in for the grouping: ten of thirty units are in G2; runs in another process."""
+    return {("rig/heron_04.nwb", str(n), "baseline"): "G2" if n % 3 == 0 else "G1" for n in range(1, 31)}
+
+
 async def test_the_account_holds_reasons_features_and_evidence(tmp_path):
     app = app_on(session_in(tmp_path))
     async with app.run_test(size=(100, 60)) as pilot:

@@ -13,11 +13,10 @@ from unitclass.records import FloatArray, SessionResult
 
 @dataclass(frozen=True)
 class ShapedRow:
-    """The shape of one unit in one condition, and the row of a table that it belongs to."""
+    """The rates by phase of one unit in one condition, and the row of a table that it belongs to."""
 
     row: int
-    counts: FloatArray
-    exposure_s: FloatArray
+    rate_hz: FloatArray
     type: str
 
 
@@ -28,12 +27,10 @@ def shaped_rows(result: SessionResult, *, first: int = 0) -> Iterator[ShapedRow]
     """
     for i, (_, unit) in enumerate(result.units()):
         if unit.suggestion.probabilities:
-            yield ShapedRow(first + i, unit.histogram.counts, unit.histogram.exposure_s, unit.suggestion.type)
+            yield ShapedRow(first + i, unit.histogram.rate_hz, unit.suggestion.type)
 
 
 def groups_of(shapes: Sequence[ShapedRow]) -> ShapeGroups:
     """Return the shape groups; their names are in the order of `shapes`."""
-    if not shapes:
-        return shape_groups(np.zeros((0, 1)), np.zeros((0, 1)), ())
-    return shape_groups(np.stack([s.counts for s in shapes]), np.stack([s.exposure_s for s in shapes]),
-                        [s.type for s in shapes])
+    rate_hz = np.stack([s.rate_hz for s in shapes]) if shapes else np.zeros((0, 1))
+    return shape_groups(rate_hz, [s.type for s in shapes])

@@ -84,13 +84,13 @@ class ShapeGroups:
     criterion: dict[int, float]
 
 
-def shape_groups(counts: FloatArray, exposure_s: FloatArray, types: Sequence[str], *,
-                 n_repetitions: int = 30) -> ShapeGroups:
+def shape_groups(rate_hz: FloatArray, types: Sequence[str], *, n_repetitions: int = 30) -> ShapeGroups:
     """Return the shape groups of units.
 
     Parameters
     ----------
-    counts, exposure_s : ndarray, shape (n_units, n_bins)
+    rate_hz : ndarray, shape (n_units, n_bins)
+        Rates by phase; NaN where nothing was observed.
     types : sequence of str, length n_units
         Suggested types, to compare with.
     n_repetitions : int
@@ -101,20 +101,31 @@ def shape_groups(counts: FloatArray, exposure_s: FloatArray, types: Sequence[str
     ShapeGroups
         Without groups where there are fewer than two times UNITS_A_GROUP units.
     """
-    n_units = len(counts)
-    if n_units < 2 * UNITS_A_GROUP:
-        return ShapeGroups(("",) * n_units, (), np.nan, np.nan, {})
+    if len(rate_hz) < 2 * UNITS_A_GROUP:
+        return ShapeGroups(("",) * len(rate_hz), (), np.nan, np.nan, {})
     from sklearn.metrics import adjusted_rand_score
 
-    rate = relative_rates(counts, exposure_s)
+    rate = relative_rates(rate_hz)
     points = components(rate)
     mixture, criterion = _chosen(points)
     number = _in_order(mixture.predict(points), rate)
     repeated = _repeated(points, mixture.n_components, n_repetitions)
-    names = tuple(f"G{k + 1}" for k in number)
     groups = tuple(_group(k, number, rate, types, repeated) for k in range(int(number.max()) + 1))
-    return ShapeGroups(names, groups, float(np.mean([adjusted_rand_score(number, r) for r in repeated])),
+    return ShapeGroups(_names(number), groups, float(np.mean([adjusted_rand_score(number, r) for r in repeated])),
                        float(adjusted_rand_score(list(types), number)), criterion)
+
+
+def group_names(rate_hz: FloatArray) -> tuple[str, ...]:
+    """Return the names that `shape_groups` gives, without asking how far they can be believed."""
+    if len(rate_hz) < 2 * UNITS_A_GROUP:
+        return ("",) * len(rate_hz)
+    rate = relative_rates(rate_hz)
+    points = components(rate)
+    return _names(_in_order(_chosen(points)[0].predict(points), rate))
+
+
+def _names(number: IntArray) -> tuple[str, ...]:
+    return tuple(f"G{k + 1}" for k in number)
 
 
 def components(rate: FloatArray) -> FloatArray:
@@ -128,9 +139,12 @@ def components(rate: FloatArray) -> FloatArray:
     return np.asarray(left[:, :n] * size[:n])
 
 
-def relative_rates(counts: FloatArray, exposure_s: FloatArray) -> FloatArray:
-    """Return rates scaled to a mean of 1; bins never observed take the unit's mean."""
-    rate = np.divide(counts, exposure_s, out=np.full(counts.shape, np.nan), where=exposure_s > 0)
+def relative_rates(rate_hz: FloatArray) -> FloatArray:
+    """Return rates scaled to a mean of 1; bins never observed take the unit's mean.
+
+    They are taken as exactly as results are kept, so that units fresh and from the cache group alike.
+    """
+    rate = np.asarray(rate_hz, dtype=np.float32).astype(float)
     mean = np.nanmean(rate, axis=1, keepdims=True)
     return np.asarray(np.where(np.isnan(rate), 1.0, rate / np.maximum(mean, 1e-12)))
 

@@ -12,10 +12,12 @@ from unitclass.commands.options import add_paths, add_session_options
 
 if TYPE_CHECKING:
     from unitclass.batch import Plan
+    from unitclass.io.cached_session import CachedSession
     from unitclass.io.result_cache import CacheKey, ResultCache
     from unitclass.records import Labels, SessionResult, Suggestion
     from unitclass.review.entry import EntryKey
     from unitclass.review.teaching import Lesson
+    from unitclass.settings import Settings
 
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
@@ -32,8 +34,7 @@ def run(args: argparse.Namespace) -> int:
     """Open the review on what is known already; analyse the rest behind it."""
     from unitclass.commands.options import settings_from
     from unitclass.io.paths import find_files
-    from unitclass.io.result_cache import ResultCache
-    from unitclass.io.store_place import cache_path, open_store, store_path
+    from unitclass.io.store_place import open_store, store_path
     from unitclass.review.reviewer import reviewer_name
     from unitclass.review.session import ReviewSession
     from unitclass.tui.terminal import check_terminal
@@ -45,12 +46,12 @@ def run(args: argparse.Namespace) -> int:
     place = store_path(args.paths, args.store)
     store = open_store(place)
     args.store = str(place.path)
-    work = _Work(args, ResultCache(cache_path()), settings_digest=settings.digest())
+    work = _Work.of(args, settings)
     session = ReviewSession(store, reviewer_name(args.reviewer, settings.review.reviewer),
                             sure_probability=settings.classify.sure_probability, is_blind=args.blind)
-    pending = []
+    pending, key = [], work.key
     for path in find_files(args.paths):
-        known = work.cache.find(path, work.key, edits_digest_of=store.edits_digest)
+        known = work.cache.find(path, key, edits_digest_of=store.edits_digest)
         if known is None:
             session.expect([path])
             pending.append(path)
@@ -60,7 +61,8 @@ def run(args: argparse.Namespace) -> int:
 
     app = ReviewApp(session, analyse=partial(analysed, args), take=partial(_taken, work, store), pending=pending,
                     relearn=partial(taught, args) if settings.review.learn else None,
-                    export=partial(exported, args), settings=settings, library=work.library)
+                    group=partial(shape_groups, args), export=partial(exported, args), settings=settings,
+                    library=work.library)
     code = run_review(app, mouse=settings.review.mouse)
     if place.message:
         print(place.message)
@@ -102,6 +104,24 @@ class _Work:
     args: argparse.Namespace
     cache: ResultCache
     settings_digest: str
+
+    @classmethod
+    def of(cls, args: argparse.Namespace, settings: Settings) -> _Work:
+        from unitclass.io.result_cache import ResultCache
+        from unitclass.io.store_place import cache_path
+
+        return cls(args, ResultCache(cache_path()), settings.digest())
+
+    def views(self) -> list[CachedSession]:
+        """Return all files' results that are in the cache, with people's cycle edits."""
+        from unitclass.io.decisions import DecisionStore
+        from unitclass.io.paths import find_files
+
+        key = self.key
+        with DecisionStore(self.args.store, is_read_only=True) as store:
+            found = [self.cache.find(path, key, edits_digest_of=store.edits_digest)
+                     for path in find_files(self.args.paths)]
+        return [view for view in found if view is not None]
 
     def library(self) -> Any:
         from unitclass.io.template_files import read_library
@@ -166,17 +186,19 @@ def _taken(work: _Work, store: Any, path: str, result: SessionResult | None) -> 
 def taught(args: argparse.Namespace, lessons: Sequence[Lesson]) -> dict[EntryKey, Suggestion]:
     """Return the suggestions that labels change; runs in a process of its own, on cached results."""
     from unitclass.commands.options import settings_from
-    from unitclass.io.decisions import DecisionStore
-    from unitclass.io.paths import find_files
-    from unitclass.io.result_cache import ResultCache
-    from unitclass.io.store_place import cache_path
     from unitclass.review.relearning import relearned
 
     settings = settings_from(args)
-    work = _Work(args, ResultCache(cache_path()), settings_digest=settings.digest())
-    with DecisionStore(args.store, is_read_only=True) as store:
-        found = [work.cache.find(path, work.key, edits_digest_of=store.edits_digest) for path in find_files(args.paths)]
-    return relearned([view for view in found if view is not None], lessons, work.library(), settings)
+    work = _Work.of(args, settings)
+    return relearned(work.views(), lessons, work.library(), settings)
+
+
+def shape_groups(args: argparse.Namespace) -> dict[EntryKey, str]:
+    """Return the units that fire alike; runs in a process of its own, on cached results."""
+    from unitclass.commands.options import settings_from
+    from unitclass.review.grouping import grouped
+
+    return grouped(_Work.of(args, settings_from(args)).views())
 
 
 def exported(args: argparse.Namespace, path: str, result: SessionResult, labels: Labels, target: str,

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import gc
-from collections.abc import Iterable, Iterator, Sequence
+from collections.abc import Iterable, Iterator, Mapping, Sequence
 from contextlib import contextmanager
 from dataclasses import replace
 
@@ -49,6 +49,12 @@ class Board:
         """Show the suggestions now in force for some rows; the store is not asked."""
         rows = [self.queue.row(key) for key in keys]
         self.queue.put([row if row.is_hidden else self._with_suggestion(row) for row in rows])
+
+    def group(self, groups: Mapping[EntryKey, str]) -> None:
+        """Show these shape groups; the store is not asked."""
+        self.shelf.group(groups)
+        self.queue.put([row if row.is_hidden else replace(row, shape_group=self.shelf.light(row.key).shape_group)
+                        for row in self.queue.rows()])
 
     def _with_suggestion(self, row: QueueEntry) -> QueueEntry:
         light, change = self.shelf.light(row.key), self.shelf.change(row.key)

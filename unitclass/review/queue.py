@@ -4,9 +4,11 @@ from __future__ import annotations
 
 from bisect import bisect_left
 from collections.abc import Callable, Iterable, Iterator
+from dataclasses import replace
+from typing import Any
 
 from unitclass.errors import UsageError
-from unitclass.review.entry import EntryKey, QueueEntry
+from unitclass.review.entry import EntryKey, QueueEntry, natural
 from unitclass.review.filters import Filter, matches, values_of
 from unitclass.review.ordering import INFORMATIVE, SORTS, Rank, rank
 
@@ -99,13 +101,15 @@ class ReviewQueue:
         self._settle_cursor()
 
     def choices(self, name: str) -> tuple[tuple[str, int], ...]:
-        """Return the values under a tuple field of Filter with the number of rows, sorted."""
+        """Return the values under a tuple field of Filter, sorted, with the rows that choosing one would show."""
         counts: dict[str, int] = {}
-        for row in self._rows.values():
+        others: dict[str, Any] = {name: ()}
+        rest = replace(self.filter, **others)
+        for row in filter(rest.lets_through, self._rows.values()):
             for value in values_of(row, name)[:1] if name == "files" else values_of(row, name):
                 if value:
                     counts[value] = counts.get(value, 0) + 1
-        return tuple(sorted(counts.items()))
+        return tuple(sorted(counts.items(), key=lambda found: natural(found[0])))
 
     def _ordered(self, keys: Iterable[EntryKey]) -> list[EntryKey]:
         return sorted(keys, key=self._ranks.__getitem__, reverse=self.is_reversed)

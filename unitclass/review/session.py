@@ -188,6 +188,10 @@ class ReviewSession(ReviewReader):
         self._board.suggest(changed)
         return tuple(changed)
 
+    def update_groups(self, groups: Mapping[EntryKey, str]) -> None:
+        """Let these be the shape groups of all units."""
+        self._board.group({key: name for key, name in groups.items() if key in self._board.queue})
+
     # ---------------------------------------------------------------------------- saving
 
     @property

@@ -39,6 +39,7 @@ class ResultShelf:
         self._light: dict[EntryKey, LightUnit] = {}
         self._replaced: dict[EntryKey, Suggestion] = {}
         self._changes: dict[EntryKey, str] = {}
+        self._groups: dict[EntryKey, str] = {}
         self._units: OrderedDict[EntryKey, UnitResult] = OrderedDict()
 
     # ---------------------------------------------------------------------------- files
@@ -55,7 +56,8 @@ class ResultShelf:
         """Take a session's results in, in place of older ones; return the keys that are gone."""
         path = view.head.path
         before = {key: unit for key, unit in self._light.items() if key[0] == path}
-        after = {(path, unit.unit, unit.condition): unit for unit in view.units}
+        after = {key: self._in_group(key, unit) for unit in view.units
+                 for key in [(path, unit.unit, unit.condition)]}
         self._forget(before)
         self._views[path] = view
         self._light |= after
@@ -124,12 +126,23 @@ class ResultShelf:
         """Return the keys of a session, in the order of its results."""
         return tuple((path, unit.unit, unit.condition) for unit in self._views[path].units)
 
+    # --------------------------------------------------------------------- shape groups
+
+    def group(self, groups: Mapping[EntryKey, str]) -> None:
+        """Let these be the shape groups of all units; a unit not in it has none."""
+        self._groups = dict(groups)
+        self._units.clear()
+        self._light = {key: self._in_group(key, unit) for key, unit in self._light.items()}
+
+    def _in_group(self, key: EntryKey, unit: LightUnit) -> LightUnit:
+        return replace(unit, shape_group=self._groups.get(key, unit.shape_group))
+
     # -------------------------------------------------------------------------- results
 
     def unit_result(self, key: EntryKey) -> UnitResult:
         """Return all about a unit, with the suggestion in force."""
         if key not in self._units:
-            unit = self._views[key[0]].unit_result(key[1], key[2])
+            unit = replace(self._views[key[0]].unit_result(key[1], key[2]), shape_group=self._light[key].shape_group)
             if key in self._replaced:
                 unit = replace(unit, suggestion=self._replaced[key])
             self._units[key] = unit

@@ -22,7 +22,7 @@ from unitclass.review.session import ReviewSession  # noqa: E402
 from unitclass.settings import Settings  # noqa: E402
 from unitclass.tui.desk import Desk  # noqa: E402
 from unitclass.tui.keys import KeyMap  # noqa: E402
-from unitclass.tui.messages import ANALYSIS, EXPORT, LEARNING, WorkDone  # noqa: E402
+from unitclass.tui.messages import ANALYSIS, EXPORT, GROUPING, LEARNING, WorkDone  # noqa: E402
 from unitclass.tui.screens.base import BaseScreen  # noqa: E402
 from unitclass.tui.screens.review import ReviewScreen  # noqa: E402
 from unitclass.tui.terminal import check_terminal  # noqa: E402
@@ -51,6 +51,8 @@ class ReviewApp(App[int], inherit_bindings=False):
         Files still to be analysed.
     relearn : callable, optional
         relearn(lessons) -> {(path, unit, condition): Suggestion}, run in a process too.
+    group : callable, optional
+        group() -> {(path, unit, condition): shape group}, run in a process too.
     export : callable, optional
         export(path, SessionResult, Labels, target, is_replacing) -> where it was written, run in a
         process too.
@@ -62,6 +64,7 @@ class ReviewApp(App[int], inherit_bindings=False):
 
     def __init__(self, session: ReviewSession, *, analyse: Callable[[str], Any] | None = None,
                  pending: Sequence[str] = (), relearn: Callable[..., Mapping[Any, Any]] | None = None,
+                 group: Callable[[], Mapping[Any, str]] | None = None,
                  export: Callable[..., str] | None = None, settings: Settings | None = None,
                  library: Callable[[], Any] | None = None,
                  take: Callable[[str, Any], Any] | None = None) -> None:
@@ -73,10 +76,12 @@ class ReviewApp(App[int], inherit_bindings=False):
         self.keys = KeyMap.of(review.keys)
         self.desk = Desk(session, library)
         self.inks = Theme(look_of_terminal(), background_of_terminal(review.background))
-        self._analyse, self._take, self._relearn, self._export = analyse, take, relearn, export
+        self._analyse, self._take, self._export = analyse, take, export
+        self._relearn, self._group = relearn, group
         self._pending = list(pending)
         self._works: dict[str, Work] = {}
         self._n_unlearned = 0
+        self._has_begun = self._is_group_due = False
 
     def get_default_screen(self) -> Screen[Any]:
         """Return the review screen."""
@@ -97,14 +102,17 @@ class ReviewApp(App[int], inherit_bindings=False):
         return screen
 
     def begin(self) -> None:
-        """Begin with what can wait until the first unit is on the screen."""
+        """Begin with what can wait until the first unit is on the screen, once."""
+        if self._has_begun:
+            return
+        self._has_begun = True
         gc.freeze()
         gc.enable()
         self._leave_on_request()
         if self.desk.library is not None:
             self._review_screen.repaint_soon()
         self._start_analysis()
-        self._learn_what_is_there()
+        self._start_over_all()
 
     def _leave_on_request(self) -> None:
         """Give the terminal back when the program is asked to end."""
@@ -131,6 +139,18 @@ class ReviewApp(App[int], inherit_bindings=False):
             pieces = [(path, (path,)) for path in self._pending]
             self._pending = []
             self._start(ANALYSIS, self._analyse, pieces)
+
+    def _start_over_all(self) -> None:
+        """Begin with what looks at all sessions together."""
+        self._is_group_due = True
+        self._start_grouping()
+        self._learn_what_is_there()
+
+    def _start_grouping(self) -> None:
+        """Group the units once all sessions are there."""
+        if self._group is not None and self._is_group_due and not {ANALYSIS, GROUPING} & self._works.keys():
+            self._is_group_due = False
+            self._start(GROUPING, self._group, [("shape groups", ())])
 
     def labels_changed(self) -> None:
         """Count what was decided; after a few decisions the suggestions are made afresh."""
@@ -177,12 +197,15 @@ class ReviewApp(App[int], inherit_bindings=False):
             self._works.pop(message.task, None)
             self._start_analysis()
             if message.task == ANALYSIS:
-                self._learn_what_is_there()
+                self._start_over_all()
+            self._start_grouping()
             self._learn()
         elif message.task == ANALYSIS:
             self._take_analysis(message.done)
         elif message.task == LEARNING:
             self._take_learned(message.done)
+        elif message.task == GROUPING:
+            self._take_groups(message.done)
         if message.task == EXPORT:
             self._show_export(message.done)
         for screen in self.screen_stack:
@@ -202,15 +225,26 @@ class ReviewApp(App[int], inherit_bindings=False):
             session.add_failure(done.name, problem)
             return
         self.desk.forget()
+        self._tell_screens(done.name)
+
+    def _tell_screens(self, path: str) -> None:
+        """Let screens take in new results: of one file, or, with an empty path, over all of them."""
         for screen in self.screen_stack:
             if hasattr(screen, "results_changed"):
-                screen.results_changed(done.name)
+                screen.results_changed(path)
 
     def _take_learned(self, done: Done) -> None:
         if done.problem:
             self._review_screen.say(f"suggestions stay as they were: {done.problem}", "warn")
         else:
             self.desk.session.update_suggestions(done.result)
+
+    def _take_groups(self, done: Done) -> None:
+        if done.problem:
+            self._review_screen.say(f"no shape groups: {done.problem}", "warn")
+            return
+        self.desk.session.update_groups(done.result)
+        self._tell_screens("")
 
     def _show_export(self, done: Done | None) -> None:
         from unitclass.tui.screens.finish import FinishScreen

@@ -8,7 +8,7 @@ from unitclass.tui.workers import Done
 
 
 class WorkDone(Message):
-    """A piece of work in the background came to an end; `task` is ANALYSIS, LEARNING or EXPORT.
+    """A piece of work in the background came to an end; `task` is ANALYSIS, GROUPING, LEARNING or EXPORT.
 
     `done` is None when the task has nothing left to do.
     """
@@ -34,4 +34,4 @@ class Stepped(Message):
         self.steps = steps
 
 
-ANALYSIS, LEARNING, EXPORT = "analysis", "learning", "export"
+ANALYSIS, GROUPING, LEARNING, EXPORT = "analysis", "grouping", "learning", "export"

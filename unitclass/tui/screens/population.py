@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from unitclass.review.entry import QueueEntry
 from unitclass.review.unit_facts import by_phase, grouped
 from unitclass.tui.desk import Desk
 from unitclass.tui.keys import POPULATION, KeyMap
@@ -22,11 +23,19 @@ class PopulationScreen(PageScreen):
 
     def __init__(self, desk: Desk, theme: Theme, keys: KeyMap) -> None:
         super().__init__(desk, theme, keys)
-        self._groups = population_of(desk)
+        self._load(desk.session.current)
+
+    def _load(self, here: QueueEntry | None) -> None:
+        """Take the units in view as they are now and choose the one that was chosen."""
+        self._groups = population_of(self.desk)
         self._units = [unit for _, members in self._groups for unit in members]
-        current = desk.session.current
         keys_in_order = [unit.entry.key for unit in self._units]
-        self._here = keys_in_order.index(current.key) if current is not None else 0
+        self._here = keys_in_order.index(here.key) if here is not None and here.key in keys_in_order else 0
+
+    def results_changed(self, path: str) -> None:
+        """Show what is new after work in the background."""
+        self._load(self._units[self._here].entry if self._units else self.desk.session.current)
+        self.repaint_soon()
 
     def title_words(self) -> tuple[str, str, str]:
         """Return the title and how many units there are."""

@@ -55,6 +55,10 @@ class ReviewScreen(BaseScreen):
         """Tell the program when the first unit is on the screen."""
         self.call_after_refresh(self.app.begin)  # type: ignore[attr-defined]
 
+    def on_screen_suspend(self) -> None:
+        """Begin also where a quick hand opens another screen before the first refresh has ended."""
+        self.app.begin()  # type: ignore[attr-defined]
+
     def on_resize(self, event: events.Resize) -> None:
         """Give every part the room it needs at this size."""
         if tuple(event.size) != self._arranged_for:
