@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import os
 import sys
+from functools import partial
 from pathlib import Path
 
 N_FILES, N_UNITS = 10, 200
@@ -84,6 +85,23 @@ def burn(path: str) -> str:
         np.linalg.svd(np.random.default_rng(1).normal(size=(200, 200)))
 
 
+def groups(folder: Path):  # type: ignore[no-untyped-def]
+    """Return the shape groups, as the program makes them."""
+    from unitclass.review.grouping import grouped
+
+    return grouped(kept(folder))
+
+
+def kept(folder: Path):  # type: ignore[no-untyped-def]
+    """Return the results that are in the cache."""
+    from unitclass.io.result_cache import ResultCache
+
+    cache = ResultCache(folder / "cache.sqlite")
+    views = [cache.find(path, _key()) for path in sorted(folder.glob("*.nwb"))]
+    assert None not in views
+    return views
+
+
 def types():  # type: ignore[no-untyped-def]
     """Return the types that come with the program."""
     from unitclass.io.template_files import read_library
@@ -96,20 +114,13 @@ def review(folder: Path, is_busy: bool) -> int:
     from unitclass.tui.app import ReviewApp, run_review  # first: it sets the toolkit up
 
     from unitclass.io.decisions import DecisionStore  # isort: skip
-    from unitclass.io.result_cache import ResultCache
     from unitclass.review.session import ReviewSession
 
-    cache = ResultCache(folder / "cache.sqlite")
     session = ReviewSession(DecisionStore(folder / "decisions.sqlite"), "Ada Fischer")
-    views = []
-    for path in sorted(folder.glob("*.nwb")):
-        found = cache.find(path, _key())
-        assert found is not None
-        views.append(found)
-    session.add_session(*views)
+    session.add_session(*kept(folder))
     pending = [str(folder / "further.nwb")] if is_busy else []
     session.expect(pending)
-    app = ReviewApp(session, library=types, analyse=burn, pending=pending)
+    app = ReviewApp(session, library=types, analyse=burn, pending=pending, group=partial(groups, folder))
     return run_review(app)
 
 

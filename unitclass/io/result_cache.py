@@ -16,6 +16,7 @@ from datetime import UTC, datetime
 from functools import lru_cache
 from itertools import islice
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from unitclass import __version__
 from unitclass.errors import FileError
@@ -23,9 +24,11 @@ from unitclass.io import cached_pieces
 from unitclass.io.cache_file import open_cache
 from unitclass.io.cached_session import CachedSession
 from unitclass.io.codec import layout_digest
-from unitclass.io.condition_table import ConditionTable
 from unitclass.io.store_text import storable
 from unitclass.records import SessionResult
+
+if TYPE_CHECKING:
+    from unitclass.io.condition_table import ConditionTable
 
 _PIECES_AT_ONCE = 32
 

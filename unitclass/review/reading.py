@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Sequence
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
@@ -22,7 +23,6 @@ from unitclass.records import (
     UnitResult,
 )
 from unitclass.review import batch_accept, rows
-from unitclass.review.agreement import AgreementReport, StoredSession, agreement, rated_units
 from unitclass.review.board import Board
 from unitclass.review.entry import EntryKey, QueueEntry
 from unitclass.review.filters import Filter
@@ -30,6 +30,9 @@ from unitclass.review.ordering import INFORMATIVE
 from unitclass.review.progress import ExportItem, Progress, export_plan, progress_of
 from unitclass.review.shelf import FileState
 from unitclass.review.teaching import Lesson, lesson_from
+
+if TYPE_CHECKING:
+    from unitclass.review.agreement import AgreementReport
 
 
 class ReviewReader:
@@ -241,6 +244,8 @@ class ReviewReader:
     def agreement(self) -> AgreementReport:
         """Compare all reviewers over the open files; units that are hidden are left out."""
         heads = {path: view.head for path, view in self._board.shelf.views.items()}
+        from unitclass.review.agreement import StoredSession, agreement, rated_units
+
         stored = [StoredSession(path, head.identifier, head.object_id, self._board.digests(path))
                   for path, head in heads.items()]
         found = rated_units(self._board.store, stored)
