@@ -12,6 +12,8 @@ References
 
 from __future__ import annotations
 
+from functools import lru_cache
+
 import numpy as np
 
 from unitclass.classify.likelihood import log_likelihood
@@ -70,6 +72,7 @@ def _humped_evidence(units: UnitCounts, weight: FloatArray) -> FloatArray:
     return _log_mean((weight[:, None] * log_lik).T)
 
 
+@lru_cache(maxsize=4)
 def humped_profiles(n_bins: int, n_draws: int = N_HUMPED) -> FloatArray:
     """Return random profiles that no family draws, shape (n_draws, n_bins), mean 1.
 
@@ -81,7 +84,9 @@ def humped_profiles(n_bins: int, n_draws: int = N_HUMPED) -> FloatArray:
     level = np.stack([makers[i % 3](phase, rng) for i in range(n_draws)])
     background = 0.3 * rng.random((n_draws, 1)) ** 2
     level = np.maximum(background + (1 - background) * level, 0.002)
-    return np.asarray(level / level.mean(axis=1, keepdims=True))
+    made = level / level.mean(axis=1, keepdims=True)
+    made.setflags(write=False)  # shared by all who ask
+    return np.asarray(made)
 
 
 def _hump(phase: FloatArray, centre: float, width: float) -> FloatArray:

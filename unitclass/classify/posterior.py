@@ -17,7 +17,7 @@ from unitclass.settings import ClassifySettings
 STEADY = "tonic"
 SMALL_P = 0.01  # of the modulation test: at or below this a steady cell must explain itself
 SHALLOW = 12.0  # Dirichlet parameter per fraction of the cycle: rates within a third or so of their mean
-BLOCK = 500  # units scored at once: keeps the (units x draws) matrix small
+BLOCK = 100  # units scored at once: keeps the (units x draws) matrix small
 
 
 def score_units(units: UnitCounts, drawn: DrawnFamilies, settings: ClassifySettings) -> FloatArray:

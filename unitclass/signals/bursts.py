@@ -113,19 +113,22 @@ def _refined(found: Bursts, n_samples: int, step: int) -> Bursts:
 
 def _searched(fine: Activity, settings: CycleSettings, scale: float) -> Bursts:
     """Return the bursts under the least smoothing that shows them, then under what their length allows."""
-    tried = []
+    clearest: Bursts | None = None
+    best: Bursts | None = None
     for width_s in WIDTHS_S:
         if 8 * width_s > fine.values.size / fine.rate_hz:
             break
         found = _at_width(fine, width_s, settings, scale)
-        tried.append(found)
-        if found.contrast >= GOOD_CONTRAST and _is_rhythm(found, fine):
-            break
-    usable = [b for b in tried if b.contrast >= MIN_CONTRAST and _is_rhythm(b, fine)]
-    if not usable:
-        raise SignalError(_why_none(tried, fine), where=f"nerve {fine.name}",
+        if clearest is None or found.contrast > clearest.contrast:
+            clearest = found
+        if found.contrast >= MIN_CONTRAST and _is_rhythm(found, fine):
+            if best is None or min(found.contrast, GOOD_CONTRAST) > best.contrast:
+                best = found
+            if found.contrast >= GOOD_CONTRAST:
+                break
+    if best is None:
+        raise SignalError(_why_none(clearest, fine), where=f"nerve {fine.name}",
                           remedy="name another nerve with --nerve or lower cycles.threshold_scale")
-    best = max(usable, key=lambda b: min(b.contrast, GOOD_CONTRAST))
     return _tuned(fine, best, settings, scale)
 
 
@@ -136,10 +139,9 @@ def _is_rhythm(found: Bursts, fine: Activity) -> bool:
     return bool(interval_s * MAX_RATE_HZ > 1)
 
 
-def _why_none(tried: list[Bursts], fine: Activity) -> str:
-    if not tried:
+def _why_none(best: Bursts | None, fine: Activity) -> str:
+    if best is None:
         return f"{fine.values.size / fine.rate_hz:.2f} s is too short to hold a cycle"
-    best = max(tried, key=lambda b: b.contrast)
     if best.contrast >= MIN_CONTRAST and best.n_bursts < 2:
         return f"{best.n_bursts} burst in {fine.values.size / fine.rate_hz:.1f} s: no cycle to measure"
     return ("no burst stands clear of the floor "

@@ -22,8 +22,9 @@ def excess(values: FloatArray, floor: FloatArray | float, is_power: bool) -> Flo
     """
     if not is_power:
         return np.asarray(values - floor)
-    power = values * values - np.asarray(floor) ** 2
-    return np.asarray(np.sign(power) * np.sqrt(np.abs(power)))
+    power = values * values
+    power -= np.square(floor)
+    return np.copysign(np.sqrt(np.abs(power)), power)
 
 
 def restored(level: FloatArray | float, floor: FloatArray | float, is_power: bool) -> FloatArray:
