@@ -24,20 +24,20 @@ class Fit:
 NO_FIT = Fit(np.zeros(0), np.zeros(0), np.zeros(0))
 
 
-def fit(counts: FloatArray, exposure_s: FloatArray, weight: float, rate: FloatArray, log_weight: FloatArray) -> Fit:
+def fit(counts: FloatArray, exposure_s: FloatArray, evidence: FloatArray, rate: FloatArray, log_weight: FloatArray) -> Fit:
     """Return the draws' mean profile, each weighed by how well it explains one unit's counts.
 
     Parameters
     ----------
     counts, exposure_s : ndarray, shape (1, n_bins)
-    weight : float
-        Power of the likelihood, see `likelihood.evidence_weight`.
+    evidence : ndarray, shape (1, n_bins)
+        Share of each bin that counts, see `likelihood.evidence_share`.
     rate : ndarray, shape (n_draws, n_bins)
         Relative rates.
     log_weight : ndarray, shape (n_draws,)
         Log share of each draw before the unit was seen.
     """
-    tempered = weight * log_likelihood(counts, exposure_s, rate)[0] + log_weight
+    tempered = log_likelihood(counts * evidence, exposure_s * evidence, rate)[0] + log_weight
     share = np.exp(tempered - tempered.max())
     share = share / share.sum()
     scaled = rate * (counts.sum() / (rate @ exposure_s[0]))[:, None]

@@ -21,7 +21,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from unitclass.classify.draws import DrawnFamilies
-from unitclass.classify.likelihood import evidence_weight, log_likelihood, sum_by_family
+from unitclass.classify.likelihood import evidence_share, log_likelihood, sum_by_family
 from unitclass.records import OTHER, FloatArray, IntArray
 
 SHAPE_SPIKES = 100.0  # a label speaks of cells that this many spikes would not tell from its own
@@ -147,8 +147,8 @@ def _teach_block(units: ShapeCounts, learned: Learned, drawn: DrawnFamilies) -> 
 
 def coarse_log_likelihood(units: ShapeCounts, drawn: DrawnFamilies) -> FloatArray:
     """Return the log-likelihood of draws, of as few spikes as tell shapes apart roughly."""
-    weight = evidence_weight(units.counts.sum(axis=1), np.ones(len(units.counts)), SHAPE_SPIKES)
-    return np.asarray(weight[:, None] * log_likelihood(units.counts, units.exposure_s, drawn.rate))
+    share = evidence_share(units.counts, units.exposure_s, np.ones(len(units.counts)), SHAPE_SPIKES)
+    return log_likelihood(units.counts * share, units.exposure_s * share, drawn.rate)
 
 
 def _family_names(first: FloatArray, labels: IntArray, named: FloatArray) -> tuple[FloatArray, FloatArray]:

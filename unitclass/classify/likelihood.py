@@ -37,41 +37,43 @@ def log_likelihood(counts: FloatArray, exposure_s: FloatArray, rate: FloatArray)
     return np.asarray(counts @ np.log(rate).T - total * np.log(exposure_s @ rate.T + 1e-300))
 
 
-def evidence_weight(n_spikes: FloatArray, overdispersion: FloatArray, concentration: float) -> FloatArray:
-    """Return the power to which a likelihood is raised so that evidence is honest.
+def evidence_share(counts: FloatArray, exposure_s: FloatArray, overdispersion: FloatArray,
+                   concentration: float) -> FloatArray:
+    """Return the share of each bin's spikes, and seconds, that counts as evidence.
 
     Two reasons to count less than every spike: trains are burstier than Poisson, so one spike is
     worth 1/overdispersion; and a drawn profile is never exactly the cell's own, so evidence
     saturates at about `concentration` spikes (the first-order effect of a Dirichlet-multinomial
-    of that concentration).
+    of that concentration). That doubt is about the profile over canonical phase, where an
+    inspiration of a third of a second has as many bins as an expiration of six: each bin
+    saturates by itself, at the spikes that steady firing would put there. Counts and exposure
+    times this share are those of a unit observed for that much less time.
 
     Parameters
     ----------
-    n_spikes, overdispersion : ndarray, shape (n_units,)
+    counts, exposure_s : ndarray, shape (n_units, n_bins)
+    overdispersion : ndarray, shape (n_units,)
     concentration : float
         Spikes.
 
     Returns
     -------
-    ndarray, shape (n_units,), in (0, 1].
+    ndarray, shape (n_units, n_bins), in (0, 1].
     """
-    return np.asarray(1.0 / (np.maximum(overdispersion, 1.0) + n_spikes / concentration))
+    total_s = np.maximum(exposure_s.sum(axis=1, keepdims=True), 1e-300)
+    steady = counts.sum(axis=1, keepdims=True) * exposure_s / total_s
+    return np.asarray(1.0 / (np.maximum(overdispersion, 1.0)[:, None] + steady * counts.shape[1] / concentration))
 
 
-def family_evidence(log_lik: FloatArray, weight: FloatArray, drawn: DrawnFamilies) -> FloatArray:
-    """Average the tempered likelihood over each family's draws.
-
-    Parameters
-    ----------
-    log_lik : ndarray, shape (n_units, n_draws_total)
-    weight : ndarray, shape (n_units,)
+def family_evidence(log_lik: FloatArray, drawn: DrawnFamilies) -> FloatArray:
+    """Average the likelihood, shape (n_units, n_draws_total), over each family's draws.
 
     Returns
     -------
     ndarray, shape (n_units, n_types)
         Log evidence per family.
     """
-    top, _, total = _family_sums(weight[:, None] * log_lik + drawn.log_weight, drawn)
+    top, _, total = _family_sums(log_lik + drawn.log_weight, drawn)
     return np.asarray(top + np.log(total))
 
 

@@ -26,50 +26,48 @@ N_HUMPED = 1500
 SHARES = {"any": 0.4, "drifting": 0.2, "humps": 0.4}
 
 
-def other_evidence(units: UnitCounts, weight: FloatArray) -> FloatArray:
+def other_evidence(units: UnitCounts) -> FloatArray:
     """Return the log evidence of `other`, shape (n_units,).
 
-    Comparable with `likelihood.log_likelihood` raised to `weight`: the same terms are left out.
+    Comparable with `likelihood.log_likelihood`: the same terms are left out.
     """
-    each = {"any": arbitrary_evidence(units.counts, units.exposure_s, weight),
-            "drifting": _drifting_evidence(units, weight), "humps": _humped_evidence(units, weight)}
+    each = {"any": arbitrary_evidence(units.counts, units.exposure_s),
+            "drifting": _drifting_evidence(units), "humps": _humped_evidence(units)}
     mixed = np.stack([each[name] + np.log(share * len(SHARES)) for name, share in SHARES.items()])
     return _log_mean(mixed)
 
 
-def arbitrary_evidence(counts: FloatArray, exposure_s: FloatArray, weight: FloatArray, *,
-                       alpha: float = ALPHA) -> FloatArray:
+def arbitrary_evidence(counts: FloatArray, exposure_s: FloatArray, *, alpha: float = ALPHA) -> FloatArray:
     """Return the log evidence of an arbitrary profile, averaged over grids so that no edge matters.
 
     Parameters
     ----------
     counts, exposure_s : ndarray, shape (n_units, n_bins)
-    weight : ndarray, shape (n_units,)
     alpha : float
         Dirichlet parameter per fraction; large values keep the profile near a steady rate.
     """
     n_bins = counts.shape[1]
-    each = [_grid_evidence(counts, exposure_s, weight, member, alpha)
+    each = [_grid_evidence(counts, exposure_s, member, alpha)
             for n in GRIDS if n <= n_bins for member in _grids(n_bins, n)]
     return _log_mean(np.stack(each))
 
 
-def _drifting_evidence(units: UnitCounts, weight: FloatArray) -> FloatArray:
-    parts = [arbitrary_evidence(units.third_counts[:, i], units.third_exposure_s[:, i], weight)
+def _drifting_evidence(units: UnitCounts) -> FloatArray:
+    parts = [arbitrary_evidence(units.third_counts[:, i], units.third_exposure_s[:, i])
              for i in range(units.third_counts.shape[1])]
     # The terms left out hold the exposure of the whole session there, of each third here.
     left_out = _count_log(units.third_counts, units.third_exposure_s).sum(axis=1) - _count_log(
         units.counts, units.exposure_s)
-    return np.asarray(np.sum(parts, axis=0) + weight * left_out)
+    return np.asarray(np.sum(parts, axis=0) + left_out)
 
 
 def _count_log(counts: FloatArray, exposure_s: FloatArray) -> FloatArray:
     return np.asarray((counts * np.log(np.where(exposure_s > 0, exposure_s, 1.0))).sum(axis=-1))
 
 
-def _humped_evidence(units: UnitCounts, weight: FloatArray) -> FloatArray:
+def _humped_evidence(units: UnitCounts) -> FloatArray:
     log_lik = log_likelihood(units.counts, units.exposure_s, humped_profiles(units.counts.shape[1]))
-    return _log_mean((weight[:, None] * log_lik).T)
+    return _log_mean(log_lik.T)
 
 
 @lru_cache(maxsize=4)
@@ -120,11 +118,10 @@ def _grids(n_bins: int, n_coarse: int) -> list[FloatArray]:
     return [np.eye(n_coarse)[np.minimum(f, n_coarse - 1)] for f in fractions]
 
 
-def _grid_evidence(counts: FloatArray, exposure_s: FloatArray, weight: FloatArray,
-                   member: FloatArray, alpha: float) -> FloatArray:
+def _grid_evidence(counts: FloatArray, exposure_s: FloatArray, member: FloatArray, alpha: float) -> FloatArray:
     from scipy.special import gammaln
 
-    count, seconds = weight[:, None] * (counts @ member), exposure_s @ member
+    count, seconds = counts @ member, exposure_s @ member
     observed = seconds > 0
     # The prior's mean is a steady rate, so a fraction's share goes with the seconds it lasts.
     share = alpha * seconds * observed.sum(axis=1, keepdims=True) / np.maximum(seconds.sum(axis=1, keepdims=True), 1e-12)

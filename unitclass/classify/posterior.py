@@ -7,7 +7,7 @@ from collections.abc import Mapping
 import numpy as np
 
 from unitclass.classify.draws import DrawnFamilies
-from unitclass.classify.likelihood import evidence_weight, family_evidence, log_likelihood
+from unitclass.classify.likelihood import evidence_share, family_evidence, log_likelihood
 from unitclass.classify.open_set import arbitrary_evidence, other_evidence
 from unitclass.classify.templates import TypeLibrary
 from unitclass.classify.unit_counts import UnitCounts
@@ -28,18 +28,20 @@ def score_units(units: UnitCounts, drawn: DrawnFamilies, settings: ClassifySetti
 
 
 def _block_evidence(units: UnitCounts, drawn: DrawnFamilies, settings: ClassifySettings) -> FloatArray:
-    weight = evidence_weight(units.n_spikes, units.dispersion, settings.concentration)
-    log_lik = log_likelihood(units.counts, units.exposure_s, drawn.rate)
-    evidence = family_evidence(log_lik, weight, drawn)
+    weighed = _weighed(units, settings.concentration)
+    evidence = family_evidence(log_likelihood(weighed.counts, weighed.exposure_s, drawn.rate), drawn)
     if NOT_MODULATED in drawn.types and STEADY in drawn.types:
         nrm, steady = drawn.types.index(NOT_MODULATED), drawn.types.index(STEADY)
-        certain = evidence[:, steady] + _modulation_odds(log_lik, units, drawn, settings)
+        certain = evidence[:, steady] + _modulation_odds(units, drawn, settings)
         evidence[:, nrm] = np.minimum(evidence[:, nrm], certain)
-    return np.column_stack([evidence, other_evidence(units, weight)])
+    return np.column_stack([evidence, other_evidence(weighed)])
 
 
-def _modulation_odds(log_lik: FloatArray, units: UnitCounts, drawn: DrawnFamilies,
-                     settings: ClassifySettings) -> FloatArray:
+def _weighed(units: UnitCounts, concentration: float) -> UnitCounts:
+    return units.weighed(evidence_share(units.counts, units.exposure_s, units.dispersion, concentration))
+
+
+def _modulation_odds(units: UnitCounts, drawn: DrawnFamilies, settings: ClassifySettings) -> FloatArray:
     """Return the log odds of no modulation against steady firing with modulation.
 
     Doubt about a profile's shape is no doubt about whether there is one: here evidence
@@ -52,13 +54,13 @@ def _modulation_odds(log_lik: FloatArray, units: UnitCounts, drawn: DrawnFamilie
     ----------
     .. [1] T. Sellke, M. J. Bayarri, J. O. Berger, "Calibration of p values", Am Stat 55:62, 2001.
     """
-    weight = evidence_weight(units.n_spikes, units.dispersion, 10 * settings.concentration)
-    evidence = family_evidence(log_lik, weight, drawn)
+    units = _weighed(units, 10 * settings.concentration)
+    evidence = family_evidence(log_likelihood(units.counts, units.exposure_s, drawn.rate), drawn)
     wavy = evidence[:, drawn.types.index(STEADY)]
-    shallow = arbitrary_evidence(units.counts, units.exposure_s, weight, alpha=SHALLOW)
+    shallow = arbitrary_evidence(units.counts, units.exposure_s, alpha=SHALLOW)
     rival = np.logaddexp(wavy, shallow) - np.log(2)
     unmodulated = evidence[:, drawn.types.index(NOT_MODULATED)]
-    steady = weight * log_likelihood(units.counts, units.exposure_s, np.ones((1, units.counts.shape[1])))[:, 0]
+    steady = log_likelihood(units.counts, units.exposure_s, np.ones((1, units.counts.shape[1])))[:, 0]
     bound = _log_odds_bound(units.modulation_p) + np.maximum(unmodulated - steady, 0.0)
     return np.minimum(unmodulated - rival, bound)
 

@@ -9,7 +9,7 @@ import numpy as np
 
 from unitclass.classify.draws import DrawnFamilies
 from unitclass.classify.fit import NO_FIT, Fit, fit
-from unitclass.classify.likelihood import evidence_weight
+from unitclass.classify.likelihood import evidence_share
 from unitclass.classify.membrane import MembraneLevels, level_words, membrane_evidence, quiet_phases
 from unitclass.classify.posterior import probabilities, score_units, type_log_prior
 from unitclass.classify.reasons import firing_reasons, odds_words, type_reasons
@@ -146,5 +146,5 @@ def _fit(unit: UnitCounts, type_id: str, drawn: DrawnFamilies, settings: Setting
     if type_id == OTHER or not unit.n_spikes[0]:
         return NO_FIT
     mine = drawn.rows(type_id)
-    weight = evidence_weight(unit.n_spikes, unit.dispersion, settings.classify.concentration)
-    return fit(unit.counts, unit.exposure_s, float(weight[0]), drawn.rate[mine], drawn.log_weight[mine])
+    evidence = evidence_share(unit.counts, unit.exposure_s, unit.dispersion, settings.classify.concentration)
+    return fit(unit.counts, unit.exposure_s, evidence, drawn.rate[mine], drawn.log_weight[mine])

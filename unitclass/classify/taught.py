@@ -10,7 +10,7 @@ import numpy as np
 from unitclass.classify.draws import DrawnFamilies
 from unitclass.classify.fit import NO_FIT, Fit, fit
 from unitclass.classify.learning import Learned, ShapeCounts, learn, teach
-from unitclass.classify.likelihood import evidence_weight
+from unitclass.classify.likelihood import evidence_share
 from unitclass.classify.reasons import odds_words
 from unitclass.records import OTHER, FloatArray, Suggestion
 
@@ -112,8 +112,8 @@ def _why(unit: ShapedUnit, name: str, kinship: FloatArray, lessons: Sequence[Lab
 def _fit(unit: ShapedUnit, name: str, learned: Learned, drawn: DrawnFamilies, concentration: float) -> Fit:
     if name == OTHER:
         return NO_FIT
-    weight = evidence_weight(np.array([unit.counts.sum()]), np.ones(1), concentration)
+    evidence = evidence_share(unit.counts[None], unit.exposure_s[None], np.ones(1), concentration)
     share = learned.names[:, drawn.types.index(name)]
     named = np.flatnonzero(share >= min(LEAST_SHARE, float(share.max())))
-    return fit(unit.counts[None], unit.exposure_s[None], float(weight[0]), drawn.rate[named],
+    return fit(unit.counts[None], unit.exposure_s[None], evidence, drawn.rate[named],
                learned.log_weight[named] + np.log(share[named]))

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import ArrayLike
@@ -45,6 +45,12 @@ class UnitCounts:
     def n_spikes(self) -> FloatArray:
         """Return the counted spikes of every unit, shape (n_units,)."""
         return np.asarray(self.counts.sum(axis=1))
+
+    def weighed(self, share: FloatArray) -> UnitCounts:
+        """Return the units with a share, shape (n_units, n_bins), of each bin's spikes and seconds."""
+        by_third = share[:, None, :]
+        return replace(self, counts=self.counts * share, exposure_s=self.exposure_s * share,
+                       third_counts=self.third_counts * by_third, third_exposure_s=self.third_exposure_s * by_third)
 
     def rows(self, chosen: slice) -> UnitCounts:
         """Return some of the units."""
