@@ -103,3 +103,18 @@ def test_the_digest_of_a_unit_is_that_of_its_spikes_not_of_its_id(recording, res
     other = analyse(replace(recording, units=renamed), LIBRARY, SETTINGS)
     assert [u.digest for _, u in result.units()] == [u.digest for _, u in other.units()]
     assert len({u.digest for _, u in result.units()}) == len(CLEAR)
+
+
+def test_a_modulation_that_is_certain_but_too_shallow_to_speak_of_is_none(recording):
+    """A regular train shows a swing of four per cent to the test; nobody calls such a cell modulated."""
+    start, stop = recording.start_s, recording.stop_s
+    cycles = cycles_only(recording, LIBRARY, SETTINGS).conditions[0].nerve_cycles.cycles
+    time = np.arange(start, stop, 1e-3)
+    phase = np.interp(time, cycles.onset_s, np.arange(cycles.n_cycles))
+    expected = np.cumsum(60.0 * (1 + 0.04 * np.cos(2 * np.pi * phase))) * 1e-3
+    spikes = np.interp(np.arange(1.0, expected[-1]), expected, time)  # one spike a unit of expectation: hardly any noise
+    one = replace(recording, units=(Unit("steady", ArraySpikes(spikes), None),))
+    (_, unit), = analyse(one, LIBRARY, SETTINGS).units()
+    assert unit.modulation.eta_squared_p <= 0.01
+    assert unit.modulation.depth_high < 0.1
+    assert unit.suggestion.type == "NRM"

@@ -65,3 +65,29 @@ def test_a_drawn_family_follows_its_points():
     profile = draw_profiles(family, TIMING, n_bins=40, n_draws=1)[0]
     np.testing.assert_allclose(profile[5] / profile[9], 0.55 / 0.95, rtol=0.02)
     assert profile[25] < 0.01 * profile.max()
+
+
+def test_a_steady_cell_may_be_held_down_by_one_short_input_and_stays_within_its_depth():
+    """Tonic cells of the trade show shallow swings, whichever input makes them (common practice)."""
+    family = family_from_mapping({"id": "x", "form": "cosine", "ranges": {
+        "depth": [0.3, 0.4], "wiggle": [0, 0], "foreign": [0, 0]}}, where="")
+    profiles = draw_profiles(family, TIMING, n_bins=40, n_draws=512)
+    depth = np.ptp(profiles, axis=1) / (profiles.max(axis=1) + profiles.min(axis=1))
+    assert depth.max() <= 0.4 + 1e-9
+    low = profiles < np.sqrt(profiles.max(axis=1, keepdims=True) * profiles.min(axis=1, keepdims=True))
+    n_low = low.sum(axis=1)
+    is_one_run = (low != np.roll(low, 1, axis=1)).sum(axis=1) == 2
+    assert ((n_low < 10) & is_one_run).sum() > 20, "short rests"
+    assert ((n_low > 30) & is_one_run).sum() > 20, "short bursts on a steady rate"
+
+
+def test_foreign_spikes_are_a_share_of_spikes_however_short_inspiration_is():
+    family = family_from_mapping({"id": "x", "form": "flat", "ranges": {
+        "depth": [0, 0], "wiggle": [0, 0], "foreign": [0.1, 0.1]}}, where="")
+    timing = Timing(ti_s=0.35, te_s=5.65)
+    seconds = np.repeat([timing.ti_s, timing.te_s], 20) / 20
+    spikes = draw_profiles(family, timing, n_bins=40, n_draws=256) * seconds
+    own = np.median(spikes / seconds, axis=1, keepdims=True) * seconds  # the steady rate, which most bins show
+    foreign = (spikes - own).sum(axis=1) / spikes.sum(axis=1)
+    assert foreign.max() == pytest.approx(0.1, abs=0.02)
+    assert (spikes / seconds).max() > 3 * np.median(spikes / seconds), "a foreign burst in inspiration stands high"

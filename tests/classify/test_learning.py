@@ -107,8 +107,8 @@ def test_a_changed_suggestion_says_what_it_was_and_which_labelled_cells_changed_
     assert sum(changed[0].probabilities.values()) == pytest.approx(1.0)
 
 
-def test_a_label_that_agrees_moves_no_other_type_and_a_blind_one_counts_more():
-    units, _, drawn = laboratory(2)
+def test_a_label_that_agrees_moves_only_cells_in_doubt_to_what_they_are_and_a_blind_one_counts_more():
+    units, names, drawn = laboratory(2)
     post = [unit for unit in units if unit.suggestion.type == "post-I"]
     gained = []
     for is_blind in (False, True):
@@ -118,7 +118,10 @@ def test_a_label_that_agrees_moves_no_other_type_and_a_blind_one_counts_more():
         gained.append(np.mean([s.probabilities["post-I"] for s in anew]))
     agreed = taught_suggestions(units, [LabelledUnit(u, "post-I", is_blind=False) for u in post[:5]], drawn,
                                 concentration=300)
-    assert all(new is None or new.type == unit.suggestion.type for unit, new in zip(units, agreed, strict=True))
+    moved = [(unit.suggestion, new.type, name) for unit, new, name in zip(units, agreed, names, strict=True)
+             if new is not None and new.type != unit.suggestion.type]
+    assert all(new == name == "post-I" and was.probability < 2 / 3 for was, new, name in moved)
+    assert len(moved) <= 1
     assert gained[1] > gained[0]
 
 

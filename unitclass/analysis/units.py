@@ -33,6 +33,8 @@ class JudgedUnits:
     results: tuple[UnitResult, ...]
     regime: Regime
 
+NEGLIGIBLE = 0.1  # depth of modulation up to which a cell is called not modulated (common practice)
+
 
 @dataclass(frozen=True)
 class _Seen:
@@ -88,7 +90,9 @@ def _seen(cells: Sequence[Cell], cycles: Cycles, settings: Settings, beats: Sequ
 
 
 def _row(profile: CountedProfile) -> CountRow:
-    return count_row(profile.by_phase, profile.exposure.seconds, profile.modulation.eta_squared_p)
+    m = profile.modulation
+    is_negligible = m.depth_high <= NEGLIGIBLE  # however certain, it is none to speak of: the test has no say
+    return count_row(profile.by_phase, profile.exposure.seconds, np.nan if is_negligible else m.eta_squared_p)
 
 
 def _facts(one: _Seen) -> UnitFacts:

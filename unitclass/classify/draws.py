@@ -90,7 +90,7 @@ def draw_profiles(family: Family, timing: Timing, *, n_bins: int, n_draws: int) 
         level = p["background"] + (1 - p["background"]) * level
     level = level * np.exp(p["wiggle"] * _smooth_noise(phase, n_draws, rng))
     binned = level.reshape(n_draws, n_bins, FINE).mean(axis=2)
-    binned = _with_foreign(binned, p["foreign"], rng)
+    binned = _with_foreign(binned, p["foreign"], timing, rng)
     binned = np.maximum(binned, FLOOR * binned.max(axis=1, keepdims=True))
     return _mean_one(binned)
 
@@ -163,17 +163,20 @@ def _drawn(family: Family, p: Parameters, phase: FloatArray) -> FloatArray:
     return np.interp(moved, at, height, period=2.0)
 
 
-def _with_foreign(binned: FloatArray, share: FloatArray, rng: np.random.Generator) -> FloatArray:
+def _with_foreign(binned: FloatArray, share: FloatArray, timing: Timing, rng: np.random.Generator) -> FloatArray:
     """Return the profiles with a share of another cell's spikes: no sorting is perfect.
 
-    Half of the foreign trains fire steadily, half in one hump somewhere in the cycle.
+    Half of the foreign trains fire steadily, half in one hump somewhere in the cycle. The share is
+    one of spikes: a foreign burst in a short inspiration stands high there.
     """
     n_draws, n_bins = binned.shape
     phase = (np.arange(n_bins) + 0.5) * (2.0 / n_bins)
     away = np.abs((phase - rng.uniform(0, 2, (n_draws, 1)) + 1.0) % 2.0 - 1.0)
     hump = np.exp(-0.5 * (away / rng.uniform(0.08, 0.3, (n_draws, 1))) ** 2)
     other = np.where(rng.random((n_draws, 1)) < 0.5, 1.0, hump)
-    return (1 - share) * _mean_one(binned) + share * _mean_one(other)
+    seconds = np.where(phase < 1.0, timing.ti_s, timing.te_s)
+    own, foreign = (rate / (rate @ seconds / seconds.sum())[:, None] for rate in (binned, other))
+    return np.asarray((1 - share) * own + share * foreign)
 
 
 def _mean_one(binned: FloatArray) -> FloatArray:

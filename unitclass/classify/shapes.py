@@ -12,6 +12,8 @@ import numpy as np
 
 from unitclass.records import FloatArray
 
+STEPS, SHADOWS = 0.2, 0.35  # shares of the draws of a steady cell
+LEANS = 0.3  # windows that lean less are plateaus
 LEAST_GAP = 0.1  # phase between two humps, without which they are one plateau
 
 Parameters = Mapping[str, FloatArray]
@@ -90,15 +92,32 @@ def two_humps(p: Parameters, phase: FloatArray) -> FloatArray:
 def cosine(p: Parameters, phase: FloatArray) -> FloatArray:
     """Return steady firing that waxes and wanes, or steps between inspiration and expiration.
 
-    `depth` is (max - min)/(max + min). A third of the draws step at the transitions themselves.
+    `depth` is (max - min)/(max + min). A fifth of the draws step at the transitions themselves,
+    a third follow one phasic input, excitatory or inhibitory: steady but for one window.
     """
-    is_step = p["step"] < 0.2
+    is_step, is_shadow = p["step"] < STEPS, (p["step"] >= STEPS) & (p["step"] < STEPS + SHADOWS)
     at = np.where(is_step, np.where(p["at"] < 1.0, 0.5, 1.5), p["at"])
     angle = np.pi * (phase - at)
     wave = np.cos(angle) + p["harmonic"] * np.cos(2 * angle + np.pi * at)
-    mixed = np.where(is_step, np.tanh(15.0 * np.cos(angle)), wave)
+    mixed = np.where(is_step, np.tanh(15.0 * np.cos(angle)), np.where(is_shadow, _shadow(p, phase), wave))
     mixed = mixed / np.max(np.abs(mixed), axis=1, keepdims=True)
     return (1 + p["depth"] * mixed) / (1 + p["depth"])
+
+
+def _shadow(p: Parameters, phase: FloatArray) -> FloatArray:
+    """Return -1 with one window that reaches 1, or the other way round.
+
+    The window begins at a transition and decrements, ends at one and augments, or lies anywhere,
+    as the inputs from other neurons of the rhythm do.
+    """
+    span, lean = p["span"], p["lean"]
+    transition = np.where(p["at"] < 1.0, 1.0, 2.0)
+    onset = np.where(lean < -LEANS, transition, np.where(lean > LEANS, transition - span, p["at"]))
+    within = ((phase - onset) % 2.0) / span
+    slope = np.where(np.abs(lean) > LEANS, lean, 0.0)
+    body = 1.0 - np.abs(slope) * np.where(slope > 0, 1.0 - within, within)
+    level = 2.0 * np.where(within <= 1.0, body, 0.0) - 1.0
+    return np.where(p["harmonic"] < np.median(p["harmonic"]), level, -level)
 
 
 def flat(p: Parameters, phase: FloatArray) -> FloatArray:

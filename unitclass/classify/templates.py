@@ -31,7 +31,8 @@ FORMS: Mapping[str, Mapping[str, Range]] = {
     "spanning": {"start_level": (0.0, 0.6), "end_level": (0.0, 0.6)},
     "two humps": {"start_level": (0.5, 1.0), "end_level": (0.0, 0.3), "first_level": (0.3, 1.0), "second_level": (0.3, 1.0),
                   "dip": (0.0, 0.3), "second_start": (0.0, 0.5)},
-    "cosine": {"depth": (0.2, 0.8), "at": (0.0, 2.0), "step": (0.0, 1.0), "harmonic": (0.0, 0.3)},
+    "cosine": {"depth": (0.2, 0.8), "at": (0.0, 2.0), "step": (0.0, 1.0), "harmonic": (0.0, 0.3),
+               "span": (0.2, 1.0), "lean": (-1.0, 1.0)},
     "flat": {"depth": (0.0, 0.12), "at": (0.0, 2.0), "wiggle": (0.0, 0.05)},
     "drawn": {"shift": (-0.05, 0.05), "stretch": (0.85, 1.15)},
 }
