@@ -63,6 +63,13 @@ class DrawnFamilies:
         mine = np.flatnonzero(self.owner == self.types.index(type_id))
         return slice(int(mine[0]), int(mine[-1]) + 1)
 
+    def only(self, *types: str) -> DrawnFamilies:
+        """Return some of the families, in the order asked for."""
+        rows = [np.flatnonzero(self.owner == self.types.index(name)) for name in types]
+        chosen = np.concatenate(rows)
+        return DrawnFamilies(types, self.rate[chosen], np.repeat(np.arange(len(types)), [len(r) for r in rows]),
+                             self.log_weight[chosen])
+
 
 def draw_families(library: TypeLibrary, timing: Timing, *, n_bins: int, n_draws: int) -> DrawnFamilies:
     """Draw `n_draws` profiles from every family.

@@ -55,11 +55,10 @@ def _modulation_odds(units: UnitCounts, drawn: DrawnFamilies, settings: Classify
     .. [1] T. Sellke, M. J. Bayarri, J. O. Berger, "Calibration of p values", Am Stat 55:62, 2001.
     """
     units = _weighed(units, 10 * settings.concentration)
-    evidence = family_evidence(log_likelihood(units.counts, units.exposure_s, drawn.rate), drawn)
-    wavy = evidence[:, drawn.types.index(STEADY)]
+    both = drawn.only(STEADY, NOT_MODULATED)
+    wavy, unmodulated = family_evidence(log_likelihood(units.counts, units.exposure_s, both.rate), both).T
     shallow = arbitrary_evidence(units.counts, units.exposure_s, alpha=SHALLOW)
     rival = np.logaddexp(wavy, shallow) - np.log(2)
-    unmodulated = evidence[:, drawn.types.index(NOT_MODULATED)]
     steady = log_likelihood(units.counts, units.exposure_s, np.ones((1, units.counts.shape[1])))[:, 0]
     bound = _log_odds_bound(units.modulation_p) + np.maximum(unmodulated - steady, 0.0)
     return np.minimum(unmodulated - rival, bound)
