@@ -80,17 +80,24 @@ def _pictures(args: argparse.Namespace) -> int:
     from unitclass.errors import FileError
     from unitclass.io.decisions import DecisionStore
     from unitclass.io.paths import find_files
+    from unitclass.io.session_view import MemorySession
+    from unitclass.io.store_place import STORE_NAME
+    from unitclass.review.grouping import grouped
     from unitclass.review.session import ReviewSession
     from unitclass.tui.app import ReviewApp
     from unitclass.tui.pictures import save_pictures
 
     plan = plan_from(args)
-    with tempfile.TemporaryDirectory() as folder, DecisionStore(Path(folder) / "store.sqlite") as store:
+    with tempfile.TemporaryDirectory() as folder, DecisionStore(Path(folder) / STORE_NAME) as store:
+        store.path = Path(STORE_NAME)  # a picture names no folder of this machine
         session = ReviewSession(store, args.reviewer or "reviewer", is_blind=args.blind)
+        views = []
         for outcome in (analyse_file(path, plan) for path in find_files(args.paths)):
             if outcome.result is None:
                 raise FileError(outcome.problem)
-            session.add_result(outcome.result)
+            views.append(MemorySession(outcome.result))
+        session.add_session(*views)
+        session.update_groups(grouped(views))
         app = ReviewApp(session, settings=plan.settings, library=lambda: plan.library)
         for path in save_pictures(app, Path(args.pictures)):
             print(path)
