@@ -13,6 +13,7 @@ from pathlib import Path
 
 import pytest
 
+from tests.tui.terminal import as_from_a_shell
 from unitclass.io.resolver import samples_folder
 
 
@@ -30,7 +31,8 @@ def start(archive: Path, tmp_path: Path, out: object, *words: str) -> tuple[subp
     mine, its = pty.openpty()
     process = subprocess.Popen(
         [sys.executable, "-m", "unitclass", "classify", str(archive), *words], stdout=out, stderr=its,  # type: ignore[call-overload]
-        env=os.environ | {"TERM": "xterm", "XDG_CACHE_HOME": str(tmp_path / "cache")}, start_new_session=True)
+        env=os.environ | {"TERM": "xterm", "XDG_CACHE_HOME": str(tmp_path / "cache")}, start_new_session=True,
+        preexec_fn=as_from_a_shell)
     os.close(its)
     return process, mine
 

@@ -19,6 +19,12 @@ KEYS = {"Enter": "\r", "Esc": "\x1b", "Up": "\x1b[A", "Down": "\x1b[B", "Right":
         "PgDn": "\x1b[6~", "PgUp": "\x1b[5~", "Home": "\x1b[H", "End": "\x1b[F", "Ctrl-C": "\x03"}
 
 
+def as_from_a_shell() -> None:
+    """Let a child take the signals that a shell's own children take, however the tests were started (nohup, &)."""
+    for number in (signal.SIGINT, signal.SIGHUP, signal.SIGQUIT):
+        signal.signal(number, signal.SIG_DFL)
+
+
 class Terminal:
     """A program behind a terminal of a given size; everything it wrote is in `raw`."""
 
@@ -30,6 +36,7 @@ class Terminal:
         self.code: int | None = None
         self.pid, self._fd = pty.fork()
         if self.pid == 0:
+            as_from_a_shell()
             fcntl.ioctl(0, termios.TIOCSWINSZ, struct.pack("HHHH", size[1], size[0], 0, 0))
             os.execve(sys.executable, [sys.executable, *arguments], _environment(env or {}))
         self.resize(*size)
