@@ -70,7 +70,7 @@ def test_a_drawn_family_follows_its_points():
 def test_a_steady_cell_may_be_held_down_by_one_short_input_and_stays_within_its_depth():
     """Tonic cells of the trade show shallow swings, whichever input makes them (common practice)."""
     family = family_from_mapping({"id": "x", "form": "cosine", "ranges": {
-        "depth": [0.3, 0.4], "wiggle": [0, 0], "foreign": [0, 0]}}, where="")
+        "depth": [0.3, 0.4], "wiggle": [0, 0], "foreign": [0, 0], "harmonic": [0, 0]}}, where="")
     profiles = draw_profiles(family, TIMING, n_bins=40, n_draws=512)
     depth = np.ptp(profiles, axis=1) / (profiles.max(axis=1) + profiles.min(axis=1))
     assert depth.max() <= 0.4 + 1e-9

@@ -117,7 +117,7 @@ def _shadow(p: Parameters, phase: FloatArray) -> FloatArray:
     slope = np.where(np.abs(lean) > LEANS, lean, 0.0)
     body = 1.0 - np.abs(slope) * np.where(slope > 0, 1.0 - within, within)
     level = 2.0 * np.where(within <= 1.0, body, 0.0) - 1.0
-    return np.where(p["harmonic"] < np.median(p["harmonic"]), level, -level)
+    return np.where(p["step"] < STEPS + SHADOWS / 2, level, -level)
 
 
 def flat(p: Parameters, phase: FloatArray) -> FloatArray:

@@ -105,7 +105,7 @@ class ReviewQueue:
         counts: dict[str, int] = {}
         others: dict[str, Any] = {name: ()}
         rest = replace(self.filter, **others)
-        for row in filter(rest.lets_through, self._rows.values()):
+        for row in self._rows.values() if rest.is_empty else filter(rest.lets_through, self._rows.values()):
             for value in values_of(row, name)[:1] if name == "files" else values_of(row, name):
                 if value:
                     counts[value] = counts.get(value, 0) + 1
