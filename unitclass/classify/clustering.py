@@ -106,9 +106,7 @@ def shape_groups(rate_hz: FloatArray, types: Sequence[str], *, n_repetitions: in
     from sklearn.metrics import adjusted_rand_score
 
     rate = relative_rates(rate_hz)
-    points = components(rate)
-    mixture, criterion = _chosen(points)
-    number = _in_order(mixture.predict(points), rate)
+    points, mixture, criterion, number = _grouped(rate)
     repeated = _repeated(points, mixture.n_components, n_repetitions)
     groups = tuple(_group(k, number, rate, types, repeated) for k in range(int(number.max()) + 1))
     return ShapeGroups(_names(number), groups, float(np.mean([adjusted_rand_score(number, r) for r in repeated])),
@@ -119,9 +117,14 @@ def group_names(rate_hz: FloatArray) -> tuple[str, ...]:
     """Return the names that `shape_groups` gives, without asking how far they can be believed."""
     if len(rate_hz) < 2 * UNITS_A_GROUP:
         return ("",) * len(rate_hz)
-    rate = relative_rates(rate_hz)
+    return _names(_grouped(relative_rates(rate_hz))[-1])
+
+
+def _grouped(rate: FloatArray) -> tuple[FloatArray, Any, dict[int, float], IntArray]:
+    """Return the units as points, the mixture chosen, its criterion, and each unit's group from 0."""
     points = components(rate)
-    return _names(_in_order(_chosen(points)[0].predict(points), rate))
+    mixture, criterion = _chosen(points)
+    return points, mixture, criterion, _in_order(mixture.predict(points), rate)
 
 
 def _names(number: IntArray) -> tuple[str, ...]:
